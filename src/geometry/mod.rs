@@ -1,0 +1,11 @@
+//! Plane geometry: points, rings whose edges may be arcs, regions by even-odd containment.
+//!
+//! Lengths are in millimetres, y points up, counter-clockwise is positive.
+
+pub mod point;
+pub mod region;
+pub mod ring;
+
+pub use point::{BoundingBox, Point};
+pub use region::Region;
+pub use ring::{Ring, Vertex};

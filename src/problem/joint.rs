@@ -1,0 +1,58 @@
+//! Where sheets meet: areas of contact, and spots, seams or areas that join them.
+
+use crate::geometry::{Point, Region};
+use crate::index::LayerId;
+
+/// What an interface does to the current that passes it.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum Interface {
+    /// No drop across it: equal potentials, conductances add. Never stood for by a small number.
+    Bonded,
+    /// Conductance per area, S/mm².
+    Conductance(f64),
+}
+
+/// An area where two sheets lie on each other.
+#[derive(Debug, Clone)]
+pub struct Contact {
+    /// Its name, or "A on B".
+    pub name: String,
+    /// The two sheets; current counts + from the first into the second.
+    pub between: [LayerId; 2],
+    /// The area; `None`: wherever both are. It is clipped to where both are in any case.
+    pub area: Option<Region>,
+    /// Contact per area.
+    pub interface: Interface,
+}
+
+/// Spots, seams or areas that join two sheets; in parallel with a contact where both are.
+#[derive(Debug, Clone)]
+pub struct Join {
+    /// The two sheets; current counts + from the first into the second.
+    pub between: [LayerId; 2],
+    /// The places.
+    pub spots: Vec<Footprint>,
+    /// Resistance of one spot in ohm, interface only; 0 is a bond. Its conductance is spread over the spot's nominal area.
+    pub joint_ohm: f64,
+}
+
+/// What a spot, seam, area, line or edge covers in the plane.
+#[derive(Debug, Clone, PartialEq)]
+pub enum Footprint {
+    /// An area.
+    Area {
+        /// The flattened area.
+        region: Region,
+        /// Its full area in mm², also where a part is off the metal.
+        area_mm2: f64,
+        /// Its middle: a spot's centre, a seam's half-way point, an area's centroid.
+        centre: Point,
+        /// Diameter of a round spot, width of a seam; `None` for other areas.
+        diameter_mm: Option<f64>,
+    },
+    /// A polyline of straight pieces: a line across the metal, or a stretch of an outline.
+    Line {
+        /// Its points in order; a closed line repeats its first point.
+        points: Vec<Point>,
+    },
+}
