@@ -5,6 +5,7 @@
 pub mod point;
 pub mod region;
 pub mod ring;
+pub mod segment_index;
 
 pub use point::{BoundingBox, Point};
 pub use region::Region;
