@@ -1,0 +1,92 @@
+//! The matrix of the energy form: conduction in the leaves, exchange over areas and along edges.
+
+use super::Complex;
+use crate::algebra::{SymmetricMatrix, Triplets};
+use crate::geometry::Point;
+use crate::mesh::Mesh;
+
+/// Entries of conductance * ∫ ∇λi . ∇λj over a triangle: those of the pairs opposite each corner, (1,2), (2,0), (0,1). The diagonal follows, rows sum to zero.
+pub fn conduction(corners: [Point; 3], conductance: f64) -> [f64; 3] {
+    let [a, b, c] = corners;
+    let (ea, eb, ec) = (c - b, a - c, b - a);
+    let scale = conductance / (2.0 * ec.cross(-eb));
+    [eb.dot(ec) * scale, ec.dot(ea) * scale, ea.dot(eb) * scale]
+}
+
+/// The matrix over the unknowns that are `free`: `free[u]` is the row of unknown u, or `None` where it is zero by definition.
+pub fn assembled(mesh: &Mesh, complex: &Complex, free: &[Option<u32>]) -> SymmetricMatrix {
+    let mut triplets = Triplets::new(free.iter().flatten().count());
+    // A difference of two unknowns with weight w adds w (u_i - u_j)^2 to the form.
+    let mut add_difference = |i: usize, j: usize, w: f64| {
+        if i == j {
+            return;
+        }
+        if let Some(r) = free[i] {
+            triplets.add(r as usize, r as usize, w);
+        }
+        if let Some(s) = free[j] {
+            triplets.add(s as usize, s as usize, w);
+        }
+        if let (Some(r), Some(s)) = (free[i], free[j]) {
+            triplets.add(r as usize, s as usize, -w);
+        }
+    };
+    for (x, element) in complex.elements.iter().enumerate() {
+        if element.leaf.held.is_none() {
+            let u = complex.unknowns[x].map(|u| u as usize);
+            let pairs = conduction(mesh.corners(element.triangle as usize), element.leaf.conductance);
+            for (k, w) in pairs.into_iter().enumerate() {
+                add_difference(u[(k + 1) % 3], u[(k + 2) % 3], -w);
+            }
+        }
+    }
+    // Adds weight * (linear form)^2; the form names each unknown once.
+    let mut add_square = |rows: &[(usize, f64)], weight: f64| {
+        for (m, &(i, a)) in rows.iter().enumerate() {
+            for &(j, b) in &rows[..=m] {
+                if let (Some(r), Some(s)) = (free[i], free[j]) {
+                    triplets.add(r as usize, s as usize, weight * a * b);
+                }
+            }
+        }
+    };
+    for x in &complex.area_exchanges {
+        // ∫ d² = area / 12 (sum of d_k² + (sum of d_k)²)
+        let weight = x.per_area * mesh.area(x.triangle as usize) / 12.0;
+        let d = [0, 1, 2].map(|k| [(complex.unknown_at(x.ends[0], k), 1.0), (complex.unknown_at(x.ends[1], k), -1.0)]);
+        for pair in &d {
+            add_square(&merged(pair), weight);
+        }
+        add_square(&merged(d.as_flattened()), weight);
+    }
+    for x in &complex.edge_exchanges {
+        // ∫ d² = length / 6 (d_1² + d_2² + (d_1 + d_2)²)
+        let (i, j, length) = edge_ends(mesh, complex, x.element as usize, x.edge as usize);
+        let weight = x.per_length * length / 6.0;
+        let pole = x.pole as usize;
+        for u in [i, j] {
+            add_square(&merged(&[(u, 1.0), (pole, -1.0)]), weight);
+        }
+        add_square(&merged(&[(i, 1.0), (j, 1.0), (pole, -2.0)]), weight);
+    }
+    triplets.into()
+}
+
+/// The unknowns at the ends of an element's edge, and its length.
+pub(super) fn edge_ends(mesh: &Mesh, complex: &Complex, element: usize, edge: usize) -> (usize, usize, f64) {
+    let corners = mesh.corners(complex.elements[element].triangle as usize);
+    let (i, j) = ((edge + 1) % 3, (edge + 2) % 3);
+    (complex.unknowns[element][i] as usize, complex.unknowns[element][j] as usize, corners[i].distance(corners[j]))
+}
+
+/// A linear form with each unknown named once.
+fn merged(terms: &[(usize, f64)]) -> Vec<(usize, f64)> {
+    let mut sum: Vec<(usize, f64)> = Vec::with_capacity(terms.len());
+    for &(u, w) in terms {
+        match sum.iter_mut().find(|t| t.0 == u) {
+            Some(t) => t.1 += w,
+            None => sum.push((u, w)),
+        }
+    }
+    sum
+}
