@@ -510,7 +510,8 @@ impl Complex {
             let r = root(&mut parent, i as u32) as usize;
             if r >= self.poles {
                 let x = self.unknowns.iter().position(|u| u.contains(&(i as u32)));
-                let (layers, at) = x.map_or((0, Point::default()), |x| (self.elements[x].leaf.layers, mesh.corners(self.elements[x].triangle as usize)[0]));
+                let (layers, at) = x
+                    .map_or((0, Point::default()), |x| (self.elements[x].leaf.layers, mesh.corners(self.elements[x].triangle as usize)[0]));
                 return Err(ComplexFault::NoPole { layers, at });
             }
             if number[r] == NONE {

@@ -212,7 +212,8 @@ impl<'a> Chunk<'a> {
             let sign = if x.ends[0] == End::Leaf(element as u32) { 1.0 } else { -1.0 };
             let weight = sign * x.per_area * area / 12.0;
             for k in 0..3 {
-                let (from, to) = (self.field.at(self.complex.unknown_at(x.ends[0], k)), self.field.at(self.complex.unknown_at(x.ends[1], k)));
+                let (from, to) =
+                    (self.field.at(self.complex.unknown_at(x.ends[0], k)), self.field.at(self.complex.unknown_at(x.ends[1], k)));
                 let w = if k == a { 2.0 * weight } else { weight };
                 for (d, (f, t)) in demand.iter_mut().zip(from.iter().zip(to)) {
                     *d -= w * (f - t);
@@ -275,7 +276,8 @@ impl<'a> Chunk<'a> {
                 if counts {
                     let weight = (x.per_area * self.mesh.area(triangle as usize) / 12.0).sqrt();
                     let d = |k: usize, col: usize| {
-                        self.field.at(self.complex.unknown_at(x.ends[0], k))[col] - self.field.at(self.complex.unknown_at(x.ends[1], k))[col]
+                        self.field.at(self.complex.unknown_at(x.ends[0], k))[col]
+                            - self.field.at(self.complex.unknown_at(x.ends[1], k))[col]
                     };
                     for col in 0..width {
                         let d = [d(0, col), d(1, col), d(2, col)];

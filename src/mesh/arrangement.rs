@@ -174,7 +174,8 @@ impl Work {
         let [a, b] = self.ends(segment);
         let p = self.nodes[node as usize];
         let length = distance(a, b);
-        let along = (i128::from(b.0 - a.0) * i128::from(p.0 - a.0) + i128::from(b.1 - a.1) * i128::from(p.1 - a.1)) as f64 / (length * length);
+        let along =
+            (i128::from(b.0 - a.0) * i128::from(p.0 - a.0) + i128::from(b.1 - a.1) * i128::from(p.1 - a.1)) as f64 / (length * length);
         if !(0.0..=1.0).contains(&along) {
             return None;
         }
@@ -313,7 +314,8 @@ impl Work {
                 self.leaves_of(segment, &mut leaves);
             }
             for &leaf in &leaves {
-                let set: &mut Vec<u32> = if is_area { &mut areas[place[leaf as usize] as usize] } else { &mut lines[place[leaf as usize] as usize] };
+                let set: &mut Vec<u32> =
+                    if is_area { &mut areas[place[leaf as usize] as usize] } else { &mut lines[place[leaf as usize] as usize] };
                 // Owners come in rising order, so the label can only be the last one.
                 match set.last() {
                     Some(&last) if last == label => {

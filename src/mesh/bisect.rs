@@ -42,6 +42,9 @@ pub fn bisected(mesh: &Mesh, marked: &[bool]) -> Mesh {
         let before = triangles.len();
         if m == NONE {
             triangles.push([a, b, c]);
+        } else if mb != NONE && mc != NONE {
+            // Four similar triangles, each with its bisection edge along the parent's.
+            triangles.extend([[a, mc, mb], [mc, b, m], [mb, m, c], [m, mb, mc]]);
         } else {
             // The halves [m, a, b] and [m, c, a] carry the parent's other edges opposite their first vertex.
             if mc == NONE {

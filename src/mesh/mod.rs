@@ -53,7 +53,9 @@ impl fmt::Display for MeshFault {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Self::TooFar => write!(f, "a coordinate is further than {} mm from the middle of the drawing", arrangement::FARTHEST_MM),
-            Self::Unsettled => write!(f, "the outlines lie so close together in so many places that they could not be snapped to a clean drawing"),
+            Self::Unsettled => {
+                write!(f, "the outlines lie so close together in so many places that they could not be snapped to a clean drawing")
+            }
             Self::TooLarge(n) => write!(f, "the first mesh alone needs more than {n} vertices"),
             Self::Triangulation(text) => write!(f, "the triangulation failed ({text}): this is a bug in pinchbar"),
         }

@@ -7,7 +7,7 @@ use std::collections::HashMap;
 use std::sync::Arc;
 
 /// Least angle asked of the first mesh, in degrees; smaller angles of the drawing stay. Bisection lowers it once, to no less than half.
-const LEAST_ANGLE_DEGREES: f64 = 27.0;
+const LEAST_ANGLE_DEGREES: f64 = 22.0;
 
 /// What came out beside the mesh.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -32,7 +32,10 @@ pub fn triangulated(drawing: &Arrangement, max_vertices: usize, kept: &dyn Fn(&[
     }
     let (cells, covers) = covers(drawing, &triangles, &edges);
     let chosen: Vec<usize> = (0..triangles.len()).filter(|&t| kept(&covers[cells[t] as usize])).collect();
-    Ok((assembled(drawing, &points, &triangles, &cells, covers, &owner, sorted_along_a_curve(&points, &triangles, chosen)), Quality { angles_reached }))
+    Ok((
+        assembled(drawing, &points, &triangles, &cells, covers, &owner, sorted_along_a_curve(&points, &triangles, chosen)),
+        Quality { angles_reached },
+    ))
 }
 
 type Refined = (Vec<Point>, Vec<[u32; 3]>, Vec<[u32; 2]>, bool);
@@ -152,7 +155,8 @@ fn symmetric_difference(a: &[u32], b: &[u32]) -> Vec<u32> {
 
 /// Triangles near each other in the plane become near in the list (Morton order of their middles), which the caches of all later stages like.
 fn sorted_along_a_curve(points: &[Point], triangles: &[[u32; 3]], mut chosen: Vec<usize>) -> Vec<usize> {
-    let middles: Vec<Point> = chosen.iter().map(|&t| triangles[t].iter().fold(Point::default(), |s, &v| s + points[v as usize]) * (1.0 / 3.0)).collect();
+    let middles: Vec<Point> =
+        chosen.iter().map(|&t| triangles[t].iter().fold(Point::default(), |s, &v| s + points[v as usize]) * (1.0 / 3.0)).collect();
     let extent = crate::geometry::BoundingBox::around(middles.iter().copied());
     let scale = 65535.0 / extent.width().max(extent.height()).max(f64::MIN_POSITIVE);
     let spread = |x: f64| (0..16).fold(0u64, |code, bit| code | (((x as u64 >> bit) & 1) << (2 * bit)));

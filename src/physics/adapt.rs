@@ -259,7 +259,8 @@ fn given_currents(problem: &Problem, layout: &Layout) -> Option<Vec<f64>> {
     }
     for (k, electrode) in problem.electrodes.iter().enumerate() {
         if electrode.drive == Drive::Balance {
-            currents[k] = -(0..problem.electrodes.len()).filter(|&j| layout.piece_of[j] == layout.piece_of[k]).map(|j| currents[j]).sum::<f64>();
+            currents[k] =
+                -(0..problem.electrodes.len()).filter(|&j| layout.piece_of[j] == layout.piece_of[k]).map(|j| currents[j]).sum::<f64>();
         }
     }
     Some(currents)
@@ -406,9 +407,8 @@ fn enclose(problem: &Problem, mesh: &Mesh, complex: &Complex, layout: &Layout, b
         .collect();
     let largest = currents.iter().fold(0.0, |m: f64, i| m.max(i.abs()));
     let range = |k: usize| -> Interval {
-        let of_emf = |k: usize| {
-            response.of_emf[k].as_ref().map(|unit| network::enclosed(&defect, currents, unit, currents[k], -1.0, largest))
-        };
+        let of_emf =
+            |k: usize| response.of_emf[k].as_ref().map(|unit| network::enclosed(&defect, currents, unit, currents[k], -1.0, largest));
         match problem.electrodes[k].drive {
             Drive::Return(s) => of_emf(problem.sources[s.index()].positive.index()).map(|i| Interval { low: -i.high, high: -i.low }),
             _ => of_emf(k),
@@ -424,13 +424,12 @@ fn enclose(problem: &Problem, mesh: &Mesh, complex: &Complex, layout: &Layout, b
         .enumerate()
         .map(|(k, r)| (r.high - currents[k]).max(currents[k] - r.low) * (ports.matrix.at(k, k) + defect.at(k, k)).max(0.0).sqrt())
         .sum();
-    let loss = Interval {
-        low: (low.sqrt() - slack).max(0.0).powi(2) * (1.0 - ROUNDING),
-        high: (high.sqrt() + slack).powi(2) * (1.0 + ROUNDING),
-    };
+    let loss =
+        Interval { low: (low.sqrt() - slack).max(0.0).powi(2) * (1.0 - ROUNDING), high: (high.sqrt() + slack).powi(2) * (1.0 + ROUNDING) };
     if slack > 0.0 && loss.low < loss.high / (1.0 + tolerance) {
         let units = (0..count).filter_map(|k| response.of_emf[k].clone());
-        failing.extend(units.map(|unit| (defect.form(&unit, &unit), unit)).filter(|(own, _)| *own > 0.0).map(|(own, unit)| (unit, 1.0 / own)));
+        failing
+            .extend(units.map(|unit| (defect.form(&unit, &unit), unit)).filter(|(own, _)| *own > 0.0).map(|(own, unit)| (unit, 1.0 / own)));
     }
     if !failing.is_empty() {
         let own = defect.form(currents, currents);
@@ -446,9 +445,8 @@ fn enclose(problem: &Problem, mesh: &Mesh, complex: &Complex, layout: &Layout, b
         Interval { low: low * (1.0 - ROUNDING), high: high * (1.0 + ROUNDING) }
     });
     let levels = (0..layout.pieces).map(|p| response.voltages[layout.reference_of[p]]).collect();
-    let electrodes = (0..count)
-        .map(|k| ElectrodeSolution { current: currents[k], current_range: ranges[k], voltage: voltages[k] })
-        .collect();
+    let electrodes =
+        (0..count).map(|k| ElectrodeSolution { current: currents[k], current_range: ranges[k], voltage: voltages[k] }).collect();
     Ok(Enclosed { loss, resistance, electrodes, probes, failing, voltage_spread: spread, levels, residual: ports.residual })
 }
 
@@ -461,7 +459,14 @@ fn levelled(mut potential: Field, complex: &Complex, levels: &[f64]) -> Field {
 }
 
 /// What passes every joint, and the loss of every layer: the mean of the two bounds, so that the parts add up to the middle of the loss.
-fn account(problem: &Problem, plan: &Plan, mesh: &Mesh, complex: &Complex, potential: &Field, flux: &Equilibrated) -> (BTreeMap<Mark, Passed>, Vec<f64>) {
+fn account(
+    problem: &Problem,
+    plan: &Plan,
+    mesh: &Mesh,
+    complex: &Complex,
+    potential: &Field,
+    flux: &Equilibrated,
+) -> (BTreeMap<Mark, Passed>, Vec<f64>) {
     let mut passed: BTreeMap<Mark, Passed> = BTreeMap::new();
     let value = |end: End, k: usize| potential.values[complex.unknown_at(end, k)];
     for x in &complex.area_exchanges {
@@ -507,7 +512,8 @@ fn account(problem: &Problem, plan: &Plan, mesh: &Mesh, complex: &Complex, poten
         let corners = mesh.corners(element.triangle as usize);
         let pairs = fem::conduction(corners, element.leaf.conductance);
         let mass = fem::flux_mass(corners, element.leaf.conductance);
-        let primal: f64 = (0..3).map(|k| -pairs[k] * (value(End::Leaf(e as u32), (k + 1) % 3) - value(End::Leaf(e as u32), (k + 2) % 3)).powi(2)).sum();
+        let primal: f64 =
+            (0..3).map(|k| -pairs[k] * (value(End::Leaf(e as u32), (k + 1) % 3) - value(End::Leaf(e as u32), (k + 2) % 3)).powi(2)).sum();
         let f = flux.flux[e];
         let dual: f64 = (0..3).map(|i| (0..3).map(|j| f[i] * mass[i][j] * f[j]).sum::<f64>()).sum();
         for (l, layer) in problem.layers.iter().enumerate().filter(|(l, _)| element.leaf.layers >> l & 1 == 1) {

@@ -138,7 +138,9 @@ impl fmt::Display for Fault {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Self::TooManyLayers(n) => write!(f, "{n} layers; at most {} can be stacked", super::plan::MOST_LAYERS),
-            Self::TooManyPorts(n) => write!(f, "{n} electrodes and meter tips; at most {} can be solved together", super::adapt::MOST_PORTS),
+            Self::TooManyPorts(n) => {
+                write!(f, "{n} electrodes and meter tips; at most {} can be solved together", super::adapt::MOST_PORTS)
+            }
             Self::LineThroughSheets(_) => write!(f, "a line cannot pass through several sheets"),
             Self::ElectrodesMeet(_) => write!(f, "two electrodes overlap or touch"),
             Self::Loose { at, .. } => write!(f, "the metal at ({}, {}) is connected to no electrode", at.x, at.y),
