@@ -1,13 +1,21 @@
 //! From a checked problem to its solution: plan the mesh, solve, enclose, refine.
 
+pub mod account;
 pub mod adapt;
+pub mod bar;
+pub mod enclose;
 pub mod network;
+pub mod pieces;
 pub mod plan;
 pub mod solution;
 
 pub use solution::{Fault, Solution};
 
+use crate::geometry::Point;
+use crate::index::LayerId;
+use crate::mesh::triangulated;
 use crate::problem::Problem;
+use solution::RunRecord;
 
 /// Solves a problem to the accuracy it asks for.
 ///
@@ -17,7 +25,20 @@ use crate::problem::Problem;
 pub fn run(problem: &Problem) -> Result<Solution, Vec<Fault>> {
     let plan = plan::Plan::new(problem)?;
     let drawing = plan.drawing()?;
-    adapt::refined_until_enclosed(problem, &plan, &drawing)
+    let (mesh, quality) =
+        triangulated(&drawing, problem.accuracy.max_vertices, &|cover| plan.is_metal(cover)).map_err(|f| vec![Fault::Mesh(f)])?;
+    let record = RunRecord { moves: drawing.moves, angles_reached: quality.angles_reached, ..RunRecord::default() };
+    adapt::refined_until_enclosed(problem, &plan, mesh, record)
+}
+
+/// Solves once more with the triangles under some discs (layer, middle, diameter in mm) no longer than a quarter of the diameter.
+///
+/// # Errors
+/// As [`run`].
+pub fn sharpened(problem: &Problem, solution: Solution, discs: &[(LayerId, Point, f64)]) -> Result<Solution, Vec<Fault>> {
+    let plan = plan::Plan::new(problem)?;
+    let mesh = adapt::resolved_under(solution.mesh, discs, problem.accuracy.max_vertices);
+    adapt::refined_until_enclosed(problem, &plan, mesh, solution.run)
 }
 
 #[cfg(test)]

@@ -51,6 +51,11 @@ impl Interval {
 /// Part of a figure by which an interval is widened for rounding in the solver; checked against the residual of every solve.
 pub const ROUNDING: f64 = 2e-11;
 
+/// The fault of a network that does not determine its currents.
+pub fn singular() -> Vec<super::Fault> {
+    vec![super::Fault::Numerical("the network of sources is singular".into())]
+}
+
 /// Solves the network; `None` when it is singular.
 pub fn response(problem: &Problem, layout: &Layout, ports: &Dense) -> Option<Response> {
     let electrodes = problem.electrodes.len();

@@ -63,7 +63,7 @@ pub struct Passed {
 }
 
 /// How the solving went.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Default)]
 pub struct RunRecord {
     /// Rounds of refinement.
     pub rounds: Vec<Round>,
@@ -139,7 +139,7 @@ impl fmt::Display for Fault {
         match self {
             Self::TooManyLayers(n) => write!(f, "{n} layers; at most {} can be stacked", super::plan::MOST_LAYERS),
             Self::TooManyPorts(n) => {
-                write!(f, "{n} electrodes and meter tips; at most {} can be solved together", super::adapt::MOST_PORTS)
+                write!(f, "{n} electrodes and meter tips; at most {} can be solved together", super::pieces::MOST_PORTS)
             }
             Self::LineThroughSheets(_) => write!(f, "a line cannot pass through several sheets"),
             Self::ElectrodesMeet(_) => write!(f, "two electrodes overlap or touch"),
