@@ -42,7 +42,8 @@ const CHUNK: usize = 1536;
 
 /// The flux of a single field without loads, and the defect per triangle.
 pub fn equilibrated(mesh: &Mesh, complex: &Complex, field: &Field) -> Equilibrated {
-    let parts: Vec<(Vec<[f64; 3]>, Vec<(u32, f64)>)> = chunks(complex)
+    type Part = (Vec<[f64; 3]>, Vec<(u32, f64)>);
+    let parts: Vec<Part> = chunks(complex)
         .into_par_iter()
         .map(|range| {
             let chunk = Chunk::new(mesh, complex, field, &[], range);

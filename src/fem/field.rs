@@ -17,7 +17,7 @@ impl Field {
 
     /// From solutions one after another, in which unknown `u` has the place `place[u]` or is zero (`None`).
     pub fn gathered(solutions: &[f64], width: usize, place: &[Option<u32>]) -> Self {
-        let order = if width == 0 { 0 } else { solutions.len() / width };
+        let order = solutions.len().checked_div(width).unwrap_or(0);
         let mut values = vec![0.0; place.len() * width];
         for (u, &p) in place.iter().enumerate() {
             if let Some(p) = p {

@@ -55,7 +55,7 @@ pub fn arrange(areas: &[&[Vec<Point>]], lines: &[&[Point]]) -> Result<Arrangemen
     let middle = if extent.is_empty() { Point::default() } else { extent.min.midpoint(extent.max) };
     // A round origin keeps grid positions the same for drawings that differ by whole millimetres.
     let origin = Point::new(middle.x.round(), middle.y.round());
-    if !extent.is_empty() && !(extent.width().max(extent.height()) <= 2.0 * FARTHEST_MM && origin.norm() <= 1e9) {
+    if extent.width().max(extent.height()) > 2.0 * FARTHEST_MM || origin.norm() > 1e9 {
         return Err(MeshFault::TooFar);
     }
     let mut work = Work { origin, ..Work::default() };
