@@ -1,5 +1,10 @@
 //! What a reader wants to know of a solved job: plain, serialisable, units in the field names. This is `result.json`.
 
+pub mod find;
+pub mod verdict;
+
+pub use find::find;
+
 use crate::diagnostic::Remark;
 use serde::Serialize;
 use std::collections::BTreeMap;

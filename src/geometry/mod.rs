@@ -8,5 +8,5 @@ pub mod ring;
 pub mod segment_index;
 
 pub use point::{BoundingBox, Point};
-pub use region::Region;
+pub use region::{Region, nested_area};
 pub use ring::{Ring, Vertex};

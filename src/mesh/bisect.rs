@@ -6,8 +6,8 @@
 
 use super::{Edges, Mesh, NONE};
 
-/// The mesh in which every marked triangle has all three edges halved, and its neighbours as many as conformity needs.
-pub fn bisected(mesh: &Mesh, marked: &[bool]) -> Mesh {
+/// The mesh in which every marked triangle has all three edges halved, and its neighbours as many as conformity needs; with every triangle's parent.
+pub fn bisected(mesh: &Mesh, marked: &[bool]) -> (Mesh, Vec<u32>) {
     let edges = &mesh.edges;
     let mut halved = vec![false; edges.ends.len()];
     let mut stack = Vec::new();
@@ -36,10 +36,9 @@ pub fn bisected(mesh: &Mesh, marked: &[bool]) -> Mesh {
         }
     }
     let mut triangles = Vec::with_capacity(mesh.triangles.len() * 3 / 2);
-    let mut cells = Vec::with_capacity(mesh.triangles.len() * 3 / 2);
+    let mut parents = Vec::with_capacity(mesh.triangles.len() * 3 / 2);
     for (t, &[a, b, c]) in mesh.triangles.iter().enumerate() {
         let [m, mb, mc] = edges.of_triangle[t].map(|e| middle[e as usize]);
-        let before = triangles.len();
         if m == NONE {
             triangles.push([a, b, c]);
         } else if mb != NONE && mc != NONE {
@@ -58,13 +57,14 @@ pub fn bisected(mesh: &Mesh, marked: &[bool]) -> Mesh {
                 triangles.extend([[mb, m, c], [mb, a, m]]);
             }
         }
-        cells.resize(cells.len() + triangles.len() - before, mesh.cells[t]);
+        parents.resize(triangles.len(), t as u32);
     }
     let mut finer = Edges::new(points.len(), &triangles);
     if !mesh.line_sets.is_empty() {
         carry_labels(mesh, &middle, &mut finer);
     }
-    Mesh { points, triangles, cells, edges: finer, covers: mesh.covers.clone(), line_sets: mesh.line_sets.clone() }
+    let cells = parents.iter().map(|&t| mesh.cells[t as usize]).collect();
+    (Mesh { points, triangles, cells, edges: finer, covers: mesh.covers.clone(), line_sets: mesh.line_sets.clone() }, parents)
 }
 
 /// Both halves of a labelled edge carry its label.

@@ -19,6 +19,8 @@ pub struct Enclosed {
     pub probes: Vec<Interval>,
     /// Port currents whose field must be enclosed more tightly, and the weight of their indicators.
     pub failing: Vec<(Vec<f64>, f64)>,
+    /// How many times too wide the worst of them is.
+    pub excess: f64,
     /// Largest half-width of a voltage over the largest difference.
     pub voltage_spread: f64,
     /// Level of every piece, V.
@@ -103,10 +105,11 @@ pub fn enclose(
         let high = low + defect.form(&unit, &unit).max(0.0);
         Interval { low: low * (1.0 - ROUNDING), high: high * (1.0 + ROUNDING) }
     });
+    let excess = (spread / tolerance).max((loss.high / loss.low - 1.0) / tolerance);
     let levels = (0..layout.pieces).map(|p| response.voltages[layout.reference_of[p]]).collect();
     let electrodes =
         (0..count).map(|k| ElectrodeSolution { current: currents[k], current_range: ranges[k], voltage: voltages[k] }).collect();
-    Ok(Enclosed { loss, resistance, electrodes, probes, failing, voltage_spread: spread, levels, residual: ports.residual })
+    Ok(Enclosed { loss, resistance, electrodes, probes, failing, excess, voltage_spread: spread, levels, residual: ports.residual })
 }
 
 /// The potential with every piece at its level.

@@ -1,0 +1,189 @@
+//! From a solution to the findings: electrodes, joints, layers, balances.
+
+use super::verdict::verdicts;
+use super::*;
+use crate::geometry::{Point, nested_area};
+use crate::index::{ContactId, ElectrodeId, JoinId};
+use crate::physics::Solution;
+use crate::physics::network::Interval;
+use crate::physics::plan::Mark;
+use crate::physics::solution::Passed;
+use crate::problem::{Electrode, ElectrodeKind, Footprint, Interface, Problem};
+
+/// Everything that is reported of a solved problem.
+pub fn find(problem: &Problem, solution: &Solution) -> Findings {
+    let loss = Enclosure::from(solution.loss);
+    let passed = |mark: Mark| solution.passed.get(&mark).copied().unwrap_or_default();
+    // The parts are means of both bounds at the discrete currents; scaled, they add up to the middle of the loss exactly.
+    let parts = solution.layer_loss.iter().sum::<f64>() + solution.passed.values().map(|p| p.loss).sum::<f64>();
+    let scale = if parts > 0.0 { loss.value / parts } else { 0.0 };
+    let electrodes: Vec<ElectrodeFinding> = (0..problem.electrodes.len()).map(|k| electrode(problem, solution, k, scale)).collect();
+    let layers = problem.layers.iter().zip(&solution.layer_loss).map(|(layer, layer_loss)| {
+        let area_mm2 = nested_area(&layer.rings);
+        LayerFinding {
+            name: layer.name.clone(),
+            metal: layer.material.name.clone(),
+            area_mm2,
+            mass_g: layer.material.density_g_cm3.map(|d| area_mm2 * layer.thickness_mm * d * 1e-3),
+            loss_w: layer_loss * scale,
+            peak_a_mm2: 0.0,
+        }
+    });
+    let names = |between: [crate::index::LayerId; 2]| between.map(|l| problem.layers[l.index()].name.clone());
+    let contacts = problem.contacts.iter().enumerate().map(|(c, contact)| {
+        let through = passed(Mark::Contact(ContactId::new(c)));
+        let resistive = contact.interface != Interface::Bonded;
+        ContactFinding {
+            name: contact.name.clone(),
+            between: names(contact.between),
+            current_a: resistive.then_some(through.current),
+            exchanged_a: resistive.then_some(through.exchanged),
+            loss_w: through.loss * scale,
+        }
+    });
+    let joins = problem.joins.iter().enumerate().flat_map(|(j, join)| {
+        let between = names(join.between);
+        join.spots.iter().enumerate().map(move |(i, spot)| {
+            let through = passed(Mark::Join(JoinId::new(j), i as u32));
+            let at = middle(spot);
+            JoinFinding {
+                between: between.clone(),
+                x_mm: at.x,
+                y_mm: at.y,
+                current_a: (join.joint_ohm > 0.0).then_some(through.current),
+                drop_mv: mean_drop_mv(&through),
+                loss_w: through.loss * scale,
+            }
+        })
+    });
+    let last = solution.run.rounds.last();
+    let mut findings = Findings {
+        schema: 1,
+        title: problem.title.clone(),
+        version: env!("CARGO_PKG_VERSION").into(),
+        loss_w: loss,
+        resistance_mohm: solution.resistance.map(|r| Enclosure::from(r).scaled(1e3)),
+        run: Run {
+            vertices: solution.mesh.points.len(),
+            triangles: solution.mesh.triangles.len(),
+            unknowns: solution.run.unknowns,
+            rounds: solution.run.rounds.len(),
+            bracket_percent: if loss.low > 0.0 { 100.0 * (loss.high - loss.low) / loss.low } else { 0.0 },
+            reached: solution.run.reached,
+            seconds: None,
+        },
+        electrodes,
+        layers: layers.collect(),
+        contacts: contacts.collect(),
+        joins: joins.collect(),
+        hotspots: Vec::new(),
+        probes: problem
+            .probes
+            .iter()
+            .zip(&solution.probes)
+            .map(|(probe, reading)| ProbeFinding { name: probe.name.clone(), drop_mv: Enclosure::from(*reading).scaled(1e3) })
+            .collect(),
+        crossings: Vec::new(),
+        verdicts: Vec::new(),
+        remarks: Vec::new(),
+    };
+    findings.verdicts = verdicts(problem, solution, &findings);
+    if !solution.run.reached {
+        let gap = last.map_or(0.0, |r| 100.0 * r.gap);
+        findings.remarks.push(Remark::new(format!(
+            "Accuracy not reached: at the vertex limit of {} the loss is enclosed to {gap:.3} % and the voltages to {:.3} % of the largest difference; {} % was asked for. All intervals hold.",
+            problem.accuracy.max_vertices,
+            100.0 * solution.run.voltage_spread,
+            100.0 * problem.accuracy.bracket
+        )));
+    }
+    let moves = solution.run.moves;
+    if moves.count > 0 {
+        findings.remarks.push(Remark::new(format!(
+            "{} points or edges of the drawing were snapped together, by {:.2e} mm at most.",
+            moves.count, moves.largest_mm
+        )));
+    }
+    if !solution.run.angles_reached {
+        findings.remarks.push(Remark::new(
+            "The first mesh kept some thin triangles for want of vertices: more rounds were needed, the intervals hold.",
+        ));
+    }
+    if solution.run.residual > 1e-9 {
+        findings.remarks.push(Remark::new(format!(
+            "The linear solve left a residual of {:.1e}: figures may be off by that part.",
+            solution.run.residual
+        )));
+    }
+    findings
+}
+
+impl From<Interval> for Enclosure {
+    fn from(interval: Interval) -> Self {
+        Self { low: interval.low, value: 0.5 * (interval.low + interval.high), high: interval.high }
+    }
+}
+
+fn electrode(problem: &Problem, solution: &Solution, k: usize, scale: f64) -> ElectrodeFinding {
+    let electrode = &problem.electrodes[k];
+    let solved = &solution.electrodes[k];
+    let id = ElectrodeId::new(k);
+    let passed = |mark: Mark| solution.passed.get(&mark).copied().unwrap_or_default();
+    let group_sum: f64 = members(problem, electrode).map(|j| solution.electrodes[j].current).sum();
+    let spots = electrode.spots.iter().enumerate().map(|(i, spot)| {
+        let through = passed(Mark::Spot(id, i as u32));
+        let at = middle(&spot.footprint);
+        SpotFinding {
+            x_mm: at.x,
+            y_mm: at.y,
+            current_a: through.current,
+            drop_mv: if spot.joint_ohm > 0.0 { mean_drop_mv(&through) } else { 0.0 },
+            share_percent: if solved.current == 0.0 { 0.0 } else { 100.0 * through.current / solved.current },
+            rim_a_mm2: None,
+        }
+    });
+    let loss: f64 = (0..electrode.spots.len() as u32).map(|i| passed(Mark::Spot(id, i)).loss + passed(Mark::Within(id, i)).loss).sum();
+    ElectrodeFinding {
+        name: electrode.name.clone(),
+        kind: match electrode.kind {
+            ElectrodeKind::Terminal => "terminal",
+            ElectrodeKind::Cell => "cell",
+        },
+        group: electrode.group.clone(),
+        current_a: solved.current,
+        current_range_a: Range { low: solved.current_range.low, high: solved.current_range.high },
+        voltage_mv: Enclosure::from(solved.voltage).scaled(1e3),
+        share_percent: (electrode.kind == ElectrodeKind::Cell && group_sum != 0.0).then(|| 100.0 * solved.current / group_sum),
+        loss_w: loss * scale,
+        spots: spots.collect(),
+    }
+}
+
+/// The cells of an electrode's group.
+fn members<'a>(problem: &'a Problem, electrode: &'a Electrode) -> impl Iterator<Item = usize> + 'a {
+    let same = |other: &Electrode| other.kind == ElectrodeKind::Cell && other.group == electrode.group;
+    (0..problem.electrodes.len()).filter(move |&j| electrode.kind == ElectrodeKind::Cell && same(&problem.electrodes[j]))
+}
+
+fn mean_drop_mv(through: &Passed) -> f64 {
+    if through.extent > 0.0 { 1e3 * through.difference / through.extent } else { 0.0 }
+}
+
+/// The middle of a spot; half-way along a line.
+fn middle(footprint: &Footprint) -> Point {
+    match footprint {
+        Footprint::Area { centre, .. } => *centre,
+        Footprint::Line { points } => {
+            let length: f64 = points.windows(2).map(|p| p[0].distance(p[1])).sum();
+            let mut left = 0.5 * length;
+            for pair in points.windows(2) {
+                let step = pair[0].distance(pair[1]);
+                if left <= step && step > 0.0 {
+                    return pair[0] + (pair[1] - pair[0]) * (left / step);
+                }
+                left -= step;
+            }
+            points.first().copied().unwrap_or_default()
+        }
+    }
+}
