@@ -5,8 +5,7 @@
 //! until no two segments cross and no point lies on a segment (iterated snap rounding; Hobby 1999, with a wider pixel).
 
 use super::MeshFault;
-use crate::geometry::segment_index::SegmentIndex;
-use crate::geometry::{BoundingBox, Point};
+use crate::geometry::{BoundingBox, Point, SegmentIndex};
 use std::collections::HashMap;
 
 /// Points closer than this become one, segments that pass closer are led through the point.
@@ -166,6 +165,11 @@ impl Work {
         self.segments[segment as usize].ends.map(|n| self.nodes[n as usize])
     }
 
+    fn segment_at(&self, segment: u32) -> (Point, Point) {
+        let [a, b] = self.ends(segment).map(|n| self.position(n));
+        (a, b)
+    }
+
     /// How far along a segment a node lies (0 to 1) and how far from it, when it is within the merging distance and not an end.
     fn beside(&self, segment: u32, node: u32) -> Option<(f64, f64)> {
         if self.segments[segment as usize].ends.contains(&node) {
@@ -203,20 +207,14 @@ impl Work {
         let mut fresh_segments = 0;
         for _ in 0..PASSES {
             let leaves: Vec<u32> = (0..self.segments.len() as u32).filter(|&s| self.segments[s as usize].chain.is_empty()).collect();
-            let box_of = |work: &Self, s: u32| {
-                let [a, b] = work.ends(s).map(|n| work.position(n));
-                BoundingBox::around([a, b])
-            };
-            let index = SegmentIndex::new(leaves.iter().map(|&s| {
-                let b = box_of(self, s);
-                (b.min, b.max)
-            }));
-            let node_index = (fresh_nodes > 0).then(|| SegmentIndex::new(self.nodes.iter().map(|&n| (self.position(n), self.position(n)))));
+            let index = SegmentIndex::new(leaves.iter().map(|&s| self.segment_at(s)).collect());
+            let node_index =
+                (fresh_nodes > 0).then(|| SegmentIndex::new(self.nodes.iter().map(|&n| (self.position(n), self.position(n))).collect()));
             let mut splits: Vec<(u32, f64, u32, f64)> = Vec::new();
             for n in fresh_nodes..self.nodes.len() {
                 let p = self.position(self.nodes[n]);
-                for i in index.meeting(BoundingBox { min: p - margin, max: p + margin }) {
-                    let s = leaves[i as usize];
+                for i in index.near(BoundingBox { min: p - margin, max: p + margin }) {
+                    let s = leaves[i];
                     if let Some((along, off)) = self.beside(s, n as u32) {
                         splits.push((s, along, n as u32, off));
                     }
@@ -224,9 +222,10 @@ impl Work {
             }
             let mut crossings: Vec<(u32, u32, Node)> = Vec::new();
             for &s in leaves.iter().filter(|&&s| s as usize >= fresh_segments) {
-                let b = box_of(self, s);
-                for i in index.meeting(b) {
-                    let t = leaves[i as usize];
+                let (from, to) = self.segment_at(s);
+                let b = BoundingBox::around([from, to]);
+                for i in index.near(b) {
+                    let t = leaves[i];
                     // A pair of two fresh segments is met twice; it is taken once.
                     if t != s
                         && (t < s || (t as usize) < fresh_segments)
@@ -235,9 +234,9 @@ impl Work {
                         crossings.push((t.min(s), t.max(s), p));
                     }
                 }
-                for n in node_index.iter().flat_map(|x| x.meeting(BoundingBox { min: b.min - margin, max: b.max + margin })) {
-                    if let Some((along, off)) = self.beside(s, n) {
-                        splits.push((s, along, n, off));
+                for n in node_index.iter().flat_map(|x| x.near(BoundingBox { min: b.min - margin, max: b.max + margin })) {
+                    if let Some((along, off)) = self.beside(s, n as u32) {
+                        splits.push((s, along, n as u32, off));
                     }
                 }
             }

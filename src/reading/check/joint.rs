@@ -1,0 +1,166 @@
+//! Contacts and joins between sheets.
+
+use super::layer::Stack;
+use super::names::Names;
+use super::place::place;
+use super::shape::{Form, drawn_places, rings_of};
+use crate::diagnostic::Span;
+use crate::geometry::overlap::common_area;
+use crate::geometry::{BoundingBox, Point, Region, Ring};
+use crate::index::LayerId;
+use crate::problem::{Contact, Interface, Join};
+use crate::reading::fields::{Fields, Notes, Placed, not_yet};
+use crate::reading::files::Files;
+use crate::reading::sheet::{Content, Value};
+
+/// Least common area in mm² that counts as one.
+const LEAST_OVERLAP: f64 = 1e-9;
+
+/// Reads the contacts' blocks; those with faults are left out.
+pub fn read_contacts(blocks: &[Value], stack: &Stack, files: &Files, notes: &Notes) -> Vec<(Contact, Span)> {
+    let mut names = Names::new("contact");
+    blocks.iter().filter_map(|block| read_contact(block, stack, &mut names, files, notes)).collect()
+}
+
+fn read_contact(block: &Value, stack: &Stack, names: &mut Names, files: &Files, notes: &Notes) -> Option<(Contact, Span)> {
+    let keys = ["name", "between", "over", "points_mm", "outline", "disc_mm", "contact_mohm_mm2"];
+    let fields = Fields::open(block, "contact", &keys, notes)?;
+    let name = fields.text("name");
+    if let Some(name) = &name {
+        names.add(Some(name.clone()), fields.span, notes);
+    }
+    let between = read_between(&fields, stack, notes);
+    let area = read_area(&fields, files, notes);
+    let interface = match fields.value("contact_mohm_mm2") {
+        Some(Value { content: Content::Block(_), span }) => {
+            not_yet("a band of contact values", span, notes);
+            None
+        }
+        _ => {
+            if !has_state(block) {
+                fields.missing("contact_mohm_mm2", "the contact's resistance times area in milliohm mm2; 0 is bonded");
+            }
+            fields.not_negative("contact_mohm_mm2").map(|value| match value {
+                0.0 => Interface::Bonded,
+                // 1 mohm mm2 is 1e-3 ohm mm2.
+                value => Interface::Conductance(1.0 / (value * 1e-3)),
+            })
+        }
+    };
+    let (between, area) = (between?, area?);
+    let [a, b] = between;
+    let default_name = format!("{} on {}", stack.name(a), stack.name(b));
+    overlaps(between, area.as_ref(), stack, fields.place("between"), notes)?;
+    let interface = interface?;
+    if matches!(interface, Interface::Conductance(g) if !g.is_finite()) {
+        let remedy = "write 0 for a bond";
+        notes.fault("`contact_mohm_mm2` is too small to count", fields.place("contact_mohm_mm2"), "0, or a value above 1e-300", remedy);
+        return None;
+    }
+    let span = name.as_ref().map_or_else(|| fields.span.clone(), |n| n.span.clone());
+    Some((Contact { name: name.map_or(default_name, |n| n.value), between, area, interface }, span))
+}
+
+fn has_state(block: &Value) -> bool {
+    matches!(&block.content, Content::Block(entries) if entries.iter().any(|e| e.key == "state"))
+}
+
+/// `Some(None)`: wherever both are.
+fn read_area(fields: &Fields, files: &Files, notes: &Notes) -> Option<Option<Region>> {
+    let given: Vec<&str> = ["over", "points_mm", "outline", "disc_mm"].into_iter().filter(|k| fields.has(k)).collect();
+    if let [_, second, ..] = given.as_slice() {
+        let expected = "one of `over`, `points_mm`, `outline`, `disc_mm`";
+        notes.fault("the contact's area is given twice", fields.place(second), expected, "keep one of them");
+        return None;
+    }
+    match given.first() {
+        None => Some(None),
+        Some(&"over") => {
+            let over = fields.text("over")?;
+            if over.value != "overlap" {
+                let message = format!("unknown area `{}`", over.value);
+                notes.fault(message, &over.span, "\"overlap\"", "write \"overlap\", or give `points_mm`, `outline` or `disc_mm`");
+                return None;
+            }
+            Some(None)
+        }
+        Some(&"disc_mm") => match drawn_places(fields, &["disc_mm"])?.into_iter().next()?.form {
+            Form::Disc(centre, diameter) => Some(Some(Region::from_rings([&Ring::circle(centre, diameter)]))),
+            _ => None,
+        },
+        Some(_) => {
+            let rings = rings_of(fields, files)?;
+            Some(Some(Region::from_rings(rings.iter().map(|r| &r.ring))))
+        }
+    }
+}
+
+fn read_between(fields: &Fields, stack: &Stack, notes: &Notes) -> Option<[LayerId; 2]> {
+    fields.missing("between", "the names of two layers");
+    let list = fields.list("between")?;
+    let [first, second] = list else {
+        let message = format!("`between` names {} layers", list.len());
+        notes.fault(message, fields.place("between"), "[\"one layer\", \"another\"]", "name exactly two layers");
+        return None;
+    };
+    let find = |value: &Value| match &value.content {
+        Content::Text(name) => stack.names.find(&Placed { value: name.clone(), span: value.span.clone() }, notes).map(LayerId::new),
+        other => {
+            let message = format!("`between` must hold layers' names, not {}", other.noun());
+            notes.fault(message, &value.span, "[\"one layer\", \"another\"]", "write the names in quotes");
+            None
+        }
+    };
+    let (a, b) = (find(first), find(second));
+    let (a, b) = (a?, b?);
+    if a == b {
+        notes.fault("`between` names one layer twice", &second.span, "two different layers", "name the other layer");
+        return None;
+    }
+    Some([a, b])
+}
+
+/// A fault when the sheets and the area have nothing in common.
+fn overlaps(between: [LayerId; 2], area: Option<&Region>, stack: &Stack, span: &Span, notes: &Notes) -> Option<()> {
+    let (a, b) = (stack.metal(between[0])?, stack.metal(between[1])?);
+    let shared = |p: BoundingBox, q: BoundingBox| BoundingBox {
+        min: Point::new(p.min.x.max(q.min.x), p.min.y.max(q.min.y)),
+        max: Point::new(p.max.x.min(q.max.x), p.max.y.min(q.max.y)),
+    };
+    let mut window = shared(a.bounding_box(), b.bounding_box());
+    if let Some(area) = area {
+        window = shared(window, area.bounding_box());
+    }
+    let empty = window.min.x >= window.max.x || window.min.y >= window.max.y;
+    let drawn: Vec<_> = area.map(|r| r.edges().collect()).unwrap_or_default();
+    let mut shapes = vec![a.edges(), b.edges()];
+    if area.is_some() {
+        shapes.push(&drawn);
+    }
+    if empty || common_area(&shapes, window, LEAST_OVERLAP) <= LEAST_OVERLAP {
+        let message = format!("`{}` and `{}` have no area in common there", stack.name(between[0]), stack.name(between[1]));
+        notes.fault(message, span, "sheets that overlap within the contact's area", "check the outlines' positions and the area");
+        return None;
+    }
+    Some(())
+}
+
+/// Reads the joins' blocks; those with faults are left out.
+pub fn read_joins(blocks: &[Value], stack: &Stack, files: &Files, notes: &Notes) -> Vec<(Join, Span)> {
+    blocks.iter().filter_map(|block| read_join(block, stack, files, notes)).collect()
+}
+
+fn read_join(block: &Value, stack: &Stack, files: &Files, notes: &Notes) -> Option<(Join, Span)> {
+    let keys = ["between", "spots_mm", "diameter_mm", "seams_mm", "areas_mm", "joint_mohm"];
+    let fields = Fields::open(block, "join", &keys, notes)?;
+    let between = read_between(&fields, stack, notes);
+    let places = drawn_places(&fields, &["spots_mm", "seams_mm", "areas_mm"]);
+    fields.missing("joint_mohm", "the resistance of one spot's interface in milliohm; 0 is a bond");
+    let joint = fields.not_negative("joint_mohm");
+    let (between, places) = (between?, places?);
+    let limit = files.budget.borrow_mut().spend_spots(places.len(), fields.span);
+    notes.keep(limit)?;
+    let who = format!("join {} - {}", stack.name(between[0]), stack.name(between[1]));
+    let spots = place(&places, &between, stack, &who, notes);
+    Some((Join { between, spots, joint_ohm: joint? * 1e-3 }, fields.span.clone()))
+}

@@ -1,0 +1,203 @@
+//! The layers' blocks: outline, thickness and metal; and the stack they make once corners are rounded.
+
+use super::names::Names;
+use super::shape::rings_of;
+use crate::geometry::corner::{Sharp, round_inside_corners};
+use crate::geometry::{IndexedRegion, Point, Region, Ring};
+use crate::index::LayerId;
+use crate::problem::material::metal;
+use crate::problem::{Layer, Material, Resistivity};
+use crate::reading::drawn::{DrawnRing, faults_of_rings};
+use crate::reading::fields::{Fields, Notes, Placed};
+use crate::reading::files::Files;
+use crate::reading::sheet::Value;
+use std::path::Path;
+
+const KEYS: [&str; 13] = [
+    "name",
+    "metal",
+    "resistivity_uohm_cm",
+    "alpha_per_k",
+    "conductivity_w_mk",
+    "density_g_cm3",
+    "heat_capacity_j_kgk",
+    "thickness_mm",
+    "outline",
+    "points_mm",
+    "holes_mm",
+    "corner_radius_mm",
+    "melting_c",
+];
+
+/// A layer's block before its corners are rounded.
+pub struct DrawnLayer {
+    rings: Option<Vec<DrawnRing>>,
+    material: Option<(Material, f64)>,
+    thickness_mm: Option<f64>,
+    corner_radius: Option<Placed<f64>>,
+}
+
+/// The layers as far as they could be read, with an index over each.
+pub struct Stack {
+    /// Names and their places.
+    pub names: Names,
+    /// Layers without fault.
+    pub layers: Vec<Option<Layer>>,
+    /// Their metal.
+    pub metal: Vec<Option<IndexedRegion>>,
+}
+
+impl Stack {
+    /// The metal of a layer, where it could be read.
+    pub fn metal(&self, layer: LayerId) -> Option<&IndexedRegion> {
+        self.metal.get(layer.index())?.as_ref()
+    }
+    /// A layer's name.
+    pub fn name(&self, layer: LayerId) -> &str {
+        self.names.name(layer.index())
+    }
+}
+
+/// Reads all layers' blocks. Their names come first, so that others can refer to a layer that has faults.
+pub fn read_layers(blocks: &[Value], celsius: f64, files: &Files, notes: &Notes) -> (Names, Vec<DrawnLayer>) {
+    let mut names = Names::new("layer");
+    let mut layers = Vec::new();
+    for block in blocks {
+        let Some(fields) = Fields::open(block, "layer", &KEYS, notes) else { continue };
+        names.add(fields.required_text("name"), fields.span, notes);
+        fields.missing("thickness_mm", "the sheet's thickness in mm");
+        layers.push(DrawnLayer {
+            rings: rings_of(&fields, files),
+            material: material(&fields, celsius),
+            thickness_mm: fields
+                .number_where("thickness_mm", "larger than zero and at most 100", |t| t > 0.0 && t <= 100.0)
+                .map(|t| t.value),
+            corner_radius: fields.number_where("corner_radius_mm", "larger than zero", |r| r > 0.0 && r <= 1e6),
+        });
+    }
+    (names, layers)
+}
+
+/// Metal and its resistivity in ohm mm at the job's temperature.
+fn material(fields: &Fields, celsius: f64) -> Option<(Material, f64)> {
+    let alpha = fields.number_where("alpha_per_k", "between -0.1 and 0.1", |a| a.abs() <= 0.1);
+    for key in ["conductivity_w_mk", "heat_capacity_j_kgk"] {
+        fields.positive(key);
+    }
+    fields.number("melting_c");
+    let density = fields.positive("density_g_cm3");
+    let own = fields.positive("resistivity_uohm_cm");
+    let named = fields.text("metal");
+    let material = match (named, fields.has("resistivity_uohm_cm")) {
+        (Some(name), true) => {
+            let remedy = "keep `metal`, or give figures of your own without it";
+            fields.notes.fault("the metal is given twice", &name.span, "`metal` or `resistivity_uohm_cm`", remedy);
+            return None;
+        }
+        (Some(name), false) => {
+            let Some(row) = metal(&name.value) else {
+                let known = crate::problem::material::METALS.iter().map(|m| m.name);
+                let near = crate::reading::hint::nearest(&name.value, known);
+                let remedy = near.map_or("`pinchbar metals` lists the names".to_string(), |n| format!("did you mean `{n}`?"));
+                let expected = "a row of the metals table, or `resistivity_uohm_cm`";
+                fields.notes.fault(format!("unknown metal `{}`", name.value), &name.span, expected, remedy);
+                return None;
+            };
+            if let Some(alpha) = alpha {
+                let remedy = "remove it, or give `resistivity_uohm_cm` with it in place of `metal`";
+                fields.notes.fault(
+                    "`alpha_per_k` belongs to a resistivity of your own",
+                    &alpha.span,
+                    "no `alpha_per_k` beside `metal`",
+                    remedy,
+                );
+                return None;
+            }
+            let mut material = row.material();
+            material.density_g_cm3 = density.or(material.density_g_cm3);
+            material
+        }
+        (None, true) => {
+            // 1 uohm cm is 1e-5 ohm mm.
+            let resistivity = Resistivity::Linear { at_20: own? * 1e-5, alpha: alpha.map_or(0.0, |a| a.value) };
+            Material { name: "own figures".into(), resistivity, density_g_cm3: density }
+        }
+        (None, false) => {
+            fields.missing("metal", "a row of the metals table, or `resistivity_uohm_cm`");
+            return None;
+        }
+    };
+    let resistivity = material.resistivity.at(celsius);
+    if !(resistivity > 0.0 && resistivity.is_finite()) {
+        let place = if fields.value("alpha_per_k").is_some() { fields.place("alpha_per_k") } else { fields.span };
+        let message = format!("the resistivity at {celsius} C is not above zero");
+        fields.notes.fault(message, place, "a resistivity above zero", "check `temperature_c` and `alpha_per_k`");
+        return None;
+    }
+    Some((material, resistivity))
+}
+
+/// Rounds corners where asked and makes the stack. `lines` holds for each layer the polylines of its terminals.
+pub fn make_stack(names: Names, drawn: Vec<DrawnLayer>, lines: &[Vec<Vec<Point>>], notes: &Notes) -> Stack {
+    let mut layers = Vec::with_capacity(drawn.len());
+    let mut metal = Vec::with_capacity(drawn.len());
+    for (number, layer) in drawn.into_iter().enumerate() {
+        let DrawnLayer { rings, material, thickness_mm, corner_radius } = layer;
+        let rings = rings.and_then(|rings| match corner_radius {
+            Some(radius) => rounded(rings, &radius, lines.get(number).map_or(&[], Vec::as_slice), names.name(number), notes),
+            None => Some(rings.into_iter().map(|r| r.ring).collect()),
+        });
+        let region = rings.as_ref().map(|rings: &Vec<Ring>| Region::from_rings(rings));
+        metal.push(region.as_ref().map(IndexedRegion::new));
+        layers.push((|| {
+            let (material, resistivity) = material?;
+            Some(Layer {
+                name: names.name(number).to_string(),
+                material,
+                resistivity,
+                thickness_mm: thickness_mm?,
+                rings: rings?,
+                region: region?,
+            })
+        })());
+    }
+    Stack { names, layers, metal }
+}
+
+impl DrawnLayer {
+    /// The metal before rounding, for layers whose corners will be rounded.
+    pub fn sharp_metal(&self) -> Option<IndexedRegion> {
+        self.corner_radius.as_ref()?;
+        self.rings.as_ref().map(|rings| IndexedRegion::new(&Region::from_rings(rings.iter().map(|r| &r.ring))))
+    }
+}
+
+fn rounded(drawn: Vec<DrawnRing>, radius: &Placed<f64>, lines: &[Vec<Point>], name: &str, notes: &Notes) -> Option<Vec<Ring>> {
+    let mut rings: Vec<Ring> = drawn.into_iter().map(|r| r.ring).collect();
+    let rounding = round_inside_corners(&mut rings, radius.value, lines);
+    for (why, reason) in [(Sharp::NoRoom, "the radius does not fit"), (Sharp::Terminal, "a terminal runs through")] {
+        let places: Vec<Point> = rounding.skipped.iter().filter(|s| s.1 == why).map(|s| s.0).collect();
+        if !places.is_empty() {
+            let mut list: Vec<String> = places.iter().take(5).map(|p| format!("({:.3}, {:.3})", p.x, p.y)).collect();
+            if places.len() > 5 {
+                list.push(format!("and {} more", places.len() - 5));
+            }
+            let corners = if places.len() == 1 { "1 inside corner stays" } else { &format!("{} inside corners stay", places.len()) };
+            notes.remark(format!("{name}: {corners} sharp because {reason}: {}", list.join(", ")));
+        }
+    }
+    let again: Vec<DrawnRing> =
+        rings.iter().map(|ring| DrawnRing { ring: ring.clone(), name: None, places: Vec::new(), place: radius.span.clone() }).collect();
+    let faults = faults_of_rings(&again);
+    if let Some(fault) = faults.first() {
+        let message = format!("rounded corners spoil the outline: {}", fault.message);
+        notes.fault(message, &radius.span, "a radius that leaves the rings apart", "choose a smaller radius");
+        return None;
+    }
+    Some(rings)
+}
+
+/// The folder-free name of a job file, for its default title.
+pub fn stem(path: &Path) -> String {
+    path.file_stem().map_or_else(|| "job".into(), |s| s.to_string_lossy().into_owned())
+}

@@ -1,0 +1,83 @@
+//! The outline files of a job: each loaded and read once, found beside the sheet.
+
+use super::drawn::{Budget, DrawnRing, LARGEST_TEXT, faults_of_rings, within};
+use super::fields::{Notes, Placed};
+use super::outline::read_outline;
+use crate::diagnostic::{Fault, SourceText, Span};
+use std::cell::RefCell;
+use std::collections::BTreeMap;
+use std::io::{Error, ErrorKind};
+use std::path::{Path, PathBuf};
+use std::sync::Arc;
+
+/// Loads a text by its path.
+pub type Load<'a> = &'a dyn Fn(&Path) -> std::io::Result<String>;
+
+/// The files around a sheet.
+pub struct Files<'a> {
+    folder: PathBuf,
+    load: Load<'a>,
+    notes: &'a Notes,
+    seen: RefCell<BTreeMap<PathBuf, Option<Vec<DrawnRing>>>>,
+    /// How much has been read so far.
+    pub budget: RefCell<Budget>,
+}
+
+impl<'a> Files<'a> {
+    /// Files relative to the folder of `job`.
+    pub fn beside(job: &Path, load: Load<'a>, notes: &'a Notes) -> Self {
+        let folder = job.parent().map(Path::to_path_buf).unwrap_or_default();
+        Self { folder, load, notes, seen: RefCell::default(), budget: RefCell::default() }
+    }
+
+    /// The valid rings of an outline file; `None` when it has faults, which are told once.
+    pub fn outline(&self, name: &Placed<String>) -> Option<Vec<DrawnRing>> {
+        let path = self.folder.join(&name.value);
+        if let Some(rings) = self.seen.borrow().get(&path) {
+            return rings.clone();
+        }
+        let rings = self.read(&path, &name.span);
+        self.seen.borrow_mut().insert(path, rings.clone());
+        rings
+    }
+
+    fn read(&self, path: &Path, asked_at: &Span) -> Option<Vec<DrawnRing>> {
+        let text = match (self.load)(path) {
+            Ok(text) => text,
+            Err(error) => {
+                self.notes.faults.borrow_mut().push(load_fault(path, &error, Some(asked_at.clone())));
+                return None;
+            }
+        };
+        self.notes.keep(within(text.len(), LARGEST_TEXT, "bytes in one file", asked_at))?;
+        let source = Arc::new(SourceText { path: path.to_path_buf(), text });
+        let mut faults = Vec::new();
+        let remarks = &mut *self.notes.remarks.borrow_mut();
+        let rings = read_outline(&source, &mut self.budget.borrow_mut(), &mut faults, remarks);
+        if faults.is_empty() {
+            faults = faults_of_rings(&rings);
+        }
+        let good = faults.is_empty();
+        self.notes.faults.borrow_mut().extend(faults);
+        good.then_some(rings)
+    }
+}
+
+/// A file that could not be loaded, told at the key that asks for it.
+pub fn load_fault(path: &Path, error: &Error, span: Option<Span>) -> Fault {
+    let (reason, remedy) = match error.kind() {
+        ErrorKind::NotFound => ("there is no such file", "correct the path; it is relative to the sheet"),
+        ErrorKind::IsADirectory => ("it is a folder", "name a file in it"),
+        ErrorKind::InvalidData => ("it is not text in UTF-8", "export it again as plain text (UTF-8)"),
+        ErrorKind::PermissionDenied => ("it may not be read", "give yourself the right to read it"),
+        _ => ("it cannot be read", "check the path and the disk"),
+    };
+    let detail = if reason == "it cannot be read" { format!(" ({error})") } else { String::new() };
+    Fault {
+        message: format!("cannot open {}: {reason}{detail}", path.display()),
+        span,
+        expected: Some("a readable text file".into()),
+        remedy: Some(remedy.into()),
+        labels: Vec::new(),
+    }
+}
