@@ -1,13 +1,16 @@
 //! From an arrangement to the first mesh: constrained Delaunay with a least angle; the only user of `spade`.
 
 use super::{Arrangement, Edges, Mesh, MeshFault, NONE};
-use crate::geometry::Point;
+use crate::geometry::{BoundingBox, Point};
 use spade::{AngleLimit, ConstrainedDelaunayTriangulation, Point2, RefinementParameters, Triangulation};
 use std::collections::HashMap;
 use std::sync::Arc;
 
 /// Least angle asked of the first mesh, in degrees; smaller angles of the drawing stay. Bisection lowers it once, to no less than half.
 const LEAST_ANGLE_DEGREES: f64 = 22.0;
+
+/// Triangles that the drawing's bounding box would hold at the largest size allowed: enough for a smooth picture, and a round or two less.
+const COARSEST: f64 = 1500.0;
 
 /// What came out beside the mesh.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -50,9 +53,11 @@ fn refined(drawing: &Arrangement, max_vertices: usize) -> Result<Refined, MeshFa
     if conflicts > 0 || cdt.num_vertices() != count {
         return Err(MeshFault::Triangulation(format!("{conflicts} conflicting edges, {} of {count} points", cdt.num_vertices())));
     }
+    let extent = BoundingBox::around(drawing.points.iter().copied());
     let parameters = RefinementParameters::<f64>::new()
         .with_angle_limit(AngleLimit::from_deg(LEAST_ANGLE_DEGREES))
         .exclude_outer_faces(false)
+        .with_max_allowed_area(extent.width() * extent.height() / COARSEST)
         .with_max_additional_vertices((max_vertices - count).min(20 * count + 10_000));
     let outcome = cdt.refine(parameters);
     let points = cdt.vertices().map(|v| Point::new(v.position().x, v.position().y)).collect();
@@ -157,7 +162,7 @@ fn symmetric_difference(a: &[u32], b: &[u32]) -> Vec<u32> {
 fn sorted_along_a_curve(points: &[Point], triangles: &[[u32; 3]], mut chosen: Vec<usize>) -> Vec<usize> {
     let middles: Vec<Point> =
         chosen.iter().map(|&t| triangles[t].iter().fold(Point::default(), |s, &v| s + points[v as usize]) * (1.0 / 3.0)).collect();
-    let extent = crate::geometry::BoundingBox::around(middles.iter().copied());
+    let extent = BoundingBox::around(middles.iter().copied());
     let scale = 65535.0 / extent.width().max(extent.height()).max(f64::MIN_POSITIVE);
     let spread = |x: f64| (0..16).fold(0u64, |code, bit| code | (((x as u64 >> bit) & 1) << (2 * bit)));
     let mut keyed: Vec<(u64, usize)> = chosen
