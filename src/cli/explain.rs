@@ -73,8 +73,9 @@ fn excerpt(span: &Span, kind: AnnotationKind, colour: bool) -> String {
     let mark_start = shown.len();
     let mut mark_end = mark_start;
     let rest = &source[start..line_end];
+    let room = WIDTH - lead.len().min(WIDTH / 2);
     for (count, (at, c)) in rest.char_indices().enumerate() {
-        if count > WIDTH / 2 {
+        if count > room {
             shown.push_str(" ...");
             break;
         }

@@ -54,7 +54,7 @@ joint_mohm = 0
 [[terminal]]
 name = "lug"
 layer = "carrier"
-line_mm = [[119.99, 0], [120, 30.01]]
+line_mm = [[119.99, -0.01], [120, 30.01]]
 [[cell]]
 name = "C1"
 through = ["overlay", "carrier"]
@@ -100,7 +100,7 @@ density_a_mm2 = {{ overlay = 12 }}
     assert_eq!(problem.limits.drop_v, Some(0.02));
     assert_eq!(problem.probes[0].tip_mm, 0.3);
     assert_eq!(origins.electrode(ElectrodeId(2)), origins.electrode(ElectrodeId(1)));
-    assert_eq!(origins.electrode(ElectrodeId(0)).line_column().0, 22);
+    assert_eq!(origins.electrode(ElectrodeId(0)).line_column().0, 23);
 }
 
 #[test]
@@ -179,8 +179,8 @@ current_a = -5
 #[test]
 fn unreadable_files_are_told_at_their_key() {
     let faults = read_job(&STRIP.replace("carrier.outline", "binary.outline")).expect_err("not text");
-    assert!(faults[0].message.contains("not text in UTF-8"), "{}", faults[0].message);
-    assert_eq!(faults[0].span.as_ref().map(|s| s.line_column()), Some((6, 11)));
+    let fault = faults.iter().find(|f| f.message.contains("not text in UTF-8")).expect("told");
+    assert_eq!(fault.span.as_ref().map(|s| s.line_column()), Some((6, 11)));
     assert_eq!(read(Path::new("gone.toml"), &|_| Err(Error::from(ErrorKind::NotFound))).expect_err("gone").len(), 1);
 }
 
@@ -256,4 +256,65 @@ pattern = { step_mm = [10, 0], count = 100, row_step_mm = [0, 10], rows = 100 }
     assert_eq!(reading.map(|r| r.problem.electrodes.len()).map_err(|f| crate_explained(&f)), Ok(10_001));
     assert!(begun.elapsed().as_secs_f64() < 20.0, "{:?}", begun.elapsed());
     eprintln!("read in {:?}", begun.elapsed());
+}
+
+#[test]
+fn turned_shifted_and_scaled_drawings_are_read_alike() {
+    for (degrees, shift, scale) in [(0.0, 0.0, 1.0), (23.0, 0.0, 1.0), (23.0, 1e5, 1.0), (71.0, 1000.0, 0.01), (-23.0, 3.0, 0.01)] {
+        let (sin, cos) = f64::to_radians(degrees).sin_cos();
+        let at = |x: f64, y: f64| format!("[{}, {}]", (x * cos - y * sin) * scale + shift, (x * sin + y * cos) * scale - shift);
+        let job = format!(
+            r#"
+[[layer]]
+name = "ell"
+metal = "silver"
+thickness_mm = 0.2
+points_mm = [{}, {}, {}, {}, {}, {}, {}]
+[[terminal]]
+name = "a"
+layer = "ell"
+line_mm = [{}, {}]
+[[terminal]]
+name = "b"
+layer = "ell"
+edge_mm = [{}, {}]
+current_a = 3
+[[terminal]]
+name = "c"
+layer = "ell"
+line_mm = [{}, {}]
+current_a = 3
+[[cell]]
+name = "d"
+layer = "ell"
+spots_mm = [{}]
+diameter_mm = {}
+joint_mohm = 1
+current_a = -5
+"#,
+            at(0.0, 0.0),
+            at(100.0, 0.0),
+            at(100.0, 20.0),
+            at(60.0, 20.0),
+            at(20.0, 20.0),
+            at(20.0, 90.0),
+            at(0.0, 90.0),
+            at(0.0, 90.0),
+            at(20.0, 90.0),
+            at(100.0, 0.0),
+            at(100.0, 20.0),
+            at(90.0, 20.0),
+            at(30.0, 20.0),
+            at(40.0, 0.0),
+            3.0 * scale,
+        );
+        let reading = read(Path::new("job.toml"), &|_| Ok(job.clone()));
+        let Reading { problem, remarks, .. } = reading.unwrap_or_else(|f| panic!("{degrees} {shift} {scale}: {}", crate_explained(&f)));
+        let counts: Vec<usize> = problem.electrodes[..3]
+            .iter()
+            .map(|e| if let Footprint::Line { points } = &e.spots[0].footprint { points.len() } else { 0 })
+            .collect();
+        assert_eq!(counts, [2, 2, 3], "a line along the outline takes up its corners");
+        assert_eq!(remarks.len(), 1, "half a spot, and nothing moved: {remarks:?}");
+    }
 }
