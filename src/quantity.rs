@@ -72,7 +72,15 @@ mod tests {
 
     #[test]
     fn printed_intervals_enclose() {
-        for (low, high) in [(2.557472, 2.559597), (-1.5, 1.0 / 3.0), (0.0, 1e-9), (1e5 / 3.0, 1e5 / 2.9), (7.0, 7.0), (1.0 / 3.0, 1.0 / 3.0), (-3.2e-7, -3.1e-7)] {
+        for (low, high) in [
+            (2.557472, 2.559597),
+            (-1.5, 1.0 / 3.0),
+            (0.0, 1e-9),
+            (1e5 / 3.0, 1e5 / 2.9),
+            (7.0, 7.0),
+            (1.0 / 3.0, 1.0 / 3.0),
+            (-3.2e-7, -3.1e-7),
+        ] {
             let (a, b) = outward(low, high);
             let (shown_low, shown_high) = (a.parse::<f64>().unwrap(), b.parse::<f64>().unwrap());
             assert!(shown_low <= low && shown_high >= high, "{low} {high}: {a} {b}");

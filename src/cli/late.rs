@@ -59,11 +59,17 @@ pub fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
             "a tip's disc on one piece of the layer",
             "move the tip, or make `tip_mm` smaller",
         ),
-        Late::SpotOff(k) | Late::LineThroughSheets(k) => {
-            at(origins.electrode(*k).clone(), format!("`{}`: {fault}", name(*k)), "a place on the metal of its layer", "use spots, seams or areas on the metal")
-        }
-        Late::TooManyLayers(_) | Late::TooManyPorts(_) | Late::Mesh(_) | Late::Numerical(_) => {
-            at(origins.title().clone(), fault.to_string(), "a job within the tool's limits", "divide the job, simplify the outlines, or raise `max_vertices`")
-        }
+        Late::SpotOff(k) | Late::LineThroughSheets(k) => at(
+            origins.electrode(*k).clone(),
+            format!("`{}`: {fault}", name(*k)),
+            "a place on the metal of its layer",
+            "use spots, seams or areas on the metal",
+        ),
+        Late::TooManyLayers(_) | Late::TooManyPorts(_) | Late::Mesh(_) | Late::Numerical(_) => at(
+            origins.title().clone(),
+            fault.to_string(),
+            "a job within the tool's limits",
+            "divide the job, simplify the outlines, or raise `max_vertices`",
+        ),
     }
 }

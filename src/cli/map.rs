@@ -13,8 +13,10 @@ use std::path::{Path, PathBuf};
 use std::time::Instant;
 
 /// The built-in demo: its sheet and the outline it names.
-const DEMO: [(&str, &str); 2] =
-    [("post-hole.toml", include_str!("../../shapes/post-hole.toml")), ("post-hole.outline", include_str!("../../shapes/post-hole.outline"))];
+const DEMO: [(&str, &str); 2] = [
+    ("post-hole.toml", include_str!("../../shapes/post-hole.toml")),
+    ("post-hole.outline", include_str!("../../shapes/post-hole.outline")),
+];
 
 /// What was asked.
 pub struct Request<'a> {
@@ -100,7 +102,13 @@ fn folder(request: &Request) -> Result<Option<files::OutFolder>, String> {
     files::OutFolder::ready(&path).map(Some).map_err(|e| format!("cannot write into {}: {e}", path.display()))
 }
 
-fn show(request: &Request, problem: &Problem, findings: &Findings, folder: Option<files::OutFolder>, picture: Option<Vec<u8>>) -> io::Result<Ending> {
+fn show(
+    request: &Request,
+    problem: &Problem,
+    findings: &Findings,
+    folder: Option<files::OutFolder>,
+    picture: Option<Vec<u8>>,
+) -> io::Result<Ending> {
     let json = report::json::json(findings).map_err(io::Error::other)?;
     if let Some(folder) = &folder {
         folder.replace(&[

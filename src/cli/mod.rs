@@ -75,7 +75,9 @@ fn finish(outcome: std::io::Result<Ending>) -> ExitCode {
 
 fn set_threads(common: &Common) -> Result<(), String> {
     match common.threads {
-        Some(n) => rayon::ThreadPoolBuilder::new().num_threads(n as usize).build_global().map_err(|e| format!("cannot start {n} threads: {e}")),
+        Some(n) => {
+            rayon::ThreadPoolBuilder::new().num_threads(n as usize).build_global().map_err(|e| format!("cannot start {n} threads: {e}"))
+        }
         None => Ok(()),
     }
 }

@@ -9,7 +9,20 @@ use crate::findings::Findings;
 /// Only when the rows cannot be written to memory.
 pub fn hotspots(findings: &Findings) -> Result<Vec<u8>, String> {
     let header = [
-        "rank", "kind", "layer", "x_mm", "y_mm", "peak_a_mm2", "gauge_mm", "width_mm", "section_a", "section_a_mm2", "crowding", "drop_mv", "loss_w", "remark",
+        "rank",
+        "kind",
+        "layer",
+        "x_mm",
+        "y_mm",
+        "peak_a_mm2",
+        "gauge_mm",
+        "width_mm",
+        "section_a",
+        "section_a_mm2",
+        "crowding",
+        "drop_mv",
+        "loss_w",
+        "remark",
     ];
     let rows = findings.hotspots.iter().map(|h| {
         let mut row = vec![h.rank.to_string(), words::kind(h.kind).into(), h.layer.clone()];
@@ -36,7 +49,8 @@ pub fn welds(findings: &Findings) -> Result<Vec<u8>, String> {
         })
     });
     let joins = findings.joins.iter().enumerate().map(|(i, j)| {
-        let mut row = vec![j.between.join(" - "), "join".into(), String::new(), (i + 1).to_string(), j.x_mm.to_string(), j.y_mm.to_string()];
+        let mut row =
+            vec![j.between.join(" - "), "join".into(), String::new(), (i + 1).to_string(), j.x_mm.to_string(), j.y_mm.to_string()];
         row.extend([cell(j.current_a), j.drop_mv.to_string(), String::new(), String::new()]);
         row
     });

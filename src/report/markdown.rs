@@ -90,10 +90,25 @@ fn crowding(out: &mut Page, findings: &Findings) {
     }
     out.line("## Where current crowds");
     out.table(
-        &["no", "kind", "layer", "x mm", "y mm", "peak A/mm²", "width mm", "through A", "mean A/mm²", "crowding", "drop mV", "loss W", "remark"],
+        &[
+            "no",
+            "kind",
+            "layer",
+            "x mm",
+            "y mm",
+            "peak A/mm²",
+            "width mm",
+            "through A",
+            "mean A/mm²",
+            "crowding",
+            "drop mV",
+            "loss W",
+            "remark",
+        ],
         3,
         findings.hotspots.iter().map(|h| {
-            let mut row = vec![h.rank.to_string(), words::kind(h.kind).into(), h.layer.clone(), format!("{:.2}", h.x_mm), format!("{:.2}", h.y_mm)];
+            let mut row =
+                vec![h.rank.to_string(), words::kind(h.kind).into(), h.layer.clone(), format!("{:.2}", h.x_mm), format!("{:.2}", h.y_mm)];
             row.push(three(h.peak_a_mm2));
             row.extend([h.width_mm, h.section_a, h.section_a_mm2, h.crowding, h.drop_mv, h.loss_w].map(optional));
             row.push(h.remark.clone().unwrap_or_default());
@@ -153,13 +168,19 @@ fn joints(out: &mut Page, findings: &Findings) {
     out.table(
         &["layer", "metal", "area mm²", "mass g", "loss W", "gauge peak A/mm²"],
         2,
-        findings.layers.iter().map(|l| vec![l.name.clone(), l.metal.clone(), three(l.area_mm2), optional(l.mass_g), three(l.loss_w), three(l.peak_a_mm2)]),
+        findings
+            .layers
+            .iter()
+            .map(|l| vec![l.name.clone(), l.metal.clone(), three(l.area_mm2), optional(l.mass_g), three(l.loss_w), three(l.peak_a_mm2)]),
     );
     if !findings.contacts.is_empty() {
         out.table(
             &["contact", "between", "net A", "exchanged A", "loss W"],
             2,
-            findings.contacts.iter().map(|c| vec![c.name.clone(), c.between.join(" - "), optional(c.current_a), optional(c.exchanged_a), three(c.loss_w)]),
+            findings
+                .contacts
+                .iter()
+                .map(|c| vec![c.name.clone(), c.between.join(" - "), optional(c.current_a), optional(c.exchanged_a), three(c.loss_w)]),
         );
     }
     if !findings.joins.is_empty() {
@@ -167,7 +188,14 @@ fn joints(out: &mut Page, findings: &Findings) {
             &["join between", "x mm", "y mm", "A", "drop mV", "loss W"],
             1,
             findings.joins.iter().map(|j| {
-                vec![j.between.join(" - "), format!("{:.2}", j.x_mm), format!("{:.2}", j.y_mm), optional(j.current_a), three(j.drop_mv), three(j.loss_w)]
+                vec![
+                    j.between.join(" - "),
+                    format!("{:.2}", j.x_mm),
+                    format!("{:.2}", j.y_mm),
+                    optional(j.current_a),
+                    three(j.drop_mv),
+                    three(j.loss_w),
+                ]
             }),
         );
     }
@@ -189,7 +217,14 @@ fn limits(out: &mut Page, findings: &Findings) {
 fn assumptions(out: &mut Page, problem: &Problem) {
     out.line("## What was assumed");
     let layers = problem.layers.iter().map(|l| {
-        format!("- {}: {}, {} mm, {} µΩ cm at {} °C", l.name, l.material.name, l.thickness_mm, three(l.resistivity * 1e5), problem.temperature_c)
+        format!(
+            "- {}: {}, {} mm, {} µΩ cm at {} °C",
+            l.name,
+            l.material.name,
+            l.thickness_mm,
+            three(l.resistivity * 1e5),
+            problem.temperature_c
+        )
     });
     let contacts = problem.contacts.iter().map(|c| {
         let interface = match c.interface {

@@ -1,6 +1,7 @@
 //! Findings to bytes: terminal text, JSON, CSV and a report a colleague can read. Writers return; somebody else writes files.
 
 pub mod csv;
+pub mod figure;
 pub mod json;
 pub mod markdown;
 pub mod table;
