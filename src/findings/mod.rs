@@ -1,5 +1,13 @@
 //! What a reader wants to know of a solved job: plain, serialisable, units in the field names. This is `result.json`.
 
+pub mod gauge;
+pub mod hotspot;
+pub mod kind;
+pub mod metal;
+pub mod section;
+#[cfg(test)]
+mod trial;
+
 use crate::diagnostic::Remark;
 use serde::Serialize;
 use std::collections::BTreeMap;
