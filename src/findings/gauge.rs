@@ -146,34 +146,45 @@ impl<'a> Disc<'a> {
         sum
     }
 
-    /// Goes uphill from a start: eight directions, halved steps; centres stay on the metal and where `allowed`.
+    /// Goes uphill from a start by steps that are halved: eight directions, and two along the edge of the metal and back against it, so that a
+    /// curved edge can be followed. Centres stay on the metal and where `allowed`.
     pub fn climb(&mut self, start: Place, allowed: &dyn Fn(Point) -> bool) -> (f64, Place) {
         const HALF: f64 = std::f64::consts::FRAC_1_SQRT_2;
         const WAYS: [(f64, f64); 8] =
             [(1.0, 0.0), (HALF, HALF), (0.0, 1.0), (-HALF, HALF), (-1.0, 0.0), (-HALF, -HALF), (0.0, -1.0), (HALF, -HALF)];
-        let gauge = self.metal.gauge;
-        let mut best = (self.mean(start, gauge).mean, start);
-        let mut step = 0.4 * gauge;
+        let metal = self.metal;
+        let gauge = metal.gauge;
+        let mut best = (self.mean(start, gauge), start);
+        // Wider than the chords of a small hole: the corners of its polygon are no places of their own.
+        let mut step = 1.6 * gauge;
         let mut moves = 0;
         while step > 0.02 * gauge && moves < 40 {
+            let (at, inward) = (best.1, best.0.middle - best.1.point);
+            let free = WAYS.map(|(x, y)| metal.moved(at, at.point + Point::new(x, y) * step));
+            let edge = (inward.norm() > 0.05 * gauge).then(|| {
+                let inward = inward * (step / inward.norm());
+                [inward.perpendicular(), -inward.perpendicular()].map(|side| {
+                    let aside = metal.moved(at, at.point + inward * 0.5 + side);
+                    metal.moved(aside, aside.point - inward)
+                })
+            });
             let mut better = best;
-            for (x, y) in WAYS {
-                let place = self.metal.moved(best.1, best.1.point + Point::new(x, y) * step);
+            for place in free.into_iter().chain(edge.into_iter().flatten()) {
                 if allowed(place.point) {
-                    let mean = self.mean(place, gauge).mean;
-                    if mean > better.0 * (1.0 + 1e-7) {
-                        better = (mean, place);
+                    let covered = self.mean(place, gauge);
+                    if covered.mean > better.0.mean * (1.0 + 1e-7) {
+                        better = (covered, place);
                     }
                 }
             }
-            if better.0 > best.0 {
+            if better.0.mean > best.0.mean {
                 best = better;
                 moves += 1;
             } else {
                 step *= 0.5;
             }
         }
-        best
+        (best.0.mean, best.1)
     }
 }
 

@@ -314,7 +314,7 @@ fn widens(metal: &LayerMetal, section: &Section, sign: f64) -> bool {
         }
         let ahead = density * (sign / density.norm());
         let step = if passed < 4.0 * width { 0.5 * width } else { width };
-        let walk = metal.walk(place, ahead, step, |_, _, _| true);
+        let walk = metal.walk(place, ahead, step, |_| true);
         if walk.length < 1e-2 * width {
             break;
         }

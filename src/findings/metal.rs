@@ -1,5 +1,6 @@
 //! The metal of one sheet as it was meshed: triangles with their currents and neighbours, finding a point, and walking along straight lines.
 
+use crate::fem::Link;
 use crate::geometry::{BoundingBox, Point};
 use crate::index::LayerId;
 use crate::mesh::NONE;
@@ -31,6 +32,8 @@ pub struct MetalTriangle {
     pub neighbours: [u32; 3],
     /// Part of a pole: no current of its own.
     pub held: bool,
+    /// Edges along which current passes to a pole: rims of held patches and line joints.
+    pub open: [bool; 3],
     /// This sheet's equilibrated current out through each edge, A.
     pub flux: [f64; 3],
     /// Discrete potential at the corners, V.
@@ -78,7 +81,20 @@ pub struct LayerMetal {
     grid: Grid,
 }
 
-/// What a walk met.
+/// A stretch of a walk that lies in one triangle.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Step {
+    /// The triangle.
+    pub triangle: u32,
+    /// Where the stretch begins, mm from the start.
+    pub from: f64,
+    /// Where it ends.
+    pub to: f64,
+    /// The edge by which the triangle is left; `None` where the walk ends in it.
+    pub edge: Option<usize>,
+}
+
+/// What a walk came to.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Walk {
     /// How far it came, mm.
@@ -124,6 +140,7 @@ impl LayerMetal {
                 corners,
                 neighbours: [NONE; 3],
                 held,
+                open: [0, 1, 2].map(|k| matches!(complex.links[complex.link_of[e][k] as usize], Link::Open(_))),
                 flux,
                 potential,
                 density,
@@ -136,6 +153,18 @@ impl LayerMetal {
                 let across = mesh.edges.across(triangle.triangle as usize, k);
                 if across != NONE {
                     triangle.neighbours[k] = local[across as usize / 3];
+                }
+            }
+        }
+        for x in &complex.edge_exchanges {
+            let first = complex.elements[x.element as usize].triangle as usize;
+            let second = mesh.edges.across(first, x.edge as usize);
+            for (t, k) in [(first, x.edge as usize), (second as usize / 3, second as usize % 3)] {
+                if let Some(&place) = local.get(t)
+                    && place != NONE
+                    && complex.elements[x.element as usize].leaf.layers & bit != 0
+                {
+                    triangles[place as usize].open[k] = true;
                 }
             }
         }
@@ -163,21 +192,30 @@ impl LayerMetal {
 
     /// Walks from a place along a unit vector for at most `length`, telling every triangle with the stretch that lies in it, until the edge of the
     /// metal, the end, or a `visit` that says no. A line through a vertex is taken to pass it on one side, the same for all triangles there.
-    pub fn walk(&self, from: Place, along: Point, length: f64, mut visit: impl FnMut(u32, f64, f64) -> bool) -> Walk {
+    pub fn walk(&self, from: Place, along: Point, length: f64, mut visit: impl FnMut(Step) -> bool) -> Walk {
+        let exit_of = |triangle: &MetalTriangle, origin: Point| {
+            let side = triangle.corners.map(|c| along.cross(c - origin));
+            (0..3)
+                .find(|&k| side[(k + 1) % 3] <= 0.0 && side[(k + 2) % 3] > 0.0)
+                .map(|k| (k, side[(k + 1) % 3] / (side[(k + 1) % 3] - side[(k + 2) % 3])))
+        };
         let mut at = from.triangle;
         let mut done = 0.0;
+        // From a point on the triangle's rim the line may miss it; from a hair inside it does not.
+        let origin = match exit_of(self.at(at), from.point) {
+            Some(_) => from.point,
+            None => from.point + (self.at(at).middle() - from.point) * 1e-6,
+        };
         for _ in 0..=self.triangles.len() {
             let triangle = self.at(at);
-            let side = triangle.corners.map(|c| along.cross(c - from.point));
-            let Some(k) = (0..3).find(|&k| side[(k + 1) % 3] <= 0.0 && side[(k + 2) % 3] > 0.0) else { break };
+            let Some((k, part)) = exit_of(triangle, origin) else { break };
             let (right, left) = (triangle.corners[(k + 1) % 3], triangle.corners[(k + 2) % 3]);
-            let part = side[(k + 1) % 3] / (side[(k + 1) % 3] - side[(k + 2) % 3]);
-            let out = along.dot(right + (left - right) * part - from.point).max(done);
+            let out = along.dot(right + (left - right) * part - origin).max(done);
             let to = out.min(length);
-            let go_on = visit(at, done, to);
+            let go_on = visit(Step { triangle: at, from: done, to, edge: (out < length).then_some(k) });
             done = to;
             if !go_on || out >= length {
-                return Walk { length: done, place: Place { triangle: at, point: from.point + along * done }, at_edge: false };
+                return Walk { length: done, place: Place { triangle: at, point: origin + along * done }, at_edge: false };
             }
             if triangle.neighbours[k] == NONE {
                 break;
@@ -185,14 +223,14 @@ impl LayerMetal {
             at = triangle.neighbours[k];
         }
         let stop = (done - INSET).max(0.0);
-        Walk { length: done, place: Place { triangle: at, point: from.point + along * stop }, at_edge: true }
+        Walk { length: done, place: Place { triangle: at, point: origin + along * stop }, at_edge: true }
     }
 
     /// Moves straight towards a target; the edge of the metal stops it.
     pub fn moved(&self, from: Place, target: Point) -> Place {
         let way = target - from.point;
         let length = way.norm();
-        if length > 0.0 { self.walk(from, way * (1.0 / length), length, |_, _, _| true).place } else { from }
+        if length > 0.0 { self.walk(from, way * (1.0 / length), length, |_| true).place } else { from }
     }
 
     /// Calls `visit` for the triangles whose boxes come within `reach` of a point; some are told that do not.

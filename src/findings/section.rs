@@ -46,29 +46,23 @@ fn crossing_density(triangle: &MetalTriangle, origin: Point, along: Point) -> f6
     (0..3).map(|k| triangle.flux[k] * along.cross(triangle.corners[k] - origin)).sum::<f64>() / (2.0 * triangle.area)
 }
 
-/// The cut through a place at an angle (radians); `None` where it runs through a held patch.
+/// The cut through a place at an angle (radians); `None` where it runs into a pole: a held patch or a line joint.
 fn cut(metal: &LayerMetal, place: Place, angle: f64) -> Option<Section> {
     let along = Point::new(angle.cos(), angle.sin());
     let mut defined = true;
     let mut current = 0.0;
     let mut half = |way: Point, sign: f64| {
-        metal.walk(place, way, f64::INFINITY, |t, from, to| {
-            let triangle = metal.at(t);
-            defined = !triangle.held;
-            current += sign * (to - from) * crossing_density(triangle, place.point, way);
+        let walk = metal.walk(place, way, f64::INFINITY, |step| {
+            let triangle = metal.at(step.triangle);
+            current += sign * (step.to - step.from) * crossing_density(triangle, place.point, way);
+            defined &= !triangle.held && step.edge.is_none_or(|k| !triangle.open[k]);
             defined
-        })
+        });
+        defined.then_some(walk.length)
     };
-    let forward = half(along, 1.0);
-    if !forward.at_edge {
-        return None;
-    }
-    let backward = half(-along, -1.0);
-    if !backward.at_edge {
-        return None;
-    }
-    let ends = [place.point - along * backward.length, place.point + along * forward.length];
-    let width = forward.length + backward.length;
+    let (forward, backward) = (half(along, 1.0)?, half(-along, -1.0)?);
+    let ends = [place.point - along * backward, place.point + along * forward];
+    let width = forward + backward;
     (width > 0.0).then_some(Section { ends, middle: place, along, width, current })
 }
 
@@ -103,7 +97,7 @@ pub fn best_cut(metal: &LayerMetal, places: &[Place]) -> Option<Section> {
 
 /// Width of the metal through a place along a direction.
 pub fn width_through(metal: &LayerMetal, place: Place, along: Point) -> f64 {
-    [along, -along].into_iter().map(|way| metal.walk(place, way, f64::INFINITY, |_, _, _| true).length).sum()
+    [along, -along].into_iter().map(|way| metal.walk(place, way, f64::INFINITY, |_| true).length).sum()
 }
 
 /// Drop and loss over the stretch of one section width: the square around the section, as far as there is metal that hangs together with it.
@@ -112,16 +106,17 @@ pub fn stretch(metal: &LayerMetal, section: &Section) -> Option<Stretch> {
     let mut reach = [0.0; 2];
     let mut level = [0.0; 2];
     for (i, sign) in [-1.0, 1.0].into_iter().enumerate() {
-        let out = metal.walk(section.middle, section.across() * sign, half, |_, _, _| true);
+        let out = metal.walk(section.middle, section.across() * sign, half, |_| true);
         // An end cut on the very edge of the metal would not find its way along it.
         let inset = if out.at_edge { 1e-4 * half } else { 0.0 };
         reach[i] = (out.length - inset).max(0.0);
         let place = metal.moved(section.middle, section.middle.point + section.across() * (sign * reach[i]));
         let (mut sum, mut length) = (0.0, 0.0);
         for way in [section.along, -section.along] {
-            metal.walk(place, way, half, |t, from, to| {
-                sum += (to - from) * metal.at(t).potential_at(place.point + way * (0.5 * (from + to)));
-                length += to - from;
+            metal.walk(place, way, half, |step| {
+                let (middle, part) = (place.point + way * (0.5 * (step.from + step.to)), step.to - step.from);
+                sum += part * metal.at(step.triangle).potential_at(middle);
+                length += part;
                 true
             });
         }
