@@ -29,7 +29,10 @@ const FLOOR: f64 = 0.25;
 const MOST_STARTS: usize = 48;
 
 /// Peaks nearer to each other than this are ranked by place, so that the two sides of a symmetric part do not change places with the mesh.
-const EQUAL: f64 = 0.005;
+const EQUAL: f64 = 0.01;
+
+/// A place of the same row is kept in mind (and resolved) from this part of its peak on.
+const TWIN: f64 = 0.93;
 
 /// Where a row lies, for the picture.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -77,6 +80,20 @@ struct Candidate {
     /// Of a weld rim: length and current.
     rim: Option<(f64, f64)>,
     exceeds: bool,
+    /// Other places of the same row that may be as high: the corners of one neck, the two sides of a small hole.
+    twins: Vec<Candidate>,
+}
+
+impl Candidate {
+    fn unresolved(&self, metal: &LayerMetal) -> bool {
+        self.character.kind != HotspotKind::Strip && self.covered.longest > 0.25 * metal.gauge
+    }
+
+    /// Order of equals: from left to right, then upwards, in steps of the gauge.
+    fn by_place(&self, metal: &LayerMetal) -> (i64, i64) {
+        let step = |x: f64| (x / metal.gauge).round() as i64;
+        (step(self.place.point.x), step(self.place.point.y))
+    }
 }
 
 /// Finds the hotspots of a solved problem.
@@ -92,7 +109,7 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
         let highest = candidates.iter().max_by(|a, b| a.peak.total_cmp(&b.peak));
         if let Some(highest) = highest {
             survey.layer_peaks[metal.layer.index()] = highest.peak;
-            if highest.character.kind != HotspotKind::Strip && highest.covered.longest > 0.25 * metal.gauge {
+            if highest.unresolved(metal) {
                 survey.unresolved.push((metal.layer, highest.place.point, metal.gauge));
             }
         }
@@ -102,15 +119,11 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
     // Rows with a limit come first: peaks and parts of a limit cannot be compared.
     let score = |(l, c): &(LayerId, Candidate)| limit(*l).map_or((1, c.peak), |limit| (0, c.peak / limit));
     found.sort_by(|a, b| score(a).0.cmp(&score(b).0).then(score(b).1.total_cmp(&score(a).1)));
-    let by_place = |(l, c): &(LayerId, Candidate)| {
-        let step = density.layers[l.index()].gauge;
-        (*l, (c.place.point.x / step).round() as i64, (c.place.point.y / step).round() as i64)
-    };
     let mut from = 0;
     while from < found.len() {
         let (class, top) = score(&found[from]);
         let to = from + found[from..].iter().take_while(|c| score(c).0 == class && score(c).1 >= top * (1.0 - EQUAL)).count();
-        found[from..to].sort_by_key(by_place);
+        found[from..to].sort_by_key(|(l, c)| (*l, c.by_place(&density.layers[l.index()])));
         from = to.max(from + 1);
     }
     found.truncate(MOST_ROWS);
@@ -123,11 +136,12 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
             centre: c.place.point,
             section_ends: if c.rim.is_some() { None } else { c.section.map(|s| s.ends) },
         });
-        if c.character.kind != HotspotKind::Strip && c.covered.longest > 0.25 * metal.gauge {
-            survey.unresolved.push((*layer, c.place.point, metal.gauge));
+        for each in c.twins.iter().chain([c]).filter(|each| each.unresolved(metal)) {
+            if !survey.unresolved.contains(&(*layer, each.place.point, metal.gauge)) {
+                survey.unresolved.push((*layer, each.place.point, metal.gauge));
+            }
         }
     }
-    survey.unresolved.dedup_by(|a, b| a == b);
     survey
 }
 
@@ -155,8 +169,19 @@ fn candidates_of(setting: &Setting, metal: &LayerMetal) -> Vec<Candidate> {
     let looked_at: Vec<Candidate> = apart.par_iter().map_init(|| Disc::new(metal), |disc, &c| candidate(setting, metal, disc, c)).collect();
     let mut kept: Vec<Candidate> = Vec::new();
     for c in looked_at {
-        if kept.iter().all(|k| !same(metal, k, &c)) {
-            kept.push(c);
+        match kept.iter_mut().find(|k| same(metal, k, &c)) {
+            Some(k) if c.peak >= TWIN * k.peak => k.twins.push(c),
+            Some(_) => {}
+            None => kept.push(c),
+        }
+    }
+    for row in &mut kept {
+        let least = row.peak * (1.0 - EQUAL);
+        let first = (0..row.twins.len()).filter(|&i| row.twins[i].peak >= least).min_by_key(|&i| row.twins[i].by_place(metal));
+        if let Some(i) = first.filter(|&i| row.twins[i].by_place(metal) < row.by_place(metal)) {
+            let mut twins = std::mem::take(&mut row.twins);
+            std::mem::swap(row, &mut twins[i]);
+            row.twins = twins;
         }
     }
     if !kept.iter().any(|c| c.exceeds) {
@@ -210,7 +235,7 @@ fn candidate(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, (peak, plac
         HotspotKind::WeldRim => peak >= CROWDING * disc.mean(place, 4.0 * metal.gauge).mean,
         _ => section.is_none_or(|s| peak * s.width * metal.thickness >= CROWDING * s.current.abs()),
     };
-    Candidate { place, peak, covered, section, character, rim, exceeds }
+    Candidate { place, peak, covered, section, character, rim, exceeds, twins: Vec::new() }
 }
 
 /// True when two places are one: the same spot's rim, the same neck, or corners or edges of one ring within a section width.
@@ -438,11 +463,12 @@ mod tests {
             let radius = 10.0 * part;
             let body = polygon(&[(0.0, 0.0), (60.0, 0.0), (60.0, 10.0), (0.0, 10.0)]);
             let hole = Ring::circle(Point::new(30.0, 5.0), 2.0 * radius);
-            let (.., survey) = surveyed(&strip_job(vec![body, hole], 60.0, 10.0, 1e-3, 0.06 * radius));
+            let (.., survey) = surveyed(&strip_job(vec![body, hole], 60.0, 10.0, 1e-3, 0.1 * radius));
             assert_eq!(survey.rows.len(), 2);
             for row in &survey.rows {
                 assert_eq!(row.kind, kind);
-                near(row.peak_a_mm2, ratio, 0.025);
+                // The gauge mean lies about a fifth of the gauge inside the metal, where less flows.
+                assert!(row.peak_a_mm2 > 0.95 * ratio && row.peak_a_mm2 < 1.01 * ratio, "{} {ratio}", row.peak_a_mm2);
                 near(row.width_mm.unwrap(), 5.0 - radius, 0.002);
                 near(row.section_a.unwrap(), 5.0, 0.002);
                 assert!((row.x_mm - 30.0).abs() < 0.1 * radius, "{}", row.x_mm);
@@ -619,6 +645,36 @@ mod tests {
                     assert!((row.x_mm - other.x_mm).hypot(row.y_mm - other.y_mm) < 1.0, "{row:?} {other:?}");
                 }
             }
+        }
+    }
+}
+#[cfg(test)]
+mod speed_probe {
+    use super::super::trial::*;
+    use super::*;
+    use crate::problem::*;
+    #[test]
+    fn plate() {
+        let rings = vec![
+            polygon(&[(0., 0.), (240., 0.), (240., 80.), (0., 80.)]),
+            polygon(&[(90., 28.), (150., 28.), (150., 32.), (90., 32.)]),
+            polygon(&[(90., 48.), (150., 48.), (150., 52.), (90., 52.)]),
+        ];
+        let mut electrodes = vec![];
+        for y in [15.0, 65.0] {
+            for i in 0..10 {
+                electrodes.push(electrode(ElectrodeKind::Cell, 0, disc(12.0 + 24.0 * i as f64, y, 4.0), 5e-5, Drive::Current(1.0)));
+            }
+        }
+        electrodes.push(electrode(ElectrodeKind::Terminal, 0, line(&[(240., 0.), (240., 80.)]), 0.0, Drive::Balance));
+        let job = problem(vec![sheet("p", rings, 0.2)], electrodes, 3e-4, 0.5);
+        let (s, ..) = surveyed(&job);
+        for _ in 0..5 {
+            let t = std::time::Instant::now();
+            let d = DensityField::new(&job, &s);
+            let t1 = t.elapsed();
+            let v = survey(&job, &s, &d);
+            eprintln!("{} triangles: density {:?} survey {:?} rows {}", s.mesh.triangles.len(), t1, t.elapsed() - t1, v.rows.len());
         }
     }
 }
