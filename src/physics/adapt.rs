@@ -155,21 +155,39 @@ fn marked(indicator: &[f64], share: f64) -> Vec<bool> {
     chosen
 }
 
+/// The solution on a mesh refined under some discs. Its intervals stay as they are: they hold for the problem, not for a mesh.
+pub fn sharpened(problem: &Problem, plan: &Plan, old: Solution, discs: &[(LayerId, Point, f64)]) -> Result<Solution, Vec<Fault>> {
+    let mesh = resolved_under(&old.mesh, discs, problem.accuracy.max_vertices);
+    let cells: Vec<CellPlan> = mesh.covers.iter().map(|cover| plan.cell(cover)).collect::<Result<_, _>>().map_err(|f| vec![f])?;
+    let complex = Complex::new(&mesh, &cells, &plan.line_plans(), problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
+    let layout = layout(problem, plan, &mesh, &complex)?;
+    let bar = Bar::new(problem, plan, &mesh, &complex, &layout)?;
+    let mut currents: Vec<f64> = old.electrodes.iter().map(|e| e.current).collect();
+    currents.resize(layout.piece_of.len(), 0.0);
+    let potential = bar.driven(&currents)?;
+    let flux = fem::equilibrated(&mesh, &complex, &potential);
+    let (passed, layer_loss) = account(problem, plan, &mesh, &complex, &potential, &flux);
+    let levels: Vec<f64> = layout.reference_of.iter().map(|&k| old.potential.values[k]).collect();
+    let run = RunRecord { unknowns: complex.order(), ..old.run };
+    Ok(Solution { potential: levelled(potential, &complex, &levels), flux, passed, layer_loss, run, complex, mesh, ..old })
+}
+
 /// The mesh refined until no triangle that meets one of the discs is longer than a quarter of its diameter, or the vertex limit is met.
-pub fn resolved_under(mut mesh: Mesh, discs: &[(LayerId, Point, f64)], most: usize) -> Mesh {
+fn resolved_under(mesh: &Mesh, discs: &[(LayerId, Point, f64)], most: usize) -> Mesh {
+    let mut mesh = mesh.clone();
     loop {
-        let mut coarse = vec![false; mesh.triangles.len()];
-        for &(layer, middle, diameter) in discs {
-            for (t, flag) in coarse.iter_mut().enumerate().filter(|(_, flag)| !**flag) {
+        let coarse: Vec<bool> = (0..mesh.triangles.len())
+            .map(|t| {
                 let corners = mesh.corners(t);
                 let longest = (0..3).map(|k| corners[k].distance(corners[(k + 1) % 3])).fold(0.0, f64::max);
-                let reach = 0.5 * diameter + longest;
-                *flag = longest > 0.25 * diameter
-                    && corners[0].distance(middle) < reach
-                    && mesh.cover(t).contains(&layer.0)
-                    && distance_to_triangle(corners, middle) <= 0.5 * diameter;
-            }
-        }
+                discs.iter().any(|&(layer, middle, diameter)| {
+                    longest > 0.25 * diameter
+                        && corners[0].distance(middle) < 0.5 * diameter + longest
+                        && mesh.cover(t).contains(&layer.0)
+                        && distance_to_triangle(corners, middle) <= 0.5 * diameter
+                })
+            })
+            .collect();
         if !coarse.contains(&true) {
             return mesh;
         }

@@ -31,14 +31,13 @@ pub fn run(problem: &Problem) -> Result<Solution, Vec<Fault>> {
     adapt::refined_until_enclosed(problem, &plan, mesh, record)
 }
 
-/// Solves once more with the triangles under some discs (layer, middle, diameter in mm) no longer than a quarter of the diameter.
+/// Solves once more with the triangles under some discs (layer, middle, diameter in mm) no longer than a quarter of the diameter. The intervals stay.
 ///
 /// # Errors
 /// As [`run`].
 pub fn sharpened(problem: &Problem, solution: Solution, discs: &[(LayerId, Point, f64)]) -> Result<Solution, Vec<Fault>> {
     let plan = plan::Plan::new(problem)?;
-    let mesh = adapt::resolved_under(solution.mesh, discs, problem.accuracy.max_vertices);
-    adapt::refined_until_enclosed(problem, &plan, mesh, solution.run)
+    adapt::sharpened(problem, &plan, solution, discs)
 }
 
 #[cfg(test)]
