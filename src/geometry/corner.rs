@@ -1,7 +1,7 @@
 //! Rounding of inside corners: where the metal's angle is more than half a turn, a tangent arc takes the corner's place.
 
 use super::predicate::nearest_on_segment;
-use super::{IndexedRegion, Point, Region, Ring, Vertex};
+use super::{IndexedRegion, Point, Ring, Vertex};
 
 /// Bends flatter than this (radians) are part of a drawn curve, not corners.
 const FLAT: f64 = 0.087;
@@ -28,9 +28,8 @@ pub struct Rounding {
 }
 
 /// Rounds the inside corners between straight edges of all rings with arcs of this radius (mm, > 0). `lines` are polylines of terminals:
-/// a corner on one of them stays. The rings must be valid.
-pub fn round_inside_corners(rings: &mut [Ring], radius: f64, lines: &[Vec<Point>]) -> Rounding {
-    let region = IndexedRegion::new(&Region::from_rings(&*rings));
+/// a corner on one of them stays. The rings must be valid, and `region` is theirs.
+pub fn round_inside_corners(rings: &mut [Ring], region: &IndexedRegion, radius: f64, lines: &[Vec<Point>]) -> Rounding {
     let mut rounding = Rounding::default();
     for (number, ring) in rings.iter_mut().enumerate() {
         let turn = if region.inside_on_left(number) { 1.0 } else { -1.0 };
@@ -94,6 +93,12 @@ fn rounded(ring: &Ring, turn: f64, radius: f64, lines: &[Vec<Point>], rounding: 
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::geometry::Region;
+
+    fn round(rings: &mut [Ring], radius: f64, lines: &[Vec<Point>]) -> Rounding {
+        let region = IndexedRegion::new(&Region::from_rings(&*rings));
+        round_inside_corners(rings, &region, radius, lines)
+    }
 
     fn polygon(points: &[(f64, f64)]) -> Ring {
         Ring::polygon(points.iter().map(|&(x, y)| Point::new(x, y)))
@@ -104,7 +109,7 @@ mod tests {
         let mut points = vec![(0.0, 0.0), (10.0, 0.0), (10.0, 4.0), (4.0, 4.0), (4.0, 10.0), (0.0, 10.0)];
         for _ in 0..2 {
             let mut rings = [polygon(&points)];
-            let rounding = round_inside_corners(&mut rings, 1.0, &[]);
+            let rounding = round(&mut rings, 1.0, &[]);
             assert_eq!((rounding.rounded, rounding.skipped.len(), rings[0].vertices.len()), (1, 0, 7));
             // Metal is added: the square of the corner less a quarter disc.
             let added = rings[0].signed_area().abs() - polygon(&points).signed_area().abs();
@@ -118,7 +123,7 @@ mod tests {
         let plate = polygon(&[(0.0, 0.0), (20.0, 0.0), (20.0, 10.0), (0.0, 10.0)]);
         let slot = polygon(&[(5.0, 4.0), (15.0, 4.0), (15.0, 6.0), (5.0, 6.0)]);
         let mut rings = [plate, slot];
-        assert_eq!(round_inside_corners(&mut rings, 1.0, &[]).rounded, 4);
+        assert_eq!(round(&mut rings, 1.0, &[]).rounded, 4);
         assert!((rings[1].signed_area() - (8.0 * 2.0 + std::f64::consts::PI)).abs() < 1e-12);
         assert_eq!(rings[0].vertices.len(), 4, "outside corners stay");
         assert_eq!(crate::geometry::validity::ring_faults(&rings), []);
@@ -127,10 +132,10 @@ mod tests {
     #[test]
     fn a_corner_stays_sharp_where_the_arc_has_no_room_or_a_terminal_runs() {
         let step = polygon(&[(0.0, 0.0), (10.0, 0.0), (10.0, 4.0), (4.0, 4.0), (4.0, 4.5), (0.0, 4.5)]);
-        let rounding = round_inside_corners(&mut [step.clone()], 1.0, &[]);
+        let rounding = round(&mut [step.clone()], 1.0, &[]);
         assert_eq!(rounding.skipped, vec![(Point::new(4.0, 4.0), Sharp::NoRoom)]);
         let line = vec![Point::new(4.0, 0.0), Point::new(4.0, 4.0)];
-        let rounding = round_inside_corners(&mut [step], 0.2, &[line]);
+        let rounding = round(&mut [step], 0.2, &[line]);
         assert_eq!(rounding.skipped, vec![(Point::new(4.0, 4.0), Sharp::Terminal)]);
     }
 }

@@ -6,6 +6,9 @@ use super::{BoundingBox, Point, Ring, SegmentIndex, predicate};
 /// Largest coordinate that is accepted, mm.
 pub const LARGEST_COORDINATE: f64 = 1e6;
 
+/// Largest radius of an arc, mm: beyond it the arc's points lose their last decimals.
+pub const LARGEST_RADIUS: f64 = 1e9;
+
 /// Most edges into which the rings of one outline may be flattened.
 pub const MOST_EDGES: usize = 2_000_000;
 
@@ -67,7 +70,7 @@ pub fn ring_faults(rings: &[Ring]) -> Vec<RingFault> {
 
 /// What is wrong with one ring taken alone, before its edges are compared.
 fn shape_fault(ring: &Ring, edges_so_far: usize) -> Option<(RingFaultKind, usize, Point)> {
-    let wild = |x: f64| !(x.abs() <= LARGEST_COORDINATE);
+    let wild = |x: f64| x.is_nan() || x.abs() > LARGEST_COORDINATE;
     if let Some(i) = ring.vertices.iter().position(|v| wild(v.point.x) || wild(v.point.y) || wild(v.bulge)) {
         return Some((RingFaultKind::WildNumber, i, ring.vertices[i].point));
     }
@@ -78,7 +81,7 @@ fn shape_fault(ring: &Ring, edges_so_far: usize) -> Option<(RingFaultKind, usize
     let mut edges = edges_so_far;
     for (i, (a, bulge, b)) in ring.edges().enumerate() {
         if let Some(arc) = Arc::new(a, bulge, b) {
-            if wild(arc.radius) || wild(arc.centre.x) || wild(arc.centre.y) {
+            if arc.radius > LARGEST_RADIUS {
                 return Some((RingFaultKind::WildNumber, i, a));
             }
             edges += arc.chords();

@@ -315,7 +315,10 @@ pub static METALS: &[Metal] = &[
     Metal {
         name: "cuni44",
         description: "copper-nickel CuNi44, resistance alloy",
-        resistivity: TabledResistivity::Linear { at_20: published(49.0, MAKER), alpha: published(0.0, MAKER) },
+        resistivity: TabledResistivity::Linear {
+            at_20: published(49.0, MAKER),
+            alpha: published(0.0, "maker's data sheet for this alloy: below 6e-5 either way"),
+        },
         conductivity_w_mk: published(21.0, MAKER),
         density_g_cm3: published(8.9, MAKER),
         heat_capacity_j_kgk: published(410.0, MAKER),

@@ -82,7 +82,7 @@ fn explained(fault: &RingFault, rings: &[DrawnRing]) -> Fault {
         ),
         RingFaultKind::WildNumber => (
             format!("{}: a coordinate or arc at {at} is out of range", title(ring)),
-            "finite numbers of at most 1 000 000 mm, also for the centre and radius of arcs",
+            "finite numbers of at most 1 000 000 mm, and radii of at most 1000 km",
             "move the drawing towards the origin and check the unit",
         ),
         RingFaultKind::TooManyEdges => (

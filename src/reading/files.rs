@@ -66,6 +66,7 @@ impl<'a> Files<'a> {
 /// A file that could not be loaded, told at the key that asks for it.
 pub fn load_fault(path: &Path, error: &Error, span: Option<Span>) -> Fault {
     let (reason, remedy) = match error.kind() {
+        ErrorKind::NotFound if span.is_none() => ("there is no such file", "correct the path of the job sheet"),
         ErrorKind::NotFound => ("there is no such file", "correct the path; it is relative to the sheet"),
         ErrorKind::IsADirectory => ("it is a folder", "name a file in it"),
         ErrorKind::InvalidData => ("it is not text in UTF-8", "export it again as plain text (UTF-8)"),

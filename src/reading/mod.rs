@@ -71,3 +71,6 @@ fn count_numbers(value: &Value) -> usize {
         Content::Text(_) | Content::Other(_) => 0,
     }
 }
+
+#[cfg(test)]
+mod tests;

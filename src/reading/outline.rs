@@ -2,6 +2,7 @@
 
 use super::drawn::{Budget, DrawnRing};
 use crate::diagnostic::{Fault, Remark, SourceText, Span};
+use crate::geometry::ring::SAGITTA;
 use crate::geometry::{Point, Ring, Vertex};
 use std::sync::Arc;
 
@@ -154,7 +155,7 @@ impl Reader<'_> {
         let is_circle = |line: &Line| line.text.trim_start().starts_with("circle");
         let is_points = |line: &Line| starts_number(line.text.trim_start()) || is_circle(line);
         let fits = |line: &Line, comma| count(line, comma).is_some_and(|n| n == 3 || (n == 2 && !is_circle(line)));
-        let separated = |line: &Line| line.text.trim().contains(['\t', ';']);
+        let separated = |line: &Line| line.text.trim_matches([' ', '\t', ';', ',']).contains(['\t', ';']);
         let points = || lines.iter().filter(|l| is_points(l));
         let Some(first) = points().find(|l| has_inner_comma(l.text)) else { return Comma::Separates };
         if points().any(separated) {
@@ -317,8 +318,20 @@ impl Reader<'_> {
             vertices.pop();
             places.pop();
         }
+        straighten(&mut vertices);
         if !vertices.is_empty() {
             self.rings.push(DrawnRing { ring: Ring { vertices }, name, places, place });
+        }
+    }
+}
+
+/// Arcs so flat that rounding made them are straight: well within the flattening's own deviation, and of an enormous radius.
+fn straighten(vertices: &mut [Vertex]) {
+    for i in 0..vertices.len() {
+        let chord = vertices[i].point.distance(vertices[(i + 1) % vertices.len()].point);
+        let height = 0.5 * chord * vertices[i].bulge.abs();
+        if height < 0.1 * SAGITTA && chord * chord > 8e6 * height {
+            vertices[i].bulge = 0.0;
         }
     }
 }
@@ -355,6 +368,7 @@ mod tests {
             "0\t0\n10\t0\n10\t5,5",
             "0,0 0,0\n10,0 0,0\n10,0 5,5",
             "ring\n0 0;\n10 0;\n10 5.5;\n;;\n",
+            "0 0 1e-12\n10 0\n10 5.5",
         ] {
             assert_eq!(points(same), plain, "{same}");
         }

@@ -54,7 +54,8 @@ pub struct Entry {
 
 /// Reads the whole sheet; what is no TOML is given as faults.
 pub fn read_sheet(source: &Arc<SourceText>) -> Result<Value, Vec<Fault>> {
-    let (table, errors) = DeTable::parse_recoverable(&source.text);
+    let (table, mut errors) = DeTable::parse_recoverable(&source.text);
+    errors.sort_by_key(|error| error.span().map(|range| range.start));
     let span = |range: std::ops::Range<usize>| Span { source: source.clone(), start: range.start, end: range.end };
     if errors.is_empty() {
         let range = table.span();
@@ -147,6 +148,7 @@ mod tests {
     fn every_broken_line_is_a_fault() {
         let source = Arc::new(SourceText { path: "job.toml".into(), text: "a = \nb = 1\nc = [1, 2\nd\n".into() });
         let faults = read_sheet(&source).expect_err("broken");
-        assert!(faults.len() >= 2 && faults[0].span.as_ref().map(|s| s.line_column().0) == Some(1), "{faults:?}");
+        let lines: Vec<_> = faults.iter().filter_map(|f| f.span.as_ref()).map(|s| s.line_column().0).collect();
+        assert_eq!(lines, [1, 4]);
     }
 }

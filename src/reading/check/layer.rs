@@ -35,6 +35,8 @@ pub struct DrawnLayer {
     material: Option<(Material, f64)>,
     thickness_mm: Option<f64>,
     corner_radius: Option<Placed<f64>>,
+    /// The metal before rounding, where corners will be rounded.
+    pub sharp: Option<IndexedRegion>,
 }
 
 /// The layers as far as they could be read, with an index over each.
@@ -66,13 +68,17 @@ pub fn read_layers(blocks: &[Value], celsius: f64, files: &Files, notes: &Notes)
         let Some(fields) = Fields::open(block, "layer", &KEYS, notes) else { continue };
         names.add(fields.required_text("name"), fields.span, notes);
         fields.missing("thickness_mm", "the sheet's thickness in mm");
+        let rings = rings_of(&fields, files);
+        let corner_radius = fields.number_where("corner_radius_mm", "larger than zero", |r| r > 0.0 && r <= 1e6);
+        let region = |rings: &Vec<DrawnRing>| IndexedRegion::new(&Region::from_rings(rings.iter().map(|r| &r.ring)));
         layers.push(DrawnLayer {
-            rings: rings_of(&fields, files),
+            sharp: rings.as_ref().filter(|_| corner_radius.is_some()).map(region),
+            rings,
             material: material(&fields, celsius),
             thickness_mm: fields
                 .number_where("thickness_mm", "larger than zero and at most 100", |t| t > 0.0 && t <= 100.0)
                 .map(|t| t.value),
-            corner_radius: fields.number_where("corner_radius_mm", "larger than zero", |r| r > 0.0 && r <= 1e6),
+            corner_radius,
         });
     }
     (names, layers)
@@ -142,10 +148,12 @@ pub fn make_stack(names: Names, drawn: Vec<DrawnLayer>, lines: &[Vec<Vec<Point>>
     let mut layers = Vec::with_capacity(drawn.len());
     let mut metal = Vec::with_capacity(drawn.len());
     for (number, layer) in drawn.into_iter().enumerate() {
-        let DrawnLayer { rings, material, thickness_mm, corner_radius } = layer;
-        let rings = rings.and_then(|rings| match corner_radius {
-            Some(radius) => rounded(rings, &radius, lines.get(number).map_or(&[], Vec::as_slice), names.name(number), notes),
-            None => Some(rings.into_iter().map(|r| r.ring).collect()),
+        let DrawnLayer { rings, material, thickness_mm, corner_radius, sharp } = layer;
+        let rings = rings.and_then(|rings| match (corner_radius, sharp) {
+            (Some(radius), Some(sharp)) => {
+                rounded(rings, &sharp, &radius, lines.get(number).map_or(&[], Vec::as_slice), names.name(number), notes)
+            }
+            _ => Some(rings.into_iter().map(|r| r.ring).collect()),
         });
         let region = rings.as_ref().map(|rings: &Vec<Ring>| Region::from_rings(rings));
         metal.push(region.as_ref().map(IndexedRegion::new));
@@ -164,17 +172,16 @@ pub fn make_stack(names: Names, drawn: Vec<DrawnLayer>, lines: &[Vec<Vec<Point>>
     Stack { names, layers, metal }
 }
 
-impl DrawnLayer {
-    /// The metal before rounding, for layers whose corners will be rounded.
-    pub fn sharp_metal(&self) -> Option<IndexedRegion> {
-        self.corner_radius.as_ref()?;
-        self.rings.as_ref().map(|rings| IndexedRegion::new(&Region::from_rings(rings.iter().map(|r| &r.ring))))
-    }
-}
-
-fn rounded(drawn: Vec<DrawnRing>, radius: &Placed<f64>, lines: &[Vec<Point>], name: &str, notes: &Notes) -> Option<Vec<Ring>> {
+fn rounded(
+    drawn: Vec<DrawnRing>,
+    sharp: &IndexedRegion,
+    radius: &Placed<f64>,
+    lines: &[Vec<Point>],
+    name: &str,
+    notes: &Notes,
+) -> Option<Vec<Ring>> {
     let mut rings: Vec<Ring> = drawn.into_iter().map(|r| r.ring).collect();
-    let rounding = round_inside_corners(&mut rings, radius.value, lines);
+    let rounding = round_inside_corners(&mut rings, sharp, radius.value, lines);
     for (why, reason) in [(Sharp::NoRoom, "the radius does not fit"), (Sharp::Terminal, "a terminal runs through")] {
         let places: Vec<Point> = rounding.skipped.iter().filter(|s| s.1 == why).map(|s| s.0).collect();
         if !places.is_empty() {
@@ -185,6 +192,9 @@ fn rounded(drawn: Vec<DrawnRing>, radius: &Placed<f64>, lines: &[Vec<Point>], na
             let corners = if places.len() == 1 { "1 inside corner stays" } else { &format!("{} inside corners stay", places.len()) };
             notes.remark(format!("{name}: {corners} sharp because {reason}: {}", list.join(", ")));
         }
+    }
+    if rounding.rounded == 0 {
+        return Some(rings);
     }
     let again: Vec<DrawnRing> =
         rings.iter().map(|ring| DrawnRing { ring: ring.clone(), name: None, places: Vec::new(), place: radius.span.clone() }).collect();

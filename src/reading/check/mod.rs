@@ -34,7 +34,7 @@ pub fn check(sheet: &Value, job: &Path, files: &Files, notes: &Notes) -> Option<
     let accuracy = read_accuracy(fields.value("accuracy"), notes);
 
     if !fields.has("layer") {
-        fields.missing("layer", "at least one `[[layer]]`");
+        notes.fault("the job has no layer", &title_span, "at least one `[[layer]]`", "add a `[[layer]]` block with its outline");
     }
     let (names, layers) = layer::read_layers(fields.blocks("layer"), temperature_c, files, notes);
     let drawn = electrode::read_electrodes(fields.blocks("terminal"), fields.blocks("cell"), &names, files, notes);
@@ -102,9 +102,9 @@ fn read_accuracy(value: Option<&Value>, notes: &Notes) -> Accuracy {
 /// For each layer the polylines of its terminals, where corners will be rounded.
 fn terminal_lines(layers: &[layer::DrawnLayer], drawn: &electrode::DrawnElectrodes) -> Vec<Vec<Vec<Point>>> {
     let of_layer = |(number, layer): (usize, &layer::DrawnLayer)| {
-        let Some(metal) = layer.sharp_metal() else { return Vec::new() };
+        let Some(metal) = &layer.sharp else { return Vec::new() };
         let here = drawn.list.iter().filter(|e| e.electrode.through.iter().any(|l| l.index() == number));
-        here.flat_map(|e| place::lines_before_rounding(&e.places, &metal)).collect()
+        here.flat_map(|e| place::lines_before_rounding(&e.places, metal)).collect()
     };
     layers.iter().enumerate().map(of_layer).collect()
 }

@@ -116,8 +116,10 @@ fn onto_outline(p: Point, metal: &IndexedRegion, moved: &mut usize) -> Option<Ri
         metal.index().near(BoundingBox { min: p - reach, max: p + reach }).map(|i| RimPoint { edge: i, point: metal.edges()[i].0 });
     let corner = corners.min_by(|a, b| a.point.distance(p).total_cmp(&b.point.distance(p)).then(a.edge.cmp(&b.edge)));
     // A point that is on an edge already stays there, unless it stands on a corner but for rounding.
-    let near = if rim.point.distance(p) <= 1e-9 { 1e-9 } else { ONTO_OUTLINE };
-    let target = corner.filter(|c| c.point.distance(p) <= near).unwrap_or(rim);
+    let on_edge = rim.point.distance(p) <= 1e-9;
+    let near = if on_edge { 1e-9 } else { ONTO_OUTLINE };
+    let foot = if on_edge { RimPoint { edge: rim.edge, point: p } } else { rim };
+    let target = corner.filter(|c| c.point.distance(p) <= near).unwrap_or(foot);
     if target.point.distance(p) > 1e-9 {
         *moved += 1;
     }

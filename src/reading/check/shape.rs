@@ -202,5 +202,5 @@ fn area(value: &Value, key: &str, fields: &Fields) -> Option<Drawn> {
     let faults = faults_of_rings(std::slice::from_ref(&drawn));
     let good = faults.is_empty();
     fields.notes.faults.borrow_mut().extend(faults);
-    good.then(|| Drawn { form: Form::Area(drawn.ring), span: drawn.place })
+    good.then_some(Drawn { form: Form::Area(drawn.ring), span: drawn.place })
 }
