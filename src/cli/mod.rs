@@ -1,8 +1,83 @@
-//! To come.
+//! The command line: dispatch, exit status, and nothing that computes.
 
+pub mod args;
+pub mod check;
 pub mod explain;
+pub mod files;
+pub mod late;
+pub mod map;
+pub mod metals;
+pub mod terminal;
 
-/// To come.
-pub fn run(_arguments: impl Iterator<Item = std::ffi::OsString>) -> std::process::ExitCode {
-    std::process::ExitCode::SUCCESS
+use args::{Command, Common};
+use std::ffi::OsString;
+use std::process::ExitCode;
+
+/// How a command ended.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Ending {
+    /// Done, no limit broken.
+    Done = 0,
+    /// Done, a limit is broken.
+    LimitBroken = 1,
+    /// The input is at fault.
+    BadInput = 2,
+    /// The tool failed.
+    Failed = 3,
+}
+
+impl From<Ending> for ExitCode {
+    fn from(ending: Ending) -> Self {
+        ExitCode::from(ending as u8)
+    }
+}
+
+/// Runs the command line and tells its exit status.
+pub fn run(arguments: impl Iterator<Item = OsString>) -> ExitCode {
+    let line = match args::parse(arguments) {
+        Ok(line) => line,
+        Err((text, true)) => {
+            terminal::complain(&text);
+            return Ending::BadInput.into();
+        }
+        Err((text, false)) => return finish(terminal::print(&text).map(|()| Ending::Done)),
+    };
+    let common = match &line.command {
+        Command::Map { common, .. } | Command::Check { common, .. } | Command::Metals { common } => common,
+    };
+    if let Err(text) = set_threads(common) {
+        terminal::say(&text);
+        return Ending::Failed.into();
+    }
+    finish(match &line.command {
+        Command::Map { job, common, bracket_percent, out, timings } => map::run(&map::Request {
+            job: job.as_deref(),
+            out: out.as_deref(),
+            json: common.json,
+            quiet: common.quiet,
+            bracket_percent: *bracket_percent,
+            timings: *timings,
+        }),
+        Command::Check { jobs, common } => check::run(jobs, common.json, common.quiet),
+        Command::Metals { common } => metals::run(common.json),
+    })
+}
+
+fn finish(outcome: std::io::Result<Ending>) -> ExitCode {
+    match outcome {
+        Ok(ending) => ending.into(),
+        Err(e) => {
+            terminal::say(&format!("cannot write: {e}"));
+            Ending::Failed.into()
+        }
+    }
+}
+
+fn set_threads(common: &Common) -> Result<(), String> {
+    match common.threads {
+        Some(n) => {
+            rayon::ThreadPoolBuilder::new().num_threads(n as usize).build_global().map_err(|e| format!("cannot start {n} threads: {e}"))
+        }
+        None => Ok(()),
+    }
 }

@@ -4,14 +4,22 @@ use super::verdict::verdicts;
 use super::*;
 use crate::geometry::{Point, nested_area};
 use crate::index::{ContactId, ElectrodeId, JoinId};
-use crate::physics::Solution;
 use crate::physics::network::Interval;
 use crate::physics::plan::Mark;
 use crate::physics::solution::Passed;
+use crate::physics::{Fault, Solution};
 use crate::problem::{Electrode, ElectrodeKind, Footprint, Interface, Problem};
 
-/// Everything that is reported of a solved problem.
-pub fn find(problem: &Problem, solution: &Solution) -> Findings {
+/// Everything that is reported of a solved problem, with the solution it was read from (sharpened under the hotspots).
+///
+/// # Errors
+/// As [`crate::physics::run`].
+pub fn find(problem: &Problem, solution: Solution) -> Result<(Findings, Solution), Vec<Fault>> {
+    let findings = found(problem, &solution);
+    Ok((findings, solution))
+}
+
+fn found(problem: &Problem, solution: &Solution) -> Findings {
     let loss = Enclosure::from(solution.loss);
     let passed = |mark: Mark| solution.passed.get(&mark).copied().unwrap_or_default();
     // The parts are means of both bounds at the discrete currents; scaled, they add up to the middle of the loss exactly.

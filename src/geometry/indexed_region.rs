@@ -63,18 +63,17 @@ impl IndexedRegion {
         self.nearest_rim(p).map_or(f64::INFINITY, |r| r.point.distance(p))
     }
 
-    /// Area in mm² that it has in common with `shape`.
-    pub fn overlap_area(&self, shape: &Region) -> f64 {
+    /// Which part of the area of `shape` is inside, 0 to 1.
+    pub fn part_inside(&self, shape: &Region) -> f64 {
         let window = shape.bounding_box();
-        let edges: Vec<(Point, Point)> = shape.edges().collect();
         if self.index.near(window).next().is_none() {
-            let full = || common_area(&[&edges], window, f64::INFINITY);
-            return if self.contains(window.min) { full() } else { 0.0 };
+            return if self.contains(window.min) { 1.0 } else { 0.0 };
         }
+        let edges: Vec<(Point, Point)> = shape.edges().collect();
         // Everything to the left decides what is inside; the far left has no bound.
         let reach = BoundingBox { min: Point::new(f64::MIN, window.min.y), max: window.max };
         let nearby: Vec<(Point, Point)> = self.index.near(reach).map(|i| self.edges()[i]).collect();
-        common_area(&[&edges, &nearby], window, f64::INFINITY)
+        common_area(&[&edges, &nearby], window, f64::INFINITY) / common_area(&[&edges], window, f64::INFINITY)
     }
 
     /// The loop to which an edge belongs.
@@ -169,12 +168,11 @@ mod tests {
     fn overlap_counts_the_hole() {
         let plate = plate_with_hole();
         let disc = Region::from_rings([&Ring::circle(Point::new(8.0, 5.0), 1.0)]);
-        let full = std::f64::consts::PI * 0.25;
-        assert!((plate.overlap_area(&disc) - 0.5 * full).abs() < 1e-9);
+        assert!((plate.part_inside(&disc) - 0.5).abs() < 1e-9);
         let inside = Region::from_rings([&Ring::circle(Point::new(15.0, 5.0), 1.0)]);
-        assert!((plate.overlap_area(&inside) - full).abs() < 1e-9);
+        assert!((plate.part_inside(&inside) - 1.0).abs() < 1e-9);
         let gone = Region::from_rings([&Ring::circle(Point::new(10.0, 5.0), 1.0)]);
-        assert!(plate.overlap_area(&gone) < 1e-12);
+        assert!(plate.part_inside(&gone) < 1e-12);
         assert!(!plate.contains(Point::new(10.0, 5.0)) && plate.contains(Point::new(4.0, 5.0)));
     }
 }

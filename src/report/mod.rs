@@ -1,1 +1,8 @@
-//! To come.
+//! Findings to bytes: terminal text, JSON, CSV and a report a colleague can read. Writers return; somebody else writes files.
+
+pub mod csv;
+pub mod figure;
+pub mod json;
+pub mod markdown;
+pub mod table;
+pub mod words;

@@ -82,7 +82,7 @@ fn area(
             notes.fault(message, &spot.span, "a centre on the metal", "move the spot, or name the layer it stands on");
             return None;
         }
-        let part = metal.overlap_area(&region) / area_mm2;
+        let part = metal.part_inside(&region);
         if part < 0.5 - 1e-6 {
             let message = format!("only {:.1} % of the spot at ({}, {}) is on the metal of `{name}`", 100.0 * part, centre.x, centre.y);
             notes.fault(message, &spot.span, "at least half of it on the metal", "move the spot, or make it smaller");

@@ -1,0 +1,83 @@
+//! Files in and out: texts read with a guard, results written whole or not at all; the only user of `tempfile`.
+
+use std::io::{self, Read, Write};
+use std::path::{Path, PathBuf};
+
+/// Largest text that is read, in bytes.
+const LARGEST: u64 = 64 << 20;
+
+/// Reads a text; a folder, a file above 64 MiB or one that is not UTF-8 is an error.
+pub fn load(path: &Path) -> io::Result<String> {
+    let file = std::fs::File::open(path)?;
+    if file.metadata()?.is_dir() {
+        return Err(io::Error::new(io::ErrorKind::IsADirectory, "it is a folder"));
+    }
+    let mut bytes = Vec::new();
+    // A device or pipe has no length to ask for: the guard is on what arrives.
+    file.take(LARGEST + 1).read_to_end(&mut bytes)?;
+    if bytes.len() as u64 > LARGEST {
+        return Err(io::Error::new(io::ErrorKind::FileTooLarge, "it is larger than 64 MiB"));
+    }
+    String::from_utf8(bytes).map_err(|_| io::Error::new(io::ErrorKind::InvalidData, "it is not UTF-8 text"))
+}
+
+/// A folder that was made and found writable before the work.
+#[derive(Debug)]
+pub struct OutFolder {
+    path: PathBuf,
+}
+
+impl OutFolder {
+    /// Makes the folder and checks that files can be made in it.
+    ///
+    /// # Errors
+    /// What the system says, when they cannot.
+    pub fn ready(path: &Path) -> io::Result<Self> {
+        std::fs::create_dir_all(path)?;
+        tempfile::Builder::new().prefix(".pinchbar-").tempfile_in(path)?;
+        Ok(Self { path: path.to_path_buf() })
+    }
+
+    /// Where it is.
+    pub fn path(&self) -> &Path {
+        &self.path
+    }
+
+    /// Writes all files beside their places, then renames each: a name never holds half a file. A file without content this time is removed.
+    ///
+    /// # Errors
+    /// What the system says; nothing is renamed unless everything could be written.
+    pub fn replace(&self, files: &[(&str, Option<Vec<u8>>)]) -> io::Result<()> {
+        let mut written = Vec::new();
+        for (name, content) in files {
+            if let Some(content) = content {
+                let mut file = tempfile::Builder::new().prefix(".pinchbar-").tempfile_in(&self.path)?;
+                file.write_all(content)?;
+                open_to_readers(file.as_file())?;
+                written.push((name, file));
+            }
+        }
+        for (name, file) in written {
+            file.persist(self.path.join(name)).map_err(|e| e.error)?;
+        }
+        for (name, _) in files.iter().filter(|(_, content)| content.is_none()) {
+            match std::fs::remove_file(self.path.join(name)) {
+                Err(e) if e.kind() != io::ErrorKind::NotFound => return Err(e),
+                _ => {}
+            }
+        }
+        Ok(())
+    }
+}
+
+/// Temporary files are private; results are for colleagues too.
+fn open_to_readers(file: &std::fs::File) -> io::Result<()> {
+    #[cfg(unix)]
+    {
+        use std::os::unix::fs::PermissionsExt;
+        file.set_permissions(std::fs::Permissions::from_mode(0o644))?;
+    }
+    #[cfg(not(unix))]
+    let _ = file;
+    Ok(())
+}

@@ -1,0 +1,75 @@
+//! Faults that only the mesh or the numbers show, led back to their place in the sheet.
+
+use crate::diagnostic::{Fault, Label, Span};
+use crate::index::{ElectrodeId, ProbeId};
+use crate::mesh::MeshFault;
+use crate::physics::Fault as Late;
+use crate::problem::Problem;
+use crate::reading::Origins;
+
+/// True when the tool failed, not the input.
+pub fn is_ours(fault: &Late) -> bool {
+    matches!(fault, Late::Numerical(_) | Late::Mesh(MeshFault::Triangulation(_)))
+}
+
+/// The fault with its place, what was expected and a remedy.
+pub fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
+    let name = |k: ElectrodeId| problem.electrodes.get(k.index()).map_or("?", |e| e.name.as_str());
+    let label = |k: ElectrodeId| Label { span: origins.electrode(k).clone(), text: format!("`{}` is here", name(k)) };
+    let first = |list: &[ElectrodeId]| list.first().map_or(origins.title(), |&k| origins.electrode(k)).clone();
+    let list = |ids: &[ElectrodeId]| ids.iter().map(|&k| format!("`{}`", name(k))).collect::<Vec<_>>().join(", ");
+    let at = |span: Span, message: String, expected: &str, remedy: &str| Fault {
+        message,
+        span: Some(span),
+        expected: Some(expected.into()),
+        remedy: Some(remedy.into()),
+        labels: Vec::new(),
+    };
+    match fault {
+        Late::ElectrodesMeet([a, b]) => Fault {
+            labels: vec![label(*a)],
+            ..at(
+                origins.electrode(*b).clone(),
+                format!("electrodes `{}` and `{}` overlap or touch", name(*a), name(*b)),
+                "electrodes with metal between them",
+                "move one of them apart, or make them one electrode",
+            )
+        },
+        Late::Loose { layer, at: p } => at(
+            origins.layer(*layer).clone(),
+            format!("the piece of `{}` at ({:.3}, {:.3}) mm is connected to no electrode", problem.layers[layer.index()].name, p.x, p.y),
+            "every piece of metal reached by an electrode, directly or through contacts and joins",
+            "add a contact or join that reaches it, or take the piece out of the outline",
+        ),
+        Late::Unbalanced { electrodes, sum } => at(
+            first(electrodes),
+            format!("the currents of {} add up to {sum} A", list(electrodes)),
+            "a sum of zero on every connected piece",
+            "correct a current, or leave `current_a` out of one terminal: it then takes the balance",
+        ),
+        Late::BalanceUnclear(electrodes) => at(
+            first(electrodes),
+            format!("{} cannot take the balance", list(electrodes)),
+            "one terminal without a drive, and every other electrode connected to it with `current_a`",
+            "give `current_a` or `voltage_mv` to this terminal",
+        ),
+        Late::TipOff { probe, tip } => at(
+            origins.probe(ProbeId::new(*probe)).clone(),
+            format!("tip {} of `{}` does not stand on one piece of metal", tip + 1, problem.probes[*probe].name),
+            "a tip's disc on one piece of the layer",
+            "move the tip, or make `tip_mm` smaller",
+        ),
+        Late::SpotOff(k) | Late::LineThroughSheets(k) => at(
+            origins.electrode(*k).clone(),
+            format!("`{}`: {fault}", name(*k)),
+            "a place on the metal of its layer",
+            "use spots, seams or areas on the metal",
+        ),
+        Late::TooManyLayers(_) | Late::TooManyPorts(_) | Late::Mesh(_) | Late::Numerical(_) => at(
+            origins.title().clone(),
+            fault.to_string(),
+            "a job within the tool's limits",
+            "divide the job, simplify the outlines, or raise `max_vertices`",
+        ),
+    }
+}

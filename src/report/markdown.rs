@@ -1,0 +1,260 @@
+//! `report.md`: what a colleague reads without the tool.
+
+use super::table::sharing;
+use super::words::{self, CAUTION, further_cautions, interval, optional};
+use crate::findings::Findings;
+use crate::problem::{Drive, ElectrodeKind, Interface, Problem};
+use crate::quantity::three;
+
+/// The report.
+pub fn report(problem: &Problem, findings: &Findings) -> String {
+    let mut out = Page::default();
+    out.line(format!("# {}", findings.title));
+    out.line(format!("> {CAUTION}"));
+    for caution in further_cautions(problem) {
+        out.line(format!("> {caution}"));
+    }
+    out.line("![Where current crowds](heatmap.png)");
+    headline(&mut out, findings);
+    crowding(&mut out, findings);
+    electrodes(&mut out, findings);
+    joints(&mut out, findings);
+    limits(&mut out, findings);
+    assumptions(&mut out, problem);
+    if !findings.remarks.is_empty() {
+        out.line("## Remarks");
+        out.block(findings.remarks.iter().map(|r| format!("- {}", r.text)));
+    }
+    out.line("## How far to trust it");
+    out.line(
+        "Each interval is guaranteed for the model: the flattened outlines, thicknesses, resistivities and joint resistances as entered, \
+         sheets so thin that the potential does not vary across them. It says nothing about how well those inputs are known. \
+         The model is coarse where a neck, a nugget or a radius is about as small as the sheet is thick. Contact and weld resistances are the weakest inputs: measure them on samples.",
+    );
+    out.text
+}
+
+#[derive(Default)]
+struct Page {
+    text: String,
+}
+
+impl Page {
+    /// A paragraph.
+    fn line(&mut self, text: impl AsRef<str>) {
+        self.text.push_str(text.as_ref());
+        self.text.push_str("\n\n");
+    }
+
+    /// Lines that belong together.
+    fn block(&mut self, lines: impl Iterator<Item = String>) {
+        for line in lines {
+            self.text.push_str(&line);
+            self.text.push('\n');
+        }
+        self.text.push('\n');
+    }
+
+    /// A table: text columns to the left, numbers to the right.
+    fn table(&mut self, header: &[&str], texts: usize, rows: impl Iterator<Item = Vec<String>>) {
+        let rule = header.iter().enumerate().map(|(i, _)| if i < texts { "---" } else { "---:" }).collect::<Vec<_>>();
+        let joined = |cells: &[String]| format!("| {} |", cells.iter().map(|c| c.replace('|', "\\|")).collect::<Vec<_>>().join(" | "));
+        let head = [format!("| {} |", header.join(" | ")), format!("|{}|", rule.join("|"))];
+        self.block(head.into_iter().chain(rows.map(|r| joined(&r))));
+    }
+}
+
+fn headline(out: &mut Page, findings: &Findings) {
+    out.line("## Result");
+    let mut rows = vec![vec!["loss in metal and joints".to_string(), format!("{} W", interval(findings.loss_w))]];
+    if let Some(r) = findings.resistance_mohm {
+        rows.push(vec!["resistance between the two electrodes".into(), format!("{} mΩ", interval(r))]);
+    }
+    rows.extend(findings.probes.iter().map(|p| vec![format!("reading {}", p.name), format!("{} mV", interval(p.drop_mv))]));
+    rows.extend(findings.crossings.iter().map(|c| vec![format!("current across {}", c.name), format!("{} A", three(c.total_a))]));
+    out.table(&["", "low ... high"], 1, rows.into_iter());
+    let run = &findings.run;
+    out.line(format!(
+        "The true value of the model lies between low and high: the loss is enclosed to {} %{}. Mesh: {} triangles, {} unknowns, {} rounds.",
+        three(run.bracket_percent),
+        if run.reached { "" } else { ", which is NOT as tight as asked" },
+        run.triangles,
+        run.unknowns,
+        run.rounds
+    ));
+}
+
+fn crowding(out: &mut Page, findings: &Findings) {
+    if findings.hotspots.is_empty() {
+        return;
+    }
+    out.line("## Where current crowds");
+    out.table(
+        &[
+            "no",
+            "kind",
+            "layer",
+            "x mm",
+            "y mm",
+            "peak A/mm²",
+            "width mm",
+            "through A",
+            "mean A/mm²",
+            "crowding",
+            "drop mV",
+            "loss W",
+            "remark",
+        ],
+        3,
+        findings.hotspots.iter().map(|h| {
+            let mut row =
+                vec![h.rank.to_string(), words::kind(h.kind).into(), h.layer.clone(), format!("{:.2}", h.x_mm), format!("{:.2}", h.y_mm)];
+            row.push(three(h.peak_a_mm2));
+            row.extend([h.width_mm, h.section_a, h.section_a_mm2, h.crowding, h.drop_mv, h.loss_w].map(optional));
+            row.push(h.remark.clone().unwrap_or_default());
+            row
+        }),
+    );
+    let gauges: Vec<String> = {
+        let mut list: Vec<String> = findings.hotspots.iter().map(|h| format!("{} mm on {}", three(h.gauge_mm), h.layer)).collect();
+        list.sort();
+        list.dedup();
+        list
+    };
+    out.line(format!(
+        "A peak is the mean over a gauge disc ({}) clipped to the metal, so that it does not depend on the mesh; at a sharp inside corner the density in the point itself has no bound.",
+        gauges.join(", ")
+    ));
+}
+
+fn electrodes(out: &mut Page, findings: &Findings) {
+    out.line("## Electrodes and welds");
+    out.table(
+        &["name", "kind", "group", "A", "range A", "mV", "share %", "joint loss W"],
+        3,
+        findings.electrodes.iter().map(|e| {
+            let range = crate::findings::Enclosure { low: e.current_range_a.low, value: e.current_a, high: e.current_range_a.high };
+            vec![
+                e.name.clone(),
+                e.kind.into(),
+                e.group.clone().unwrap_or_default(),
+                three(e.current_a),
+                if range.low == range.high { "given".into() } else { interval(range) },
+                interval(e.voltage_mv),
+                optional(e.share_percent),
+                three(e.loss_w),
+            ]
+        }),
+    );
+    for (group, ratio) in sharing(&findings.electrodes) {
+        out.line(format!("Sharing in {group}: largest over mean current {}.", three(ratio)));
+    }
+    out.table(
+        &["electrode", "spot", "x mm", "y mm", "A", "share %", "drop mV", "rim A/mm²"],
+        1,
+        findings.electrodes.iter().flat_map(|e| {
+            e.spots.iter().enumerate().map(move |(i, s)| {
+                let mut row = vec![e.name.clone(), (i + 1).to_string(), format!("{:.2}", s.x_mm), format!("{:.2}", s.y_mm)];
+                row.extend([s.current_a, s.share_percent, s.drop_mv].map(three));
+                row.push(optional(s.rim_a_mm2));
+                row
+            })
+        }),
+    );
+}
+
+fn joints(out: &mut Page, findings: &Findings) {
+    out.line("## Layers, contacts and joins");
+    out.table(
+        &["layer", "metal", "area mm²", "mass g", "loss W", "gauge peak A/mm²"],
+        2,
+        findings
+            .layers
+            .iter()
+            .map(|l| vec![l.name.clone(), l.metal.clone(), three(l.area_mm2), optional(l.mass_g), three(l.loss_w), three(l.peak_a_mm2)]),
+    );
+    if !findings.contacts.is_empty() {
+        out.table(
+            &["contact", "between", "net A", "exchanged A", "loss W"],
+            2,
+            findings
+                .contacts
+                .iter()
+                .map(|c| vec![c.name.clone(), c.between.join(" - "), optional(c.current_a), optional(c.exchanged_a), three(c.loss_w)]),
+        );
+    }
+    if !findings.joins.is_empty() {
+        out.table(
+            &["join between", "x mm", "y mm", "A", "drop mV", "loss W"],
+            1,
+            findings.joins.iter().map(|j| {
+                vec![
+                    j.between.join(" - "),
+                    format!("{:.2}", j.x_mm),
+                    format!("{:.2}", j.y_mm),
+                    optional(j.current_a),
+                    three(j.drop_mv),
+                    three(j.loss_w),
+                ]
+            }),
+        );
+    }
+}
+
+fn limits(out: &mut Page, findings: &Findings) {
+    out.line("## Limits");
+    out.table(
+        &["limit", "verdict", "from", "found", "margin %"],
+        3,
+        findings.verdicts.iter().map(|v| {
+            let margin = v.margin_percent.map_or("-".into(), |m| format!("{m:.0}"));
+            vec![v.limit.clone(), words::verdict(v.verdict).into(), v.source.clone(), optional(v.value), margin]
+        }),
+    );
+    out.line("PASS up to 80 % of a limit, TIGHT up to 100 %, FAIL above; the unfavourable end of an interval counts.");
+}
+
+fn assumptions(out: &mut Page, problem: &Problem) {
+    out.line("## What was assumed");
+    let layers = problem.layers.iter().map(|l| {
+        format!(
+            "- {}: {}, {} mm, {} µΩ cm at {} °C",
+            l.name,
+            l.material.name,
+            l.thickness_mm,
+            three(l.resistivity * 1e5),
+            problem.temperature_c
+        )
+    });
+    let contacts = problem.contacts.iter().map(|c| {
+        let interface = match c.interface {
+            Interface::Bonded => "bonded, no drop".to_string(),
+            Interface::Conductance(s) => format!("{} mΩ mm²", three(1e3 / s)),
+        };
+        format!("- {}: {interface}", c.name)
+    });
+    let joins = problem.joins.iter().map(|j| {
+        let [a, b] = j.between.map(|l| problem.layers[l.index()].name.as_str());
+        format!("- {} joins between {a} and {b}: {}", j.spots.len(), joint(j.joint_ohm))
+    });
+    let electrodes = problem.electrodes.iter().map(|e| {
+        let kind = if e.kind == ElectrodeKind::Cell { "cell" } else { "terminal" };
+        let drive = match e.drive {
+            Drive::Current(i) => format!("{} A given", three(i)),
+            Drive::Balance => "takes the balance".into(),
+            Drive::Held(v) => format!("held at {} mV", three(1e3 * v)),
+            Drive::Source(s) => {
+                let source = &problem.sources[s.index()];
+                format!("source of {} mV behind {} mΩ", three(1e3 * source.emf_v), three(1e3 * source.resistance_ohm))
+            }
+            Drive::Return(_) => "return end of its source".into(),
+        };
+        let joints = e.spots.first().map_or(String::new(), |s| joint(s.joint_ohm));
+        format!("- {kind} {}: {} attached at {} place(s), {joints}", e.name, drive, e.spots.len())
+    });
+    out.block(layers.chain(contacts).chain(joins).chain(electrodes));
+}
+
+fn joint(ohm: f64) -> String {
+    if ohm == 0.0 { "solid".into() } else { format!("{} mΩ each, interface only", three(1e3 * ohm)) }
+}
