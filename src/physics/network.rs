@@ -145,6 +145,10 @@ pub fn response(problem: &Problem, layout: &Layout, ports: &Dense) -> Option<Res
 
 /// The interval of a quantity whose discrete value is `value`: `unit` are the port currents of its unit, `sign` +1 for a voltage, -1 for a source's current.
 pub fn enclosed(defect: &Dense, currents: &[f64], unit: &[f64], value: f64, sign: f64, scale: f64) -> Interval {
+    if unit.iter().all(|u| *u == 0.0) {
+        // The zero of the job, exact by definition.
+        return Interval { low: value, high: value };
+    }
     let own = defect.form(unit, unit).max(0.0);
     let drive = defect.form(currents, currents).max(0.0);
     let middle = value + sign * 0.5 * defect.form(unit, currents);
