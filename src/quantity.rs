@@ -42,8 +42,10 @@ fn directed(value: f64, decimals: usize, holds: fn(&f64, &f64) -> bool) -> Strin
     loop {
         let text = format!("{:.*}", decimals, value + step * unit);
         // Printed decimals are read back, so the comparison is about what the reader sees.
-        if step.abs() > 2.0 || text.parse::<f64>().is_ok_and(|shown| holds(&shown, &value)) {
-            return text;
+        let shown = text.parse::<f64>().unwrap_or(f64::NAN);
+        if step.abs() > 2.0 || holds(&shown, &value) {
+            // A small negative end rounded up to nothing is plain zero.
+            return if shown == 0.0 { text.trim_start_matches('-').into() } else { text };
         }
         step += if holds(&0.0, &1.0) { -1.0 } else { 1.0 };
     }
@@ -80,6 +82,11 @@ mod tests {
             (7.0, 7.0),
             (1.0 / 3.0, 1.0 / 3.0),
             (-3.2e-7, -3.1e-7),
+            (-1.0, -1e-9),
+            (9.995, 9.9951),
+            (1e-12, 1.1e-12),
+            (1e9, 1e9 + 0.3),
+            (0.0, 0.0),
         ] {
             let (a, b) = outward(low, high);
             let (shown_low, shown_high) = (a.parse::<f64>().unwrap(), b.parse::<f64>().unwrap());
@@ -87,5 +94,7 @@ mod tests {
             assert!(shown_high - shown_low <= 1.25 * (high - low) + 2e-8 * low.abs().max(high.abs()) + 1e-14, "{low} {high}: {a} {b}");
         }
         assert_eq!(outward(2.557472, 2.559597), ("2.5574".to_string(), "2.5596".to_string()));
+        assert_eq!(outward(-1.0, -1e-9), ("-1.00".to_string(), "0.00".to_string()));
+        assert_eq!(outward(0.0, 0.0), ("0".to_string(), "0".to_string()));
     }
 }

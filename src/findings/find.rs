@@ -1,6 +1,6 @@
 //! From a solution to the findings: electrodes, joints, layers, balances.
 
-use super::verdict::verdicts;
+use super::verdict::{largest_drop_mv, verdicts};
 use super::*;
 use crate::geometry::{Point, nested_area};
 use crate::index::{ContactId, ElectrodeId, JoinId};
@@ -71,6 +71,7 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
         version: env!("CARGO_PKG_VERSION").into(),
         loss_w: loss,
         resistance_mohm: solution.resistance.map(|r| Enclosure::from(r).scaled(1e3)),
+        largest_drop_mv: largest_drop_mv(solution),
         run: Run {
             vertices: solution.mesh.points.len(),
             triangles: solution.mesh.triangles.len(),
