@@ -66,7 +66,7 @@ fn wrong_calls_and_wrong_input_end_with_two_and_leave_stdout_empty() {
     let broken = broken.to_string_lossy();
     let calls: [(&[&str], &str); 8] = [
         (&[], "Usage"),
-        (&["mpa"], "map"),
+        (&["chekc"], "check"),
         (&["map", "--bracket-percent", "-1"], "bracket-percent"),
         (&["check"], "JOBS"),
         (&["map", "absent.toml"], "absent.toml"),
@@ -78,7 +78,7 @@ fn wrong_calls_and_wrong_input_end_with_two_and_leave_stdout_empty() {
         let output = tool(here.path(), arguments);
         let said = text(&output.stderr);
         assert_eq!((status(&output), text(&output.stdout).as_str()), (2, ""), "{arguments:?}: {said}");
-        assert!(said.contains(part), "{arguments:?}: {said}");
+        assert!(said.starts_with("pinchbar: ") && said.contains(part), "{arguments:?}: {said}");
         assert!(!said.contains('\u{1b}'), "colour without a terminal: {said}");
     }
     assert!(!here.path().join("pinchbar-out").exists(), "a refused job leaves nothing behind");
@@ -116,8 +116,8 @@ fn json_stands_alone_on_stdout_and_is_the_same_as_the_file() {
     assert!(value["run"].get("seconds").is_none(), "times only when asked for: the same bytes on every run");
 
     let again = tool(here.path(), &["map", "strip.toml", "--json", "--out", "kept", "--threads", "1"]);
-    assert_eq!(again.stdout, output.stdout);
-    assert_eq!(std::fs::read(here.path().join("kept/result.json")).expect("the file"), output.stdout);
+    assert_eq!(text(&again.stdout), text(&output.stdout));
+    assert_eq!(std::fs::read_to_string(here.path().join("kept/result.json")).expect("the file"), text(&output.stdout));
     let timed: serde_json::Value =
         serde_json::from_slice(&tool(here.path(), &["map", "strip.toml", "--json", "--timings"]).stdout).expect("JSON");
     assert!(timed["run"]["seconds"].is_object());
@@ -177,7 +177,8 @@ fn a_folder_that_cannot_be_written_is_told_before_the_work() {
 #[test]
 fn a_closed_pipe_is_no_error() {
     let here = folder();
-    for arguments in [&["metals"][..], &["--help"], &["map", "--quiet", "--json"]] {
+    strip(here.path(), "");
+    for arguments in [&["metals"][..], &["--help"], &["check", "strip.toml"], &["map", "strip.toml", "--quiet", "--json"]] {
         let mut child = Command::new(env!("CARGO_BIN_EXE_pinchbar"))
             .args(arguments)
             .current_dir(here.path())
@@ -195,9 +196,11 @@ fn a_closed_pipe_is_no_error() {
 fn the_built_in_demo_needs_no_job() {
     let here = folder();
     let output = tool(here.path(), &["map"]);
-    assert_eq!(status(&output), 0, "{}", text(&output.stderr));
-    assert_eq!(names(&here.path().join("pinchbar-out/demo")), OURS);
-    let report = std::fs::read_to_string(here.path().join("pinchbar-out/demo/report.md")).expect("the report");
+    let demo = here.path().join("pinchbar-out/demo");
+    assert_eq!(names(&demo), OURS, "{}", text(&output.stderr));
+    let failed = std::fs::read_to_string(demo.join("result.json")).expect("the result").contains("\"FAIL\"");
+    assert_eq!(status(&output), i32::from(failed));
+    let report = std::fs::read_to_string(demo.join("report.md")).expect("the report");
     assert!(report.starts_with("# ") && report.contains("Estimate only") && report.contains("(heatmap.png)"));
 }
 

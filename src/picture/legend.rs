@@ -58,7 +58,8 @@ impl Legend<'_> {
     /// Writes the legend from its upper left corner; returns where it ends. `beside` stacks its parts, else they stand in a row.
     pub fn write(&self, drawing: &mut Drawing, at: Spot, width: f64, beside: bool) -> f64 {
         let [left, top] = at;
-        let rule = |drawing: &mut Drawing, y: f64| drawing.marks.push(Mark::Lines(vec![vec![[left, y], [left + width, y]]], 1.0, Ink::full(RULE)));
+        let rule =
+            |drawing: &mut Drawing, y: f64| drawing.marks.push(Mark::Lines(vec![vec![[left, y], [left + width, y]]], 1.0, Ink::full(RULE)));
         rule(drawing, top);
         let mut end;
         if beside {
