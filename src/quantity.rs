@@ -22,6 +22,13 @@ pub fn significant(value: f64, digits: usize) -> String {
     format!("{value:.*}", (digits as i32 - 1 - exponent).max(0) as usize)
 }
 
+/// A coordinate or a length in mm: at most three decimals, no idle zeros.
+pub fn coordinate(value: f64) -> String {
+    let text = format!("{value:.3}");
+    let text = text.trim_end_matches('0').trim_end_matches('.');
+    if text == "-0" { "0".into() } else { text.into() }
+}
+
 /// The two ends of an interval with as many decimals as show its width, the low one rounded down and the high one up.
 pub fn outward(low: f64, high: f64) -> (String, String) {
     let size = low.abs().max(high.abs());
@@ -70,6 +77,11 @@ mod tests {
         ] {
             assert_eq!(three(value), text);
         }
+    }
+
+    #[test]
+    fn coordinates_have_no_idle_zeros() {
+        assert_eq!([12.5, -0.0001, 30.0, 0.1236, 100.0].map(coordinate), ["12.5", "0", "30", "0.124", "100"]);
     }
 
     #[test]

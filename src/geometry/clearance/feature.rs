@@ -127,8 +127,13 @@ fn unit(v: Point) -> Point {
 
 impl Feature {
     /// True for the tip of a corner.
-    pub fn is_tip(&self) -> bool {
+    fn is_tip(&self) -> bool {
         matches!(self, Self::Tip { .. })
+    }
+
+    /// True for a straight edge.
+    pub fn is_straight(&self) -> bool {
+        matches!(self, Self::Straight { .. })
     }
 
     /// A convex polygon around it.

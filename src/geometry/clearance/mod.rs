@@ -75,7 +75,7 @@ impl Search<'_> {
                     }
                     for (from, to) in feature.facing(&self.features[j], side) {
                         let width_mm = from.distance(to);
-                        let stretch = !feature.is_tip() && !self.features[j].is_tip();
+                        let stretch = feature.is_straight() && self.features[j].is_straight();
                         // Of equals, the middle of a stretch is a better place than its end.
                         let slack = if stretch && !at_stretch { NOTHING } else { -NOTHING };
                         let limit = best.map_or(far, |b| b.width_mm * (1.0 + slack));
@@ -182,6 +182,18 @@ mod tests {
         let [web, slot] = widths(&[rectangle(0.0, 0.0, 10.0, 20.0), rectangle(11.5, 0.0, 21.5, 30.0)]);
         close(web, 10.0);
         close(slot, 1.5);
+    }
+
+    #[test]
+    fn of_equal_places_the_middle_of_a_stretch_is_shown() {
+        let corners = [(33.8, 2.0), (38.2, 2.0), (39.0, 2.8), (39.0, 9.2), (38.2, 10.0), (33.8, 10.0), (33.0, 9.2), (33.0, 2.8)];
+        let rounded = corners
+            .iter()
+            .enumerate()
+            .map(|(i, &(x, y))| Vertex { point: Point::new(x, y), bulge: if i % 2 == 1 { 0.4142135624 } else { 0.0 } });
+        let web = clearances(&[rectangle(0.0, 0.0, 66.0, 12.0), Ring { vertices: rounded.collect() }]).web.unwrap();
+        close(Some(web.width_mm), 2.0);
+        assert!((web.from.x - 36.0).abs() < 1e-9 && (web.to.x - 36.0).abs() < 1e-9, "{web:?}");
     }
 
     #[test]
