@@ -237,7 +237,10 @@ fn a_fault_that_only_the_solving_shows_has_its_place_too() {
     let output = tool(here.path(), &["map", "strip.toml"]);
     let said = text(&output.stderr);
     assert_eq!((status(&output), text(&output.stdout).as_str()), (2, ""), "{said}");
-    assert!(said.starts_with("pinchbar: strip.toml:3:") && said.contains("connected to no electrode") && said.contains("remedy: "), "{said}");
+    assert!(
+        said.starts_with("pinchbar: strip.toml:3:") && said.contains("connected to no electrode") && said.contains("remedy: "),
+        "{said}"
+    );
     assert!(!here.path().join("pinchbar-out/strip/result.json").exists());
 }
 

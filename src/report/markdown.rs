@@ -39,16 +39,15 @@ pub fn report(problem: &Problem, findings: &Findings) -> String {
     out.text
 }
 
-/// What was solved, in two sentences.
+/// What was solved, in one sentence.
 fn in_short(problem: &Problem, findings: &Findings) -> String {
     let sheets: Vec<String> =
         problem.layers.iter().map(|l| format!("{} ({}, {} mm)", plain(&l.name), plain(&l.material.name), l.thickness_mm)).collect();
     let cells = problem.electrodes.iter().filter(|e| e.kind == ElectrodeKind::Cell).count();
     let into: f64 = findings.electrodes.iter().map(|e| e.current_a.max(0.0)).sum();
     format!(
-        "Solved: {} as {}, bottom first, at {} °C. {} and {} drive {} A through the metal.",
-        counted(sheets.len(), "sheet"),
-        sheets.join(", "),
+        "Solved: {}, at {} °C, with {} and {}; {} A go in and out.",
+        if sheets.len() == 1 { sheets.join("") } else { format!("{} sheets, bottom first: {}", sheets.len(), sheets.join(", ")) },
         problem.temperature_c,
         counted(cells, "cell end"),
         counted(problem.electrodes.len() - cells, "terminal"),
