@@ -22,6 +22,13 @@ pub fn significant(value: f64, digits: usize) -> String {
     format!("{value:.*}", (digits as i32 - 1 - exponent).max(0) as usize)
 }
 
+/// A coordinate or a length in mm: at most three decimals, no idle zeros.
+pub fn coordinate(value: f64) -> String {
+    let text = format!("{value:.3}");
+    let text = text.trim_end_matches('0').trim_end_matches('.');
+    if text == "-0" { "0".into() } else { text.into() }
+}
+
 /// The two ends of an interval with as many decimals as show its width, the low one rounded down and the high one up.
 pub fn outward(low: f64, high: f64) -> (String, String) {
     let size = low.abs().max(high.abs());
@@ -42,8 +49,10 @@ fn directed(value: f64, decimals: usize, holds: fn(&f64, &f64) -> bool) -> Strin
     loop {
         let text = format!("{:.*}", decimals, value + step * unit);
         // Printed decimals are read back, so the comparison is about what the reader sees.
-        if step.abs() > 2.0 || text.parse::<f64>().is_ok_and(|shown| holds(&shown, &value)) {
-            return text;
+        let shown = text.parse::<f64>().unwrap_or(f64::NAN);
+        if step.abs() > 2.0 || holds(&shown, &value) {
+            // A small negative end rounded up to nothing is plain zero.
+            return if shown == 0.0 { text.trim_start_matches('-').into() } else { text };
         }
         step += if holds(&0.0, &1.0) { -1.0 } else { 1.0 };
     }
@@ -71,6 +80,11 @@ mod tests {
     }
 
     #[test]
+    fn coordinates_have_no_idle_zeros() {
+        assert_eq!([12.5, -0.0001, 30.0, 0.1236, 100.0].map(coordinate), ["12.5", "0", "30", "0.124", "100"]);
+    }
+
+    #[test]
     fn printed_intervals_enclose() {
         for (low, high) in [
             (2.557472, 2.559597),
@@ -80,6 +94,11 @@ mod tests {
             (7.0, 7.0),
             (1.0 / 3.0, 1.0 / 3.0),
             (-3.2e-7, -3.1e-7),
+            (-1.0, -1e-9),
+            (9.995, 9.9951),
+            (1e-12, 1.1e-12),
+            (1e9, 1e9 + 0.3),
+            (0.0, 0.0),
         ] {
             let (a, b) = outward(low, high);
             let (shown_low, shown_high) = (a.parse::<f64>().unwrap(), b.parse::<f64>().unwrap());
@@ -87,5 +106,7 @@ mod tests {
             assert!(shown_high - shown_low <= 1.25 * (high - low) + 2e-8 * low.abs().max(high.abs()) + 1e-14, "{low} {high}: {a} {b}");
         }
         assert_eq!(outward(2.557472, 2.559597), ("2.5574".to_string(), "2.5596".to_string()));
+        assert_eq!(outward(-1.0, -1e-9), ("-1.00".to_string(), "0.00".to_string()));
+        assert_eq!(outward(0.0, 0.0), ("0".to_string(), "0".to_string()));
     }
 }

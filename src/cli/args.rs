@@ -8,6 +8,7 @@ use std::path::PathBuf;
 #[derive(Debug, Parser)]
 #[command(
     name = "pinchbar",
+    bin_name = "pinchbar",
     version,
     about = "Where current crowds in the welded collector plates of a battery pack",
     long_about = "From an outline and a one-page job sheet: loss, drop, sharing and hotspots of welded strips, tabs, plates and overlays, \
@@ -34,7 +35,7 @@ pub enum Command {
         #[command(flatten)]
         common: Common,
         /// Stop when the loss is enclosed this tightly, in per cent (in place of the sheet's figure)
-        #[arg(long, value_name = "P", value_parser = percent)]
+        #[arg(long, value_name = "P", value_parser = percent, allow_negative_numbers = true)]
         bracket_percent: Option<f64>,
         /// Folder for the results [default: ./pinchbar-out/<job name>]
         #[arg(long, value_name = "DIR")]
@@ -66,7 +67,7 @@ pub struct Common {
     /// Print JSON on stdout and nothing else there
     #[arg(long)]
     pub json: bool,
-    /// Say nothing but faults
+    /// Print no summary and say nothing but faults and warnings
     #[arg(long, short)]
     pub quiet: bool,
     /// Use this many threads [default: as many as there are cores]; the results are the same
@@ -81,7 +82,44 @@ fn percent(text: &str) -> Result<f64, String> {
     }
 }
 
-/// Reads the command line; `Err` holds the text to print and the exit status (help and version are no faults).
+/// Reads the command line; `Err` holds the text to print and whether it tells a fault (help and version are none).
 pub fn parse(arguments: impl Iterator<Item = std::ffi::OsString>) -> Result<CommandLine, (String, bool)> {
-    CommandLine::try_parse_from(arguments).map_err(|e| (e.render().to_string(), e.use_stderr()))
+    CommandLine::try_parse_from(arguments).map_err(|e| {
+        let text = e.render().to_string();
+        (text.strip_prefix("error: ").map(str::to_string).unwrap_or(text), e.use_stderr())
+    })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use clap::CommandFactory;
+
+    fn parsed(line: &str) -> Result<CommandLine, (String, bool)> {
+        parse(line.split(' ').map(Into::into))
+    }
+
+    #[test]
+    fn the_definition_is_sound_and_its_short_help_fits_a_screen() {
+        CommandLine::command().debug_assert();
+        for command in [&mut CommandLine::command(), CommandLine::command().find_subcommand_mut("map").expect("map")] {
+            assert!(command.render_help().to_string().lines().count() <= 24);
+        }
+    }
+
+    #[test]
+    fn percentages_outside_the_possible_are_faults() {
+        assert!(parsed("pinchbar map --bracket-percent 0.1").is_ok());
+        for wrong in ["0", "-1", "nan", "inf", "101", "tight"] {
+            let Err((text, fault)) = parsed(&format!("pinchbar map --bracket-percent {wrong}")) else { panic!("{wrong} was taken") };
+            assert!(fault && text.contains("above 0 and up to 100"), "{text}");
+        }
+        assert!(parsed("pinchbar map --threads 0").is_err());
+    }
+
+    #[test]
+    fn help_is_no_fault() {
+        let Err((text, fault)) = parsed("pinchbar --help") else { panic!("help is printed instead of a run") };
+        assert!(!fault && text.contains(LONG_CAUTION.split(':').next().expect("a first word")));
+    }
 }

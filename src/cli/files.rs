@@ -28,13 +28,17 @@ pub struct OutFolder {
 }
 
 impl OutFolder {
-    /// Makes the folder and checks that files can be made in it.
+    /// Makes the folder and checks that files with these names can be made in it.
     ///
     /// # Errors
     /// What the system says, when they cannot.
-    pub fn ready(path: &Path) -> io::Result<Self> {
+    pub fn ready(path: &Path, names: &[&str]) -> io::Result<Self> {
         std::fs::create_dir_all(path)?;
         tempfile::Builder::new().prefix(".pinchbar-").tempfile_in(path)?;
+        // A folder in a file's place would stop the renaming half-way.
+        if let Some(name) = names.iter().find(|name| path.join(name).is_dir()) {
+            return Err(io::Error::new(io::ErrorKind::IsADirectory, format!("{name} is a folder there")));
+        }
         Ok(Self { path: path.to_path_buf() })
     }
 
@@ -80,4 +84,43 @@ fn open_to_readers(file: &std::fs::File) -> io::Result<()> {
     #[cfg(not(unix))]
     let _ = file;
     Ok(())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn results_replace_their_own_names_and_no_others() {
+        let base = tempfile::tempdir().unwrap();
+        let path = base.path().join("a/b");
+        let folder = OutFolder::ready(&path, &["x", "y"]).unwrap();
+        std::fs::write(path.join("foreign"), "kept").unwrap();
+        folder.replace(&[("x", Some(b"1".to_vec())), ("y", Some(b"2".to_vec()))]).unwrap();
+        folder.replace(&[("x", Some(b"3".to_vec())), ("y", None)]).unwrap();
+        let mut left: Vec<_> = std::fs::read_dir(&path).unwrap().map(|e| e.unwrap().file_name().into_string().unwrap()).collect();
+        left.sort();
+        assert_eq!(left, ["foreign", "x"], "neither an old result nor a temporary file stays");
+        assert_eq!(std::fs::read(path.join("x")).unwrap(), b"3");
+    }
+
+    #[test]
+    fn what_cannot_be_written_is_told_before_the_work() {
+        let base = tempfile::tempdir().unwrap();
+        std::fs::write(base.path().join("file"), "").unwrap();
+        assert!(OutFolder::ready(&base.path().join("file/below"), &[]).is_err());
+        std::fs::create_dir(base.path().join("x")).unwrap();
+        assert_eq!(OutFolder::ready(base.path(), &["x"]).unwrap_err().kind(), io::ErrorKind::IsADirectory);
+    }
+
+    #[test]
+    fn only_texts_are_read() {
+        let base = tempfile::tempdir().unwrap();
+        assert_eq!(load(base.path()).unwrap_err().kind(), io::ErrorKind::IsADirectory);
+        std::fs::write(base.path().join("bytes"), [0xff, 0xfe]).unwrap();
+        assert_eq!(load(&base.path().join("bytes")).unwrap_err().kind(), io::ErrorKind::InvalidData);
+        // Sparse: it takes no room on the disk.
+        std::fs::File::create(base.path().join("large")).unwrap().set_len(LARGEST + 1).unwrap();
+        assert_eq!(load(&base.path().join("large")).unwrap_err().kind(), io::ErrorKind::FileTooLarge);
+    }
 }

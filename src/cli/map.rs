@@ -18,6 +18,9 @@ const DEMO: [(&str, &str); 2] = [
     ("post-hole.outline", include_str!("../../shapes/post-hole.outline")),
 ];
 
+/// The files of a result.
+const RESULTS: [&str; 5] = ["heatmap.png", "hotspots.csv", "welds.csv", "result.json", "report.md"];
+
 /// What was asked.
 pub struct Request<'a> {
     /// The job sheet; `None`: the built-in demo.
@@ -100,7 +103,7 @@ fn folder(request: &Request) -> Result<Option<files::OutFolder>, String> {
             Path::new("pinchbar-out").join(name)
         }
     };
-    files::OutFolder::ready(&path).map(Some).map_err(|e| format!("cannot write into {}: {e}", path.display()))
+    files::OutFolder::ready(&path, &RESULTS).map(Some).map_err(|e| format!("cannot write into {}: {e}", path.display()))
 }
 
 fn show(
@@ -112,13 +115,14 @@ fn show(
 ) -> io::Result<Ending> {
     let json = report::json::json(findings).map_err(io::Error::other)?;
     if let Some(folder) = &folder {
-        folder.replace(&[
-            ("heatmap.png", picture),
-            ("hotspots.csv", Some(report::csv::hotspots(findings).map_err(io::Error::other)?)),
-            ("welds.csv", Some(report::csv::welds(findings).map_err(io::Error::other)?)),
-            ("result.json", Some(json.clone().into_bytes())),
-            ("report.md", Some(report::markdown::report(problem, findings).into_bytes())),
-        ])?;
+        let contents = [
+            picture,
+            Some(report::csv::hotspots(findings).map_err(io::Error::other)?),
+            Some(report::csv::welds(findings).map_err(io::Error::other)?),
+            Some(json.clone().into_bytes()),
+            Some(report::markdown::report(problem, findings).into_bytes()),
+        ];
+        folder.replace(&RESULTS.into_iter().zip(contents).collect::<Vec<_>>())?;
     }
     if request.json {
         terminal::print(&json)?;
@@ -129,9 +133,9 @@ fn show(
         if let Some(folder) = &folder {
             terminal::say(&format!("picture, tables and report are in {}", folder.path().display()));
         }
-        if !findings.run.reached {
-            terminal::say("the accuracy asked for was not reached within the vertex limit; the intervals hold, but are wider");
-        }
+    }
+    if !findings.run.reached {
+        terminal::say("the accuracy asked for was not reached within the vertex limit; the intervals hold, but are wider");
     }
     let broken = findings.verdicts.iter().any(|v| v.verdict == Verdict::Fail);
     Ok(if broken { Ending::LimitBroken } else { Ending::Done })

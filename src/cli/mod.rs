@@ -37,7 +37,7 @@ pub fn run(arguments: impl Iterator<Item = OsString>) -> ExitCode {
     let line = match args::parse(arguments) {
         Ok(line) => line,
         Err((text, true)) => {
-            terminal::complain(&text);
+            terminal::say(&text);
             return Ending::BadInput.into();
         }
         Err((text, false)) => return finish(terminal::print(&text).map(|()| Ending::Done)),

@@ -3,7 +3,7 @@
 use super::gauge::DensityField;
 use super::hotspot::{self, HotspotPlace, survey};
 use super::section;
-use super::verdict::verdicts;
+use super::verdict::{largest_drop_mv, verdicts};
 use super::*;
 use crate::geometry::{Point, nested_area};
 use crate::index::{ContactId, ElectrodeId, JoinId};
@@ -126,6 +126,7 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
         version: env!("CARGO_PKG_VERSION").into(),
         loss_w: loss,
         resistance_mohm: solution.resistance.map(|r| Enclosure::from(r).scaled(1e3)),
+        largest_drop_mv: largest_drop_mv(solution),
         run: Run {
             vertices: solution.mesh.points.len(),
             triangles: solution.mesh.triangles.len(),

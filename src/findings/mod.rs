@@ -61,6 +61,10 @@ pub struct Findings {
     pub loss_w: Enclosure,
     /// Port resistance of the bar, for exactly two electrodes.
     pub resistance_mohm: Option<Enclosure>,
+    /// Largest difference between two electrodes on one connected piece; `None` where no piece has two. Not part of the JSON, where the
+    /// electrodes' own voltages stand.
+    #[serde(skip)]
+    pub largest_drop_mv: Option<Enclosure>,
     /// How the solving went.
     pub run: Run,
     /// Terminals and cells' ends.

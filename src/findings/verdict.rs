@@ -1,6 +1,6 @@
 //! Limits and how they are kept: PASS to 80 % of the limit, TIGHT to 100 %, FAIL above; the unfavourable end of an interval counts.
 
-use super::{Findings, Verdict, VerdictFinding};
+use super::{Enclosure, Findings, Verdict, VerdictFinding};
 use crate::physics::Solution;
 use crate::problem::{ElectrodeKind, Problem};
 use std::collections::BTreeMap;
@@ -11,7 +11,7 @@ const TIGHT_FROM: f64 = 0.8;
 /// One verdict per limit that a job can have; those without a limit or a figure are NOT CHECKED.
 pub fn verdicts(problem: &Problem, solution: &Solution, findings: &Findings) -> Vec<VerdictFinding> {
     let limits = &problem.limits;
-    let mut list = vec![verdict("drop_mv", largest_drop_mv(solution), limits.drop_v.map(|v| 1e3 * v))];
+    let mut list = vec![verdict("drop_mv", findings.largest_drop_mv.map(|d| d.high), limits.drop_v.map(|v| 1e3 * v))];
     for (l, layer) in findings.layers.iter().enumerate() {
         let limit = limits.density_a_mm2.get(l).copied().flatten();
         list.push(verdict(format!("density_a_mm2.{}", layer.name), Some(layer.peak_a_mm2), limit));
@@ -56,18 +56,19 @@ fn judge(row: &mut VerdictFinding, used: f64) {
     };
 }
 
-/// Largest difference between two electrodes on one connected piece, unfavourable ends, in mV.
-fn largest_drop_mv(solution: &Solution) -> Option<f64> {
-    let mut worst: Option<f64> = None;
+/// Largest difference between two electrodes on one connected piece, in mV: not below any pair's low end, not above all pairs' high ends.
+pub fn largest_drop_mv(solution: &Solution) -> Option<Enclosure> {
+    let mut worst: Option<(f64, f64)> = None;
     for (i, a) in solution.electrodes.iter().enumerate() {
         for (j, b) in solution.electrodes.iter().enumerate().filter(|(j, _)| *j != i) {
             if solution.complex.piece_of[i] == solution.complex.piece_of[j] {
-                let drop = 1e3 * (a.voltage.high - b.voltage.low);
-                worst = Some(worst.map_or(drop, |w| w.max(drop)));
+                let (low, high) = (1e3 * (a.voltage.low - b.voltage.high), 1e3 * (a.voltage.high - b.voltage.low));
+                // The reverse of every pair is a pair too, so nothing is below zero.
+                worst = Some(worst.map_or((low.max(0.0), high), |w| (w.0.max(low), w.1.max(high))));
             }
         }
     }
-    worst
+    worst.map(|(low, high)| Enclosure { low, value: 0.5 * (low + high), high })
 }
 
 /// Per group of two cells or more: largest over mean current, unfavourable end.

@@ -2,6 +2,7 @@
 //!
 //! Lengths are in millimetres, y points up, counter-clockwise is positive.
 
+pub mod clearance;
 pub mod corner;
 pub mod indexed_region;
 pub mod overlap;

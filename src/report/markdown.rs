@@ -1,20 +1,20 @@
 //! `report.md`: what a colleague reads without the tool.
 
-use super::table::sharing;
-use super::words::{self, CAUTION, further_cautions, interval, optional};
-use crate::findings::Findings;
-use crate::problem::{Drive, ElectrodeKind, Interface, Problem};
+use super::words::{self, CAUTION, further_cautions, interval, one_line, optional};
+use crate::findings::{Enclosure, Findings};
+use crate::problem::{Drive, Electrode, ElectrodeKind, Footprint, Interface, Problem};
 use crate::quantity::three;
 
 /// The report.
 pub fn report(problem: &Problem, findings: &Findings) -> String {
     let mut out = Page::default();
-    out.line(format!("# {}", findings.title));
+    out.line(format!("# {}", plain(&findings.title)));
     out.line(format!("> {CAUTION}"));
-    for caution in further_cautions(problem) {
+    for caution in further_cautions(problem, findings) {
         out.line(format!("> {caution}"));
     }
     out.line("![Where current crowds](heatmap.png)");
+    out.line(in_short(problem, findings));
     headline(&mut out, findings);
     crowding(&mut out, findings);
     electrodes(&mut out, findings);
@@ -23,15 +23,45 @@ pub fn report(problem: &Problem, findings: &Findings) -> String {
     assumptions(&mut out, problem);
     if !findings.remarks.is_empty() {
         out.line("## Remarks");
-        out.block(findings.remarks.iter().map(|r| format!("- {}", r.text)));
+        out.block(findings.remarks.iter().map(|r| format!("- {}", plain(&r.text))));
     }
     out.line("## How far to trust it");
     out.line(
-        "Each interval is guaranteed for the model: the flattened outlines, thicknesses, resistivities and joint resistances as entered, \
-         sheets so thin that the potential does not vary across them. It says nothing about how well those inputs are known. \
-         The model is coarse where a neck, a nugget or a radius is about as small as the sheet is thick. Contact and weld resistances are the weakest inputs: measure them on samples.",
+        "The intervals hold for the model: outlines with their arcs flattened, and thicknesses, resistivities and joint resistances as they \
+         were entered, in sheets so thin that the potential does not vary across them. They say nothing about how well these inputs are known. \
+         The model is coarse where a neck, a nugget or a radius is about as small as the sheet is thick; heat is not solved, and the metal has \
+         one temperature throughout. Contacts and welds are the weakest inputs: measure them on samples.",
     );
+    out.line(format!("Made by pinchbar {}.", findings.version));
+    // One line break at the end, as in every text file.
+    out.text.truncate(out.text.trim_end().len());
+    out.text.push('\n');
     out.text
+}
+
+/// What was solved, in one sentence.
+fn in_short(problem: &Problem, findings: &Findings) -> String {
+    let sheets: Vec<String> =
+        problem.layers.iter().map(|l| format!("{} ({}, {} mm)", plain(&l.name), plain(&l.material.name), l.thickness_mm)).collect();
+    let cells = problem.electrodes.iter().filter(|e| e.kind == ElectrodeKind::Cell).count();
+    let into: f64 = findings.electrodes.iter().map(|e| e.current_a.max(0.0)).sum();
+    format!(
+        "Solved: {}, at {} °C, with {} and {}; {} A go in and out.",
+        if sheets.len() == 1 { sheets.join("") } else { format!("{} sheets, bottom first: {}", sheets.len(), sheets.join(", ")) },
+        problem.temperature_c,
+        counted(cells, "cell end"),
+        counted(problem.electrodes.len() - cells, "terminal"),
+        three(into)
+    )
+}
+
+fn counted(count: usize, what: &str) -> String {
+    format!("{count} {what}{}", if count == 1 { "" } else { "s" })
+}
+
+/// A name or sentence of the input that cannot turn into markup.
+fn plain(text: &str) -> String {
+    one_line(text).replace('<', "&lt;")
 }
 
 #[derive(Default)]
@@ -58,7 +88,8 @@ impl Page {
     /// A table: text columns to the left, numbers to the right.
     fn table(&mut self, header: &[&str], texts: usize, rows: impl Iterator<Item = Vec<String>>) {
         let rule = header.iter().enumerate().map(|(i, _)| if i < texts { "---" } else { "---:" }).collect::<Vec<_>>();
-        let joined = |cells: &[String]| format!("| {} |", cells.iter().map(|c| c.replace('|', "\\|")).collect::<Vec<_>>().join(" | "));
+        let joined =
+            |cells: &[String]| format!("| {} |", cells.iter().map(|c| plain(c).replace('|', "\\|")).collect::<Vec<_>>().join(" | "));
         let head = [format!("| {} |", header.join(" | ")), format!("|{}|", rule.join("|"))];
         self.block(head.into_iter().chain(rows.map(|r| joined(&r))));
     }
@@ -70,12 +101,16 @@ fn headline(out: &mut Page, findings: &Findings) {
     if let Some(r) = findings.resistance_mohm {
         rows.push(vec!["resistance between the two electrodes".into(), format!("{} mΩ", interval(r))]);
     }
+    if let Some(drop) = findings.largest_drop_mv {
+        rows.push(vec!["largest drop between two electrodes".into(), format!("{} mV", interval(drop))]);
+    }
     rows.extend(findings.probes.iter().map(|p| vec![format!("reading {}", p.name), format!("{} mV", interval(p.drop_mv))]));
     rows.extend(findings.crossings.iter().map(|c| vec![format!("current across {}", c.name), format!("{} A", three(c.total_a))]));
     out.table(&["", "low ... high"], 1, rows.into_iter());
     let run = &findings.run;
     out.line(format!(
-        "The true value of the model lies between low and high: the loss is enclosed to {} %{}. Mesh: {} triangles, {} unknowns, {} rounds.",
+        "An interval encloses the exact value of the model for certain; it is no estimate of scatter. The loss is enclosed to {} %{}. \
+         Mesh: {} triangles, {} unknowns, {} rounds.",
         three(run.bracket_percent),
         if run.reached { "" } else { ", which is NOT as tight as asked" },
         run.triangles,
@@ -133,7 +168,7 @@ fn electrodes(out: &mut Page, findings: &Findings) {
         &["name", "kind", "group", "A", "range A", "mV", "share %", "joint loss W"],
         3,
         findings.electrodes.iter().map(|e| {
-            let range = crate::findings::Enclosure { low: e.current_range_a.low, value: e.current_a, high: e.current_range_a.high };
+            let range = Enclosure { low: e.current_range_a.low, value: e.current_a, high: e.current_range_a.high };
             vec![
                 e.name.clone(),
                 e.kind.into(),
@@ -146,8 +181,8 @@ fn electrodes(out: &mut Page, findings: &Findings) {
             ]
         }),
     );
-    for (group, ratio) in sharing(&findings.electrodes) {
-        out.line(format!("Sharing in {group}: largest over mean current {}.", three(ratio)));
+    for (group, ratio) in words::sharing(findings) {
+        out.line(format!("Sharing in group \"{}\": largest over mean current {}.", plain(group), three(ratio)));
     }
     out.table(
         &["electrode", "spot", "x mm", "y mm", "A", "share %", "drop mV", "rim A/mm²"],
@@ -218,9 +253,9 @@ fn assumptions(out: &mut Page, problem: &Problem) {
     out.line("## What was assumed");
     let layers = problem.layers.iter().map(|l| {
         format!(
-            "- {}: {}, {} mm, {} µΩ cm at {} °C",
-            l.name,
-            l.material.name,
+            "- sheet {}: {}, {} mm, {} µΩ cm at {} °C",
+            plain(&l.name),
+            plain(&l.material.name),
             l.thickness_mm,
             three(l.resistivity * 1e5),
             problem.temperature_c
@@ -231,30 +266,51 @@ fn assumptions(out: &mut Page, problem: &Problem) {
             Interface::Bonded => "bonded, no drop".to_string(),
             Interface::Conductance(s) => format!("{} mΩ mm²", three(1e3 / s)),
         };
-        format!("- {}: {interface}", c.name)
+        format!("- contact {}: {interface}", plain(&c.name))
     });
     let joins = problem.joins.iter().map(|j| {
-        let [a, b] = j.between.map(|l| problem.layers[l.index()].name.as_str());
-        format!("- {} joins between {a} and {b}: {}", j.spots.len(), joint(j.joint_ohm))
+        let [a, b] = j.between.map(|l| plain(&problem.layers[l.index()].name));
+        format!("- {} between {a} and {b}: {}", counted(j.spots.len(), "join"), joint(j.joint_ohm))
     });
     let electrodes = problem.electrodes.iter().map(|e| {
         let kind = if e.kind == ElectrodeKind::Cell { "cell" } else { "terminal" };
-        let drive = match e.drive {
-            Drive::Current(i) => format!("{} A given", three(i)),
-            Drive::Balance => "takes the balance".into(),
-            Drive::Held(v) => format!("held at {} mV", three(1e3 * v)),
-            Drive::Source(s) => {
-                let source = &problem.sources[s.index()];
-                format!("source of {} mV behind {} mΩ", three(1e3 * source.emf_v), three(1e3 * source.resistance_ohm))
-            }
-            Drive::Return(_) => "return end of its source".into(),
-        };
         let joints = e.spots.first().map_or(String::new(), |s| joint(s.joint_ohm));
-        format!("- {kind} {}: {} attached at {} place(s), {joints}", e.name, drive, e.spots.len())
+        format!("- {kind} {}: {}; {}, {joints}", plain(&e.name), drive(problem, e), attached(e))
     });
     out.block(layers.chain(contacts).chain(joins).chain(electrodes));
 }
 
+fn drive(problem: &Problem, electrode: &Electrode) -> String {
+    match electrode.drive {
+        Drive::Current(i) => format!("{} A given", three(i)),
+        Drive::Balance => "takes the balance".into(),
+        Drive::Held(v) => format!("held at {} mV", three(1e3 * v)),
+        Drive::Source(s) => {
+            let source = &problem.sources[s.index()];
+            format!("source of {} mV behind {} mΩ", three(1e3 * source.emf_v), three(1e3 * source.resistance_ohm))
+        }
+        Drive::Return(_) => "return end of its source".into(),
+    }
+}
+
+/// How an electrode touches the metal.
+fn attached(electrode: &Electrode) -> String {
+    let lines = electrode.spots.iter().all(|s| matches!(s.footprint, Footprint::Line { .. }));
+    counted(electrode.spots.len(), if lines { "line" } else { "spot" })
+}
+
 fn joint(ohm: f64) -> String {
-    if ohm == 0.0 { "solid".into() } else { format!("{} mΩ each, interface only", three(1e3 * ohm)) }
+    if ohm == 0.0 { "solid".into() } else { format!("{} mΩ each (interface only)", three(1e3 * ohm)) }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn cells_of_a_table_stay_in_their_row() {
+        let mut page = Page::default();
+        page.table(&["name", "A"], 1, [vec!["a|b\n<b>".to_string(), "1".into()]].into_iter());
+        assert_eq!(page.text, "| name | A |\n|---|---:|\n| a\\|b &lt;b> | 1 |\n\n");
+    }
 }

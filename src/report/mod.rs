@@ -2,7 +2,9 @@
 
 pub mod csv;
 pub mod figure;
+pub mod inventory;
 pub mod json;
 pub mod markdown;
+pub mod pieces;
 pub mod table;
 pub mod words;

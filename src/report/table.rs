@@ -1,9 +1,8 @@
 //! The summary on the terminal: headline, hotspots, cells, limits, remarks, within 80 columns.
 
 use super::words::{self, CAUTION, interval, optional};
-use crate::findings::{ElectrodeFinding, Findings, Verdict};
+use crate::findings::{Findings, Verdict};
 use crate::quantity::three;
-use std::fmt::Write;
 
 /// Rows of a list shown before the rest is summed up.
 const MOST_ROWS: usize = 12;
@@ -15,11 +14,14 @@ pub fn summary(findings: &Findings) -> String {
         text.push_str(s.trim_end());
         text.push('\n');
     };
-    line(findings.title.clone());
+    wrapped(&findings.title, 78).into_iter().for_each(&mut line);
     line(String::new());
     line(format!("  loss           {} W", interval(findings.loss_w)));
     if let Some(r) = findings.resistance_mohm {
         line(format!("  resistance     {} mohm", interval(r)));
+    }
+    if let Some(drop) = findings.largest_drop_mv {
+        line(format!("  largest drop   {} mV between two electrodes", interval(drop)));
     }
     let run = &findings.run;
     line(format!(
@@ -67,8 +69,8 @@ pub fn summary(findings: &Findings) -> String {
         ));
     }
     more(findings.electrodes.len(), &mut line);
-    for (group, ratio) in sharing(&findings.electrodes) {
-        line(format!("  sharing in {group}: largest over mean {}", three(ratio)));
+    for (group, ratio) in words::sharing(findings) {
+        line(format!("  sharing in group \"{}\": largest over mean current {}", clipped(group, 24), three(ratio)));
     }
     if !findings.probes.is_empty() || !findings.crossings.is_empty() {
         line(String::new());
@@ -114,39 +116,22 @@ fn more(count: usize, line: &mut impl FnMut(String)) {
 }
 
 fn coordinate(value: f64) -> String {
-    let mut text = String::new();
-    let _ = write!(text, "{value:.2}");
-    text
+    let text = format!("{value:.2}");
+    if text == "-0.00" { "0.00".into() } else { text }
 }
 
 fn clipped(name: &str, width: usize) -> String {
+    let name = words::one_line(name);
     if name.chars().count() <= width {
-        return name.into();
+        return name;
     }
     name.chars().take(width.saturating_sub(1)).chain(['~']).collect()
-}
-
-/// Largest over mean magnitude per group of two cells or more.
-pub fn sharing(electrodes: &[ElectrodeFinding]) -> Vec<(String, f64)> {
-    let mut groups: Vec<(String, Vec<f64>)> = Vec::new();
-    for e in electrodes.iter().filter(|e| e.kind == "cell") {
-        let name = e.group.clone().unwrap_or_default();
-        match groups.iter_mut().find(|g| g.0 == name) {
-            Some(g) => g.1.push(e.current_a),
-            None => groups.push((name, vec![e.current_a])),
-        }
-    }
-    let ratio = |currents: &[f64]| {
-        let mean = currents.iter().sum::<f64>().abs() / currents.len() as f64;
-        (currents.len() > 1 && mean > 0.0).then(|| currents.iter().fold(0.0, |m: f64, i| m.max(i.abs())) / mean)
-    };
-    groups.into_iter().filter_map(|(name, currents)| ratio(&currents).map(|r| (name, r))).collect()
 }
 
 /// Words in lines of at most `width` characters.
 pub fn wrapped(text: &str, width: usize) -> Vec<String> {
     let mut lines = vec![String::new()];
-    for word in text.split_whitespace() {
+    for word in words::one_line(text).split_whitespace() {
         let last = lines.len() - 1;
         if !lines[last].is_empty() && lines[last].chars().count() + 1 + word.chars().count() > width {
             lines.push(word.into());

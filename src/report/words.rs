@@ -1,6 +1,6 @@
 //! Words that several reports share: cautions, and figures with their intervals.
 
-use crate::findings::{Enclosure, HotspotKind, Verdict};
+use crate::findings::{Enclosure, Findings, HotspotKind, Verdict};
 use crate::problem::Problem;
 use crate::quantity::{outward, three};
 
@@ -15,13 +15,35 @@ A neck is not a fuse: fit proper d.c. protection. Measure joints and temperature
 Work on live packs only if trained and equipped: insulated tools, no metal jewellery, eye protection, covered terminals, a way out. \
 Local codes and licensed practice come first.";
 
+/// Direct voltage in volts above which shock is a danger too; common practice, no source.
+const SHOCK_V: f64 = 60.0;
+
+/// Temperature in °C of the metal above which cells are harmed; common practice, no source.
+const HOT_C: f64 = 60.0;
+
 /// Further cautions that this job calls for.
-pub fn further_cautions(problem: &Problem) -> Vec<&'static str> {
+pub fn further_cautions(problem: &Problem, findings: &Findings) -> Vec<&'static str> {
     let mut lines = Vec::new();
-    if problem.sources.iter().any(|s| s.emf_v > 60.0) {
-        lines.push("A source above 60 V d.c. is in the job: shock and arc rules apply to the work, not only burn and fire precautions.");
+    let drop = findings.largest_drop_mv.map_or(0.0, |d| 1e-3 * d.high);
+    if drop > SHOCK_V || problem.sources.iter().any(|s| s.emf_v.abs() > SHOCK_V) {
+        lines.push(
+            "More than 60 V d.c. is in the job: danger of shock and of a standing arc; the rules for that voltage apply to the work.",
+        );
+    }
+    if problem.temperature_c > HOT_C {
+        lines.push("The metal is above 60 C: stop and check what the cells and their insulation stand before this is built.");
     }
     lines
+}
+
+/// Largest over mean cell current per group, with the group's name.
+pub fn sharing(findings: &Findings) -> impl Iterator<Item = (&str, f64)> {
+    findings.verdicts.iter().filter_map(|v| Some((v.limit.strip_prefix("sharing.")?, v.value?)))
+}
+
+/// A name or sentence of the input in one line: control characters must reach neither a terminal nor a table.
+pub fn one_line(text: &str) -> String {
+    text.chars().map(|c| if c.is_control() { ' ' } else { c }).collect()
 }
 
 /// "low ... high", rounded outward.
@@ -56,5 +78,18 @@ pub fn verdict(verdict: Verdict) -> &'static str {
         Verdict::Tight => "TIGHT",
         Verdict::Fail => "FAIL",
         Verdict::NotChecked => "NOT CHECKED",
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn intervals_and_names_are_written_in_one_line() {
+        assert_eq!(interval(Enclosure { low: 2.557472, value: 2.5585, high: 2.559597 }), "2.5574 ... 2.5596");
+        assert_eq!(interval(Enclosure::around(0.0, 0.0)), "0");
+        assert_eq!(one_line("a\u{1b}[31m\nb"), "a [31m b");
+        assert_eq!(optional(None), "-");
     }
 }
