@@ -82,7 +82,7 @@ pub struct Covered {
     pub direction: Point,
     /// Roughly the middle of the metal under the disc.
     pub middle: Point,
-    /// Longest edge of a triangle under it.
+    /// Longest edge of a triangle under it that makes up more than a fiftieth of it.
     pub longest: f64,
 }
 
@@ -127,6 +127,7 @@ impl<'a> Disc<'a> {
     /// The means over a disc of some diameter.
     pub fn mean(&mut self, centre: Place, diameter: f64) -> Covered {
         let metal = self.metal;
+        let whole = 0.25 * std::f64::consts::PI * diameter * diameter;
         let mut sum = Covered::default();
         let mut area = 0.0;
         self.flood(centre, diameter, |t, part| {
@@ -135,7 +136,8 @@ impl<'a> Disc<'a> {
             sum.mean += part * triangle.magnitude;
             sum.direction = sum.direction + triangle.density * part;
             sum.middle = sum.middle + triangle.middle() * part;
-            if part > 0.0 {
+            // A triangle that the disc only just touches does not spoil the mean.
+            if part > 0.02 * whole {
                 sum.longest = sum.longest.max(triangle.longest());
             }
         });

@@ -131,11 +131,7 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
     survey.rows = rows;
     for (layer, c) in &found {
         let metal = &density.layers[layer.index()];
-        survey.places.push(HotspotPlace {
-            layer: *layer,
-            centre: c.place.point,
-            section_ends: if c.rim.is_some() { None } else { c.section.map(|s| s.ends) },
-        });
+        survey.places.push(HotspotPlace { layer: *layer, centre: c.place.point, section_ends: c.section.map(|s| s.ends) });
         for each in c.twins.iter().chain([c]).filter(|each| each.unresolved(metal)) {
             if !survey.unresolved.contains(&(*layer, each.place.point, metal.gauge)) {
                 survey.unresolved.push((*layer, each.place.point, metal.gauge));
@@ -156,7 +152,10 @@ fn candidates_of(setting: &Setting, metal: &LayerMetal) -> Vec<Candidate> {
     if highest <= PROMINENCE * total / area {
         return strip(setting, metal).into_iter().collect();
     }
-    let starts = thinned(setting, metal, &nodes, nodes.summits(&setting.solution.mesh, metal, FLOOR * highest));
+    // Measured by its gauge mean: the value at a vertex grows without end where triangles get smaller at a corner.
+    let top = (0..nodes.value.len()).rfind(|&v| nodes.value[v] == highest).and_then(|v| nodes.place(&setting.solution.mesh, v as u32));
+    let least = FLOOR * top.map_or(0.0, |place| Disc::new(metal).mean(place, metal.gauge).mean).min(highest);
+    let starts = thinned(setting, metal, &nodes, nodes.summits(&setting.solution.mesh, metal, least));
     let mut climbed: Vec<(f64, Place)> =
         starts.par_iter().map_init(|| Disc::new(metal), |disc, &start| disc.climb(start, &|_| true)).collect();
     climbed.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.triangle.cmp(&b.1.triangle)));
@@ -213,23 +212,25 @@ fn strip(setting: &Setting, metal: &LayerMetal) -> Option<Candidate> {
     let peak = disc.mean(place, metal.gauge).mean;
     let mut candidate = candidate(setting, metal, &mut disc, (peak, place));
     candidate.character.kind = HotspotKind::Strip;
-    (candidate.rim, candidate.exceeds) = (None, true);
+    candidate.exceeds = true;
     Some(candidate)
 }
 
 fn candidate(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, (peak, place): (f64, Place)) -> Candidate {
     let covered = disc.mean(place, metal.gauge);
-    let unit = |v: Point| if v.norm() > 0.0 { v * (1.0 / v.norm()) } else { v };
-    // Pushed inside, and a little up and down the current: at a corner only one of these has the narrow side in its cuts.
-    let push = 0.02 * metal.gauge;
-    let inside = metal.moved(place, place.point + unit(covered.middle - place.point) * push);
-    let places = [0.0, 1.0, -1.0].map(|s| metal.moved(inside, inside.point + unit(covered.direction) * (s * push)));
-    let section = section::best_cut(metal, &places);
-    let character = kind::character(setting, metal, disc, place, section.as_ref());
-    let rim = match (character.kind, character.spot) {
-        (HotspotKind::WeldRim, Some(area)) => kind::rim(setting, metal, area),
-        _ => None,
-    };
+    let touched = kind::Touched::new(setting, metal, disc, place);
+    let (mut rim, mut section) = (None, None);
+    if let Some(area) = touched.weld {
+        rim = kind::rim(setting, metal, area);
+    } else {
+        let unit = |v: Point| if v.norm() > 0.0 { v * (1.0 / v.norm()) } else { v };
+        // Pushed inside, and a little up and down the current: at a corner only one of these has the narrow side in its cuts.
+        let push = 0.02 * metal.gauge;
+        let inside = metal.moved(place, place.point + unit(covered.middle - place.point) * push);
+        let places = [0.0, 1.0, -1.0].map(|s| metal.moved(inside, inside.point + unit(covered.direction) * (s * push)));
+        section = section::best_cut(metal, &places);
+    }
+    let character = kind::character(setting, metal, &touched, place, section.as_ref());
     let exceeds = match character.kind {
         HotspotKind::Neck => true,
         HotspotKind::WeldRim => peak >= CROWDING * disc.mean(place, 4.0 * metal.gauge).mean,
@@ -295,7 +296,7 @@ fn row(setting: &Setting, metal: &LayerMetal, c: &Candidate, rank: usize) -> Hot
     };
     let mean = width.zip(current).map(|(w, i)| i / (w * metal.thickness));
     let crowding = mean.filter(|&m| m > 0.01 * c.peak).map(|m| c.peak / m);
-    let stretch = if c.rim.is_some() { None } else { c.section.as_ref().and_then(|s| section::stretch(metal, s)) };
+    let stretch = c.section.as_ref().and_then(|s| section::stretch(metal, s));
     Hotspot {
         rank,
         kind: c.character.kind,
@@ -337,6 +338,12 @@ impl Nodes {
         }
         value.iter_mut().zip(&area).filter(|(_, a)| **a > 0.0).for_each(|(v, a)| *v /= a);
         Self { value, at }
+    }
+
+    /// A vertex as a place.
+    fn place(&self, mesh: &Mesh, vertex: u32) -> Option<Place> {
+        let triangle = self.at[vertex as usize];
+        (triangle != NONE).then(|| Place { triangle, point: mesh.points[vertex as usize] })
     }
 
     /// Vertices of at least this value from which every way to a higher one leads down by [`PROMINENCE`].
@@ -386,22 +393,9 @@ impl Nodes {
 /// The places to look at closely: the highest gauge means, one per spot of an electrode or join, none within half a gauge of a higher one.
 fn thinned(setting: &Setting, metal: &LayerMetal, nodes: &Nodes, summits: Vec<u32>) -> Vec<Place> {
     let mesh = &setting.solution.mesh;
-    let start = |&v: &u32| {
-        let triangle = nodes.at[v as usize];
-        let point = mesh.points[v as usize];
-        let inward = metal.at(triangle).middle() - point;
-        Place { triangle, point: point + inward * (1e-6 / inward.norm()) }
-    };
-    let mut ranked: Vec<(f64, Place)> = summits
-        .par_iter()
-        .map_init(
-            || Disc::new(metal),
-            |disc, v| {
-                let place = start(v);
-                (disc.mean(place, metal.gauge).mean, place)
-            },
-        )
-        .collect();
+    let places: Vec<Place> = summits.into_iter().filter_map(|v| nodes.place(mesh, v)).collect();
+    let mut ranked: Vec<(f64, Place)> =
+        places.par_iter().map_init(|| Disc::new(metal), |disc, &place| (disc.mean(place, metal.gauge).mean, place)).collect();
     ranked.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.triangle.cmp(&b.1.triangle)));
     let spots_at = |place: Place| {
         let around = metal.at(place.triangle).neighbours.into_iter().chain([place.triangle]).filter(|&t| t != NONE);

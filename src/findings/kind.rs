@@ -23,6 +23,9 @@ use crate::mesh::NONE;
 use crate::physics::plan::Area;
 use crate::problem::{ElectrodeKind, Footprint, Problem};
 
+/// How far from the disc's centre a feature may lie, in gauge diameters.
+const REACH: f64 = 0.75;
+
 /// A neck's surroundings are wider by this factor.
 pub const WIDER: f64 = 1.15;
 
@@ -194,42 +197,62 @@ pub fn attaches(problem: &Problem, layer: LayerId, area: Area) -> bool {
     }
 }
 
+/// What the reach of a place meets.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct Touched {
+    /// The rim of this spot of a cell or join.
+    pub weld: Option<Area>,
+    /// The rim of this patch of a terminal.
+    pub patch: Option<Area>,
+    /// The edge of an area in contact with another sheet.
+    pub overlay: bool,
+}
+
+impl Touched {
+    /// Looks at the triangles within reach.
+    pub fn new(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, place: Place) -> Self {
+        let problem = setting.problem;
+        let mut spots: Vec<(Area, usize)> = Vec::new();
+        let mut masks: Vec<u64> = Vec::new();
+        let mut count = 0;
+        disc.flood(place, 2.0 * REACH * metal.gauge, |t, part| {
+            if part > 0.0 {
+                let cover = setting.solution.mesh.cover(metal.at(t).triangle as usize);
+                count += 1;
+                for area in cover.iter().map(|&a| setting.plan.areas[a as usize]).filter(|&a| attaches(problem, metal.layer, a)) {
+                    match spots.iter_mut().find(|x| x.0 == area) {
+                        Some(x) => x.1 += 1,
+                        None => spots.push((area, 1)),
+                    }
+                }
+                let mask = partners(setting, metal.layer, cover);
+                if !masks.contains(&mask) {
+                    masks.push(mask);
+                }
+            }
+        });
+        let is_terminal = |area: Area| matches!(area, Area::Spot(k, _) if problem.electrodes[k.index()].kind == ElectrodeKind::Terminal);
+        let order = |area: &Area| match *area {
+            Area::Spot(k, i) => (0, k.0, i),
+            Area::Join(j, i) => (1, j.0, i),
+            _ => (2, 0, 0),
+        };
+        let rims = || spots.iter().filter(|x| x.1 < count).map(|x| x.0);
+        Self {
+            weld: rims().filter(|&a| !is_terminal(a)).min_by_key(order),
+            patch: rims().filter(|&a| is_terminal(a)).min_by_key(order),
+            overlay: masks.len() > 1,
+        }
+    }
+}
+
 /// What the spot at a place is.
-pub fn character(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, place: Place, section: Option<&Section>) -> Character {
+pub fn character(setting: &Setting, metal: &LayerMetal, touched: &Touched, place: Place, section: Option<&Section>) -> Character {
     let (problem, outline) = (setting.problem, &setting.outlines[metal.layer.index()]);
-    let reach = 0.75 * metal.gauge;
+    let reach = REACH * metal.gauge;
     let p = place.point;
     let mut character = Character { kind: HotspotKind::Other, spot: None, ring: None, singular: false, coarse: false };
     let small = |length: f64| length < THIN * metal.thickness;
-
-    let mut touched: Vec<(Area, usize)> = Vec::new();
-    let mut masks: Vec<u64> = Vec::new();
-    let mut count = 0;
-    disc.flood(place, 2.0 * reach, |t, part| {
-        if part > 0.0 {
-            let cover = setting.solution.mesh.cover(metal.at(t).triangle as usize);
-            count += 1;
-            for area in cover.iter().map(|&a| setting.plan.areas[a as usize]).filter(|&a| attaches(problem, metal.layer, a)) {
-                match touched.iter_mut().find(|x| x.0 == area) {
-                    Some(x) => x.1 += 1,
-                    None => touched.push((area, 1)),
-                }
-            }
-            let mask = partners(setting, metal.layer, cover);
-            if !masks.contains(&mask) {
-                masks.push(mask);
-            }
-        }
-    });
-    let is_terminal = |area: Area| matches!(area, Area::Spot(k, _) if problem.electrodes[k.index()].kind == ElectrodeKind::Terminal);
-    let key = |area: Area| match area {
-        Area::Spot(k, i) => (0, k.0, i),
-        Area::Join(j, i) => (1, j.0, i),
-        _ => (2, 0, 0),
-    };
-    let rims = || touched.iter().filter(|x| x.1 < count).map(|x| x.0);
-    let weld = rims().filter(|&a| !is_terminal(a)).min_by_key(|&a| key(a));
-    let patch = rims().filter(|&a| is_terminal(a)).min_by_key(|&a| key(a));
     let line_end = outline.line_ends.iter().find(|e| e.0.distance(p) <= reach);
     let corner =
         outline.corners.iter().filter(|c| c.point.distance(p) <= reach).min_by(|a, b| a.point.distance(p).total_cmp(&b.point.distance(p)));
@@ -252,8 +275,8 @@ pub fn character(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, place: 
     character.singular = corner.is_some();
     character.coarse = fillet.is_some_and(|f| small(f.arc.radius));
 
-    if let Some(area) = weld.or(patch) {
-        character.kind = if weld.is_some() { HotspotKind::WeldRim } else { HotspotKind::TerminalEdge };
+    if let Some(area) = touched.weld.or(touched.patch) {
+        character.kind = if touched.weld.is_some() { HotspotKind::WeldRim } else { HotspotKind::TerminalEdge };
         character.spot = Some(area);
         character.coarse |= nugget(problem, area).is_some_and(small);
         return character;
@@ -264,7 +287,7 @@ pub fn character(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, place: 
         return character;
     }
     character.coarse |= section.is_some_and(|s| small(s.width));
-    if masks.len() > 1 {
+    if touched.overlay {
         character.kind = HotspotKind::OverlayEnd;
         return character;
     }
