@@ -148,8 +148,8 @@ impl<'a> Disc<'a> {
         sum
     }
 
-    /// Goes uphill from a start by steps that are halved: eight directions, and two along the edge of the metal and back against it, so that a
-    /// curved edge can be followed. Centres stay on the metal and where `allowed`.
+    /// Goes uphill from a start by steps that get smaller: in eight directions, or, where the disc is clipped, inward, outward and along the edge
+    /// of the metal and back against it, so that a curved edge can be followed. Centres stay on the metal and where `allowed`.
     pub fn climb(&mut self, start: Place, allowed: &dyn Fn(Point) -> bool) -> (f64, Place) {
         const HALF: f64 = std::f64::consts::FRAC_1_SQRT_2;
         const WAYS: [(f64, f64); 8] =
@@ -160,18 +160,21 @@ impl<'a> Disc<'a> {
         // Wider than the chords of a small hole: the corners of its polygon are no places of their own.
         let mut step = 1.6 * gauge;
         let mut moves = 0;
-        while step > 0.02 * gauge && moves < 40 {
+        while step > 0.03 * gauge && moves < 40 {
             let (at, inward) = (best.1, best.0.middle - best.1.point);
-            let free = WAYS.map(|(x, y)| metal.moved(at, at.point + Point::new(x, y) * step));
-            let edge = (inward.norm() > 0.05 * gauge).then(|| {
+            let tried: Vec<Place> = if inward.norm() > 0.05 * gauge {
                 let inward = inward * (step / inward.norm());
-                [inward.perpendicular(), -inward.perpendicular()].map(|side| {
+                let pressed = [inward.perpendicular(), -inward.perpendicular()].map(|side| {
                     let aside = metal.moved(at, at.point + inward * 0.5 + side);
                     metal.moved(aside, aside.point - inward)
-                })
-            });
+                });
+                let across = [inward, -inward].map(|way| metal.moved(at, at.point + way));
+                pressed.into_iter().chain(across).collect()
+            } else {
+                WAYS.iter().map(|&(x, y)| metal.moved(at, at.point + Point::new(x, y) * step)).collect()
+            };
             let mut better = best;
-            for place in free.into_iter().chain(edge.into_iter().flatten()) {
+            for place in tried {
                 if allowed(place.point) {
                     let covered = self.mean(place, gauge);
                     if covered.mean > better.0.mean * (1.0 + 1e-7) {
@@ -183,7 +186,7 @@ impl<'a> Disc<'a> {
                 best = better;
                 moves += 1;
             } else {
-                step *= 0.5;
+                step *= 0.45;
             }
         }
         (best.0.mean, best.1)

@@ -165,7 +165,9 @@ fn candidates_of(setting: &Setting, metal: &LayerMetal) -> Vec<Candidate> {
             apart.push(c);
         }
     }
-    let looked_at: Vec<Candidate> = apart.par_iter().map_init(|| Disc::new(metal), |disc, &c| candidate(setting, metal, disc, c)).collect();
+    let rims = kind::rims(setting, metal);
+    let looked_at: Vec<Candidate> =
+        apart.par_iter().map_init(|| Disc::new(metal), |disc, &c| candidate(setting, metal, &rims, disc, c)).collect();
     let mut kept: Vec<Candidate> = Vec::new();
     for c in looked_at {
         match kept.iter_mut().find(|k| same(metal, k, &c)) {
@@ -208,20 +210,22 @@ fn strip(setting: &Setting, metal: &LayerMetal) -> Option<Candidate> {
         let nearest = free().min_by(|a, b| a.middle().distance(middle).total_cmp(&b.middle().distance(middle)))?;
         metal.locate(nearest.middle(), 1e-6)
     })?;
+    let rims = vec![(0.0, 0.0); setting.plan.areas.len()];
     let mut disc = Disc::new(metal);
     let peak = disc.mean(place, metal.gauge).mean;
-    let mut candidate = candidate(setting, metal, &mut disc, (peak, place));
+    let mut candidate = candidate(setting, metal, &rims, &mut disc, (peak, place));
     candidate.character.kind = HotspotKind::Strip;
     candidate.exceeds = true;
     Some(candidate)
 }
 
-fn candidate(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, (peak, place): (f64, Place)) -> Candidate {
+fn candidate(setting: &Setting, metal: &LayerMetal, rims: &[(f64, f64)], disc: &mut Disc, (peak, place): (f64, Place)) -> Candidate {
     let covered = disc.mean(place, metal.gauge);
     let touched = kind::Touched::new(setting, metal, disc, place);
     let (mut rim, mut section) = (None, None);
     if let Some(area) = touched.weld {
-        rim = kind::rim(setting, metal, area);
+        let label = setting.plan.areas.iter().position(|&a| a == area);
+        rim = label.map(|l| rims[l]).filter(|r| r.0 > 0.0);
     } else {
         let unit = |v: Point| if v.norm() > 0.0 { v * (1.0 / v.norm()) } else { v };
         // Pushed inside, and a little up and down the current: at a corner only one of these has the narrow side in its cuts.

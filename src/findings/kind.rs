@@ -11,11 +11,11 @@
 //! 6. *hole edge*: the edge of a hole is in reach;
 //! 7. *other*. (*strip* is given where a sheet has no hotspot at all.)
 
+use super::HotspotKind;
 use super::gauge::Disc;
 use super::hotspot::Setting;
 use super::metal::{LayerMetal, Place, nearest_on_segment};
 use super::section::{Section, width_through};
-use super::{HotspotKind, metal};
 use crate::geometry::ring::Arc;
 use crate::geometry::{Point, Region};
 use crate::index::LayerId;
@@ -365,24 +365,26 @@ fn widens(metal: &LayerMetal, section: &Section, sign: f64) -> bool {
     wide > 0.9 * width
 }
 
-/// Rim of a spot on a sheet: its length where there is metal on both sides, and the current that leaves through it, A.
-pub fn rim(setting: &Setting, metal: &LayerMetal, area: Area) -> Option<(f64, f64)> {
-    let areas = &setting.plan.areas;
-    let label = areas.iter().position(|&a| a == area)? as u32;
-    let within = |t: &metal::MetalTriangle| setting.solution.mesh.cover(t.triangle as usize).binary_search(&label).is_ok();
-    let (mut length, mut current) = (0.0, 0.0);
-    for triangle in metal.triangles.iter().filter(|t| within(t)) {
-        for k in 0..3 {
-            let other = triangle.neighbours[k];
-            if other == NONE || within(metal.at(other)) {
-                continue;
-            }
-            length += triangle.corners[(k + 1) % 3].distance(triangle.corners[(k + 2) % 3]);
-            let outside = metal.at(other);
-            if let Some(j) = (0..3).find(|&j| outside.neighbours[j] != NONE && std::ptr::eq(metal.at(outside.neighbours[j]), triangle)) {
-                current -= outside.flux[j];
+/// Rims on a sheet, by the areas of the plan: length where there is metal on both sides in mm, and current that leaves through it in A.
+pub fn rims(setting: &Setting, metal: &LayerMetal) -> Vec<(f64, f64)> {
+    let (mesh, areas) = (&setting.solution.mesh, &setting.plan.areas);
+    let mut rims = vec![(0.0, 0.0); areas.len()];
+    let attaching = |cover: &Vec<u32>| -> Vec<u32> {
+        cover.iter().copied().filter(|&a| attaches(setting.problem, metal.layer, areas[a as usize])).collect()
+    };
+    let by_cell: Vec<Vec<u32>> = mesh.covers.iter().map(attaching).collect();
+    let labels = |triangle: u32| &by_cell[mesh.cells[metal.at(triangle).triangle as usize] as usize];
+    for (t, triangle) in metal.triangles.iter().enumerate().filter(|(t, _)| !labels(*t as u32).is_empty()) {
+        for k in (0..3).filter(|&k| triangle.neighbours[k] != NONE) {
+            let outside = triangle.neighbours[k];
+            for &label in labels(t as u32).iter().filter(|l| !labels(outside).contains(l)) {
+                let rim = &mut rims[label as usize];
+                rim.0 += triangle.corners[(k + 1) % 3].distance(triangle.corners[(k + 2) % 3]);
+                if let Some(back) = (0..3).find(|&j| metal.at(outside).neighbours[j] == t as u32) {
+                    rim.1 -= metal.at(outside).flux[back];
+                }
             }
         }
     }
-    (length > 0.0).then_some((length, current))
+    rims
 }
