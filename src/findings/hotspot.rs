@@ -66,6 +66,8 @@ pub struct Setting<'a> {
     pub solution: &'a Solution,
     /// Meaning of the mesh's areas.
     pub plan: &'a Plan<'a>,
+    /// No cut carries more than this, A.
+    pub most: f64,
     /// Outlines of the sheets.
     pub outlines: Vec<Outline>,
 }
@@ -102,7 +104,8 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
     // The problem was solved, so its plan can be made; without one there is nothing to say.
     let Ok(plan) = Plan::new(problem) else { return survey };
     let outlines = density.layers.iter().map(|metal| Outline::new(problem, metal)).collect();
-    let setting = Setting { problem, solution, plan: &plan, outlines };
+    let most = 0.5 * solution.electrodes.iter().map(|e| e.current.abs()).sum::<f64>();
+    let setting = Setting { problem, solution, plan: &plan, most, outlines };
     let mut found: Vec<(LayerId, Candidate)> = Vec::new();
     for metal in &density.layers {
         let candidates = candidates_of(&setting, metal);
@@ -232,7 +235,7 @@ fn candidate(setting: &Setting, metal: &LayerMetal, rims: &[(f64, f64)], disc: &
         let push = 0.02 * metal.gauge;
         let inside = metal.moved(place, place.point + unit(covered.middle - place.point) * push);
         let places = [0.0, 1.0, -1.0].map(|s| metal.moved(inside, inside.point + unit(covered.direction) * (s * push)));
-        section = section::best_cut(metal, &places);
+        section = section::best_cut(metal, &places, setting.most, covered.direction);
     }
     let character = kind::character(setting, metal, &touched, place, section.as_ref());
     let exceeds = match character.kind {
