@@ -103,6 +103,10 @@ impl<'a> Disc<'a> {
     /// Calls `visit` for the triangles that a disc covers and that hang together within it, with the covered area.
     pub fn flood(&mut self, from: Place, diameter: f64, mut visit: impl FnMut(u32, f64)) {
         let radius = 0.5 * diameter;
+        let meets = |a: Point, b: Point| {
+            let nearest = nearest_on_segment(a, b, Point::default());
+            nearest.dot(nearest) < radius * radius
+        };
         self.round += 1;
         self.stack.push(from.triangle);
         self.stamps[from.triangle as usize] = self.round;
@@ -115,7 +119,7 @@ impl<'a> Disc<'a> {
                 let other = triangle.neighbours[k];
                 if other != NONE && self.stamps[other as usize] != self.round {
                     let (i, j) = ((k + 1) % 3, (k + 2) % 3);
-                    if inside[i] || inside[j] || nearest_on_segment(corners[i], corners[j], Point::default()).norm() < radius {
+                    if inside[i] || inside[j] || meets(corners[i], corners[j]) {
                         self.stamps[other as usize] = self.round;
                         self.stack.push(other);
                     }

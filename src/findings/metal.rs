@@ -55,7 +55,7 @@ impl MetalTriangle {
     /// Length of the longest edge.
     pub fn longest(&self) -> f64 {
         let [a, b, c] = self.corners;
-        a.distance(b).max(b.distance(c)).max(c.distance(a))
+        [b - a, c - b, a - c].into_iter().fold(0.0, |m: f64, e| m.max(e.dot(e))).sqrt()
     }
     /// Potential at a point.
     pub fn potential_at(&self, p: Point) -> f64 {
