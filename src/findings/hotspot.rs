@@ -277,7 +277,7 @@ fn one_neck(metal: &LayerMetal, s: &Section, t: &Section) -> bool {
 fn row(setting: &Setting, metal: &LayerMetal, c: &Candidate, rank: usize) -> Hotspot {
     let mut remarks: Vec<&str> = Vec::new();
     if c.character.coarse {
-        remarks.push("as small as the sheet is thick: the thin-sheet model is coarse here");
+        remarks.push("less than three thicknesses wide or round: the thin-sheet model is coarse here");
     }
     if c.character.singular {
         remarks.push("the exact peak is infinite: the gauge mean is what is compared");

@@ -39,10 +39,14 @@ impl Nodes {
         Self { value, at }
     }
 
-    /// A vertex as a place.
-    fn place(&self, mesh: &Mesh, vertex: u32) -> Option<Place> {
+    /// A vertex as a place: a hair inside the triangle, because a walk from the very tip of a re-entrant corner may leave the metal at once.
+    fn place(&self, mesh: &Mesh, metal: &LayerMetal, vertex: u32) -> Option<Place> {
         let triangle = self.at[vertex as usize];
-        (triangle != NONE).then(|| Place { triangle, point: mesh.points[vertex as usize] })
+        if triangle == NONE {
+            return None;
+        }
+        let tip = mesh.points[vertex as usize];
+        Some(Place { triangle, point: tip + (metal.at(triangle).middle() - tip) * 1e-3 })
     }
 
     /// Vertices of at least this value from which every way to a higher one leads down by [`PROMINENCE`].
@@ -99,7 +103,7 @@ pub fn starts(setting: &Setting, metal: &LayerMetal, mean: f64, floor: f64) -> O
         return None;
     }
     // Measured by its gauge mean: the value at a vertex grows without end where triangles get smaller at a corner.
-    let top = (0..nodes.value.len()).rfind(|&v| nodes.value[v] == highest).and_then(|v| nodes.place(mesh, v as u32));
+    let top = (0..nodes.value.len()).rfind(|&v| nodes.value[v] == highest).and_then(|v| nodes.place(mesh, metal, v as u32));
     let least = floor * top.map_or(0.0, |place| Disc::new(metal).mean(place, metal.gauge).mean).min(highest);
     Some(thinned(setting, metal, &nodes, nodes.summits(mesh, metal, least)))
 }
@@ -107,7 +111,7 @@ pub fn starts(setting: &Setting, metal: &LayerMetal, mean: f64, floor: f64) -> O
 /// The places to look at closely: the highest gauge means, one per spot of an electrode or join, none within half a gauge of a higher one.
 fn thinned(setting: &Setting, metal: &LayerMetal, nodes: &Nodes, summits: Vec<u32>) -> Vec<Place> {
     let mesh = &setting.solution.mesh;
-    let places: Vec<Place> = summits.into_iter().filter_map(|v| nodes.place(mesh, v)).collect();
+    let places: Vec<Place> = summits.into_iter().filter_map(|v| nodes.place(mesh, metal, v)).collect();
     let mut ranked: Vec<(f64, Place)> =
         places.par_iter().map_init(|| Disc::new(metal), |disc, &place| (disc.mean(place, metal.gauge).mean, place)).collect();
     ranked.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.triangle.cmp(&b.1.triangle)));
