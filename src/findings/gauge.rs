@@ -82,7 +82,7 @@ pub struct Covered {
     pub direction: Point,
     /// Roughly the middle of the metal under the disc.
     pub middle: Point,
-    /// Longest edge of a triangle under it.
+    /// Longest edge of a triangle under it that makes up more than a fiftieth of it.
     pub longest: f64,
 }
 
@@ -103,6 +103,10 @@ impl<'a> Disc<'a> {
     /// Calls `visit` for the triangles that a disc covers and that hang together within it, with the covered area.
     pub fn flood(&mut self, from: Place, diameter: f64, mut visit: impl FnMut(u32, f64)) {
         let radius = 0.5 * diameter;
+        let meets = |a: Point, b: Point| {
+            let nearest = nearest_on_segment(a, b, Point::default());
+            nearest.dot(nearest) < radius * radius
+        };
         self.round += 1;
         self.stack.push(from.triangle);
         self.stamps[from.triangle as usize] = self.round;
@@ -115,7 +119,7 @@ impl<'a> Disc<'a> {
                 let other = triangle.neighbours[k];
                 if other != NONE && self.stamps[other as usize] != self.round {
                     let (i, j) = ((k + 1) % 3, (k + 2) % 3);
-                    if inside[i] || inside[j] || nearest_on_segment(corners[i], corners[j], Point::default()).norm() < radius {
+                    if inside[i] || inside[j] || meets(corners[i], corners[j]) {
                         self.stamps[other as usize] = self.round;
                         self.stack.push(other);
                     }
@@ -127,6 +131,7 @@ impl<'a> Disc<'a> {
     /// The means over a disc of some diameter.
     pub fn mean(&mut self, centre: Place, diameter: f64) -> Covered {
         let metal = self.metal;
+        let whole = 0.25 * std::f64::consts::PI * diameter * diameter;
         let mut sum = Covered::default();
         let mut area = 0.0;
         self.flood(centre, diameter, |t, part| {
@@ -135,7 +140,8 @@ impl<'a> Disc<'a> {
             sum.mean += part * triangle.magnitude;
             sum.direction = sum.direction + triangle.density * part;
             sum.middle = sum.middle + triangle.middle() * part;
-            if part > 0.0 {
+            // A triangle that the disc only just touches does not spoil the mean.
+            if part > 0.02 * whole {
                 sum.longest = sum.longest.max(triangle.longest());
             }
         });
@@ -146,8 +152,8 @@ impl<'a> Disc<'a> {
         sum
     }
 
-    /// Goes uphill from a start by steps that are halved: eight directions, and two along the edge of the metal and back against it, so that a
-    /// curved edge can be followed. Centres stay on the metal and where `allowed`.
+    /// Goes uphill from a start by steps that get smaller: in eight directions, or, where the disc is clipped, inward, outward and along the edge
+    /// of the metal and back against it, so that a curved edge can be followed. Centres stay on the metal and where `allowed`.
     pub fn climb(&mut self, start: Place, allowed: &dyn Fn(Point) -> bool) -> (f64, Place) {
         const HALF: f64 = std::f64::consts::FRAC_1_SQRT_2;
         const WAYS: [(f64, f64); 8] =
@@ -158,18 +164,21 @@ impl<'a> Disc<'a> {
         // Wider than the chords of a small hole: the corners of its polygon are no places of their own.
         let mut step = 1.6 * gauge;
         let mut moves = 0;
-        while step > 0.02 * gauge && moves < 40 {
+        while step > 0.03 * gauge && moves < 40 {
             let (at, inward) = (best.1, best.0.middle - best.1.point);
-            let free = WAYS.map(|(x, y)| metal.moved(at, at.point + Point::new(x, y) * step));
-            let edge = (inward.norm() > 0.05 * gauge).then(|| {
+            let tried: Vec<Place> = if inward.norm() > 0.05 * gauge {
                 let inward = inward * (step / inward.norm());
-                [inward.perpendicular(), -inward.perpendicular()].map(|side| {
+                let pressed = [inward.perpendicular(), -inward.perpendicular()].map(|side| {
                     let aside = metal.moved(at, at.point + inward * 0.5 + side);
                     metal.moved(aside, aside.point - inward)
-                })
-            });
+                });
+                let across = [inward, -inward].map(|way| metal.moved(at, at.point + way));
+                pressed.into_iter().chain(across).collect()
+            } else {
+                WAYS.iter().map(|&(x, y)| metal.moved(at, at.point + Point::new(x, y) * step)).collect()
+            };
             let mut better = best;
-            for place in free.into_iter().chain(edge.into_iter().flatten()) {
+            for place in tried {
                 if allowed(place.point) {
                     let covered = self.mean(place, gauge);
                     if covered.mean > better.0.mean * (1.0 + 1e-7) {
@@ -181,7 +190,7 @@ impl<'a> Disc<'a> {
                 best = better;
                 moves += 1;
             } else {
-                step *= 0.5;
+                step *= 0.45;
             }
         }
         (best.0.mean, best.1)
@@ -191,26 +200,122 @@ impl<'a> Disc<'a> {
 /// Area of a triangle (counter-clockwise, seen from the circle's centre) within a circle: exact.
 fn circle_over_triangle(corners: [Point; 3], radius: f64) -> f64 {
     let square = radius * radius;
-    let sector = |a: Point, b: Point| 0.5 * square * a.cross(b).atan2(a.dot(b));
-    let mut sum = 0.0;
+    // Chords give triangles with the centre, the stretches between them sectors; the sectors' angles are added by multiplying rotations.
+    let mut chords = 0.0;
+    let mut turn = Point::new(1.0, 0.0);
+    let mut any_chord = false;
+    let mut centre_inside = true;
+    let mut sector = |a: Point, b: Point| {
+        let (cos, sin) = (a.dot(b), a.cross(b));
+        turn = Point::new(turn.x * cos - turn.y * sin, turn.x * sin + turn.y * cos);
+    };
     for k in 0..3 {
         let (a, b) = (corners[k], corners[(k + 1) % 3]);
+        centre_inside &= a.cross(b) > 0.0;
         let way = b - a;
         let (aa, ab, ac) = (way.dot(way), a.dot(way), a.dot(a) - square);
-        let root = ab * ab - aa * ac;
-        let (enter, leave) = if root > 0.0 { ((-ab - root.sqrt()) / aa, (-ab + root.sqrt()) / aa) } else { (2.0, 2.0) };
-        if enter >= 1.0 || leave <= 0.0 {
-            sum += sector(a, b);
+        let under_root = ab * ab - aa * ac;
+        let root = under_root.max(0.0).sqrt();
+        let (enter, leave) = ((-ab - root) / aa, (-ab + root) / aa);
+        if under_root <= 0.0 || enter >= 1.0 || leave <= 0.0 {
+            sector(a, b);
         } else {
+            any_chord = true;
             let (p, q) = (a + way * enter.max(0.0), a + way * leave.min(1.0));
-            sum += 0.5 * p.cross(q);
+            chords += 0.5 * p.cross(q);
             if enter > 0.0 {
-                sum += sector(a, p);
+                sector(a, p);
             }
             if leave < 1.0 {
-                sum += sector(q, b);
+                sector(q, b);
             }
         }
     }
-    sum.max(0.0)
+    if !any_chord {
+        return if centre_inside { std::f64::consts::PI * square } else { 0.0 };
+    }
+    let angle = turn.y.atan2(turn.x);
+    // Between no angle and a full turn; a hair below zero is rounding.
+    let angle = if angle < -1e-9 { angle + std::f64::consts::TAU } else { angle };
+    (chords + 0.5 * square * angle).max(0.0)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::trial::*;
+    use super::*;
+
+    #[test]
+    fn circle_and_triangle_share_the_area_that_counting_finds() {
+        let mut random = fastrand::Rng::with_seed(7);
+        for _ in 0..200 {
+            let mut corners = [0; 3].map(|_| Point::new(random.f64() * 4.0 - 2.0, random.f64() * 4.0 - 2.0));
+            if (corners[1] - corners[0]).cross(corners[2] - corners[0]) < 0.0 {
+                corners.swap(1, 2);
+            }
+            let n = 400;
+            let mut counted = 0.0;
+            for i in 0..n {
+                for j in 0..n {
+                    let p = Point::new((i as f64 + 0.5) / n as f64 * 2.0 - 1.0, (j as f64 + 0.5) / n as f64 * 2.0 - 1.0);
+                    let inside = (0..3).all(|k| (corners[(k + 1) % 3] - corners[k]).cross(p - corners[k]) >= 0.0);
+                    counted += if inside && p.norm() <= 1.0 { 4.0 / (n * n) as f64 } else { 0.0 };
+                }
+            }
+            let exact = circle_over_triangle(corners, 1.0);
+            assert!((exact - counted).abs() < 0.01, "{corners:?} {exact} {counted}");
+        }
+    }
+
+    #[test]
+    fn a_disc_does_not_reach_across_a_slit() {
+        // Two strips 0.1 mm apart, joined at the right end: the current runs along both of them, but only the lower one is fed strongly.
+        let ring = polygon(&[(0.0, 0.0), (40.0, 0.0), (40.0, 4.1), (0.0, 4.1), (0.0, 2.1), (30.0, 2.1), (30.0, 2.0), (0.0, 2.0)]);
+        let ends = terminals(line(&[(0.0, 0.0), (0.0, 2.0)]), line(&[(40.0, 0.0), (40.0, 2.0)]), 0, 2.0);
+        let job = problem(vec![sheet("a", vec![ring], 1.0)], ends, 1e-3, 1.0);
+        let (_, density, _) = surveyed(&job);
+        let mean = |y: f64| density.gauge_mean(LayerId(0), Point::new(10.0, y)).unwrap();
+        assert!((mean(1.99) - 1.0).abs() < 1e-3 && mean(2.11) < 1e-3, "{} {}", mean(1.99), mean(2.11));
+        assert_eq!(density.gauge_mean(LayerId(0), Point::new(10.0, 2.05)), None);
+        assert_eq!(density.gauge_mean(LayerId(3), Point::new(10.0, 1.0)), None);
+    }
+
+    #[test]
+    fn the_density_around_a_nugget_falls_like_one_over_the_radius() {
+        // Radial flow: J = I / (2 pi r t); the disc of 0.2 mm that touches the rim of 2 mm has its middle at 2.1 mm.
+        let ring = crate::geometry::Ring::circle(Point::default(), 30.0);
+        let rim = ring.flattened();
+        let closed = rim.iter().copied().chain(rim.first().copied()).collect();
+        let ends = terminals(disc(0.0, 0.0, 4.0), crate::problem::Footprint::Line { points: closed }, 0, 10.0);
+        let job = problem(vec![sheet("a", vec![ring], 1.0)], ends, 2e-4, 0.2);
+        let (_, density, survey) = surveyed(&job);
+        let expected = 10.0 / (std::f64::consts::TAU * 2.1);
+        let nugget = crate::geometry::Ring::circle(Point::default(), 4.0).flattened();
+        let found = density.rim_peak(LayerId(0), &[nugget]).unwrap();
+        assert!((found / expected - 1.0).abs() < 0.03, "{found} {expected}");
+        assert!((survey.rows[0].peak_a_mm2 / found - 1.0).abs() < 0.03);
+        let far = density.gauge_mean(LayerId(0), Point::new(0.0, 8.0)).unwrap();
+        assert!((far / (10.0 / (std::f64::consts::TAU * 8.0)) - 1.0).abs() < 0.03, "{far}");
+    }
+
+    #[test]
+    fn bonded_sheets_share_by_their_conductances() {
+        let body = || vec![polygon(&[(0.0, 0.0), (20.0, 0.0), (20.0, 5.0), (0.0, 5.0)])];
+        let ends = terminals(line(&[(0.0, 0.0), (0.0, 5.0)]), line(&[(20.0, 0.0), (20.0, 5.0)]), 0, 6.0);
+        let mut job = problem(vec![sheet("a", body(), 0.2), sheet("b", body(), 0.4)], ends, 1e-3, 0.5);
+        job.contacts.push(crate::problem::Contact {
+            name: "c".into(),
+            between: [LayerId(0), LayerId(1)],
+            area: None,
+            interface: crate::problem::Interface::Bonded,
+        });
+        let (_, density, survey) = surveyed(&job);
+        for layer in [0, 1] {
+            let mean = density.gauge_mean(LayerId(layer), Point::new(10.0, 2.5)).unwrap();
+            assert!((mean - 2.0).abs() < 1e-9, "{mean}");
+        }
+        let crossing = super::super::section::crossing_current(&density, Point::new(7.0, -1.0), Point::new(7.0, 6.0)).unwrap();
+        assert!((crossing[0] - 2.0).abs() < 1e-9 && (crossing[1] - 4.0).abs() < 1e-9, "{crossing:?}");
+        assert_eq!(survey.rows.len(), 2);
+    }
 }

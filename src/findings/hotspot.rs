@@ -1,32 +1,26 @@
 //! Where current crowds: the places that exceed their surroundings, each with its gauge peak, section, kind and rank.
 
 use super::gauge::{Covered, DensityField, Disc};
-use super::kind::{self, Character, Outline, attaches};
+use super::kind::{self, Character, Outline};
 use super::metal::{LayerMetal, Place};
 use super::section::{self, Section};
+use super::summit;
 use super::{Hotspot, HotspotKind};
 use crate::geometry::Point;
 use crate::index::LayerId;
-use crate::mesh::{Mesh, NONE};
 use crate::physics::Solution;
-use crate::physics::plan::{Area, Plan};
+use crate::physics::plan::Plan;
 use crate::problem::Problem;
 use rayon::prelude::*;
 
 /// Most rows of the table.
 pub const MOST_ROWS: usize = 20;
 
-/// A place is looked at when |J| falls by this factor on every way from it to a higher place.
-const PROMINENCE: f64 = 1.03;
-
 /// A row's gauge peak exceeds its section's mean (at a weld rim: its surroundings) by this factor, unless it is a neck.
 const CROWDING: f64 = 1.05;
 
 /// Places below this part of their sheet's highest are not looked at.
 const FLOOR: f64 = 0.25;
-
-/// Most places of a sheet that are looked at closely.
-const MOST_STARTS: usize = 48;
 
 /// Peaks nearer to each other than this are ranked by place, so that the two sides of a symmetric part do not change places with the mesh.
 const EQUAL: f64 = 0.01;
@@ -66,6 +60,8 @@ pub struct Setting<'a> {
     pub solution: &'a Solution,
     /// Meaning of the mesh's areas.
     pub plan: &'a Plan<'a>,
+    /// No cut carries more than this, A.
+    pub most: f64,
     /// Outlines of the sheets.
     pub outlines: Vec<Outline>,
 }
@@ -102,7 +98,8 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
     // The problem was solved, so its plan can be made; without one there is nothing to say.
     let Ok(plan) = Plan::new(problem) else { return survey };
     let outlines = density.layers.iter().map(|metal| Outline::new(problem, metal)).collect();
-    let setting = Setting { problem, solution, plan: &plan, outlines };
+    let most = 0.5 * solution.electrodes.iter().map(|e| e.current.abs()).sum::<f64>();
+    let setting = Setting { problem, solution, plan: &plan, most, outlines };
     let mut found: Vec<(LayerId, Candidate)> = Vec::new();
     for metal in &density.layers {
         let candidates = candidates_of(&setting, metal);
@@ -131,11 +128,7 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
     survey.rows = rows;
     for (layer, c) in &found {
         let metal = &density.layers[layer.index()];
-        survey.places.push(HotspotPlace {
-            layer: *layer,
-            centre: c.place.point,
-            section_ends: if c.rim.is_some() { None } else { c.section.map(|s| s.ends) },
-        });
+        survey.places.push(HotspotPlace { layer: *layer, centre: c.place.point, section_ends: c.section.map(|s| s.ends) });
         for each in c.twins.iter().chain([c]).filter(|each| each.unresolved(metal)) {
             if !survey.unresolved.contains(&(*layer, each.place.point, metal.gauge)) {
                 survey.unresolved.push((*layer, each.place.point, metal.gauge));
@@ -151,12 +144,10 @@ fn candidates_of(setting: &Setting, metal: &LayerMetal) -> Vec<Candidate> {
     if total <= 0.0 {
         return Vec::new();
     }
-    let nodes = Nodes::new(&setting.solution.mesh, metal);
-    let highest = nodes.value.iter().fold(0.0, |m: f64, &v| m.max(v));
-    if highest <= PROMINENCE * total / area {
-        return strip(setting, metal).into_iter().collect();
-    }
-    let starts = thinned(setting, metal, &nodes, nodes.summits(&setting.solution.mesh, metal, FLOOR * highest));
+    let starts = match summit::starts(setting, metal, total / area, FLOOR) {
+        Some(starts) => starts,
+        None => return strip(setting, metal).into_iter().collect(),
+    };
     let mut climbed: Vec<(f64, Place)> =
         starts.par_iter().map_init(|| Disc::new(metal), |disc, &start| disc.climb(start, &|_| true)).collect();
     climbed.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.triangle.cmp(&b.1.triangle)));
@@ -166,7 +157,9 @@ fn candidates_of(setting: &Setting, metal: &LayerMetal) -> Vec<Candidate> {
             apart.push(c);
         }
     }
-    let looked_at: Vec<Candidate> = apart.par_iter().map_init(|| Disc::new(metal), |disc, &c| candidate(setting, metal, disc, c)).collect();
+    let rims = kind::rims(setting, metal);
+    let looked_at: Vec<Candidate> =
+        apart.par_iter().map_init(|| Disc::new(metal), |disc, &c| candidate(setting, metal, &rims, disc, c)).collect();
     let mut kept: Vec<Candidate> = Vec::new();
     for c in looked_at {
         match kept.iter_mut().find(|k| same(metal, k, &c)) {
@@ -209,27 +202,31 @@ fn strip(setting: &Setting, metal: &LayerMetal) -> Option<Candidate> {
         let nearest = free().min_by(|a, b| a.middle().distance(middle).total_cmp(&b.middle().distance(middle)))?;
         metal.locate(nearest.middle(), 1e-6)
     })?;
+    let rims = vec![(0.0, 0.0); setting.plan.areas.len()];
     let mut disc = Disc::new(metal);
     let peak = disc.mean(place, metal.gauge).mean;
-    let mut candidate = candidate(setting, metal, &mut disc, (peak, place));
+    let mut candidate = candidate(setting, metal, &rims, &mut disc, (peak, place));
     candidate.character.kind = HotspotKind::Strip;
-    (candidate.rim, candidate.exceeds) = (None, true);
+    candidate.exceeds = true;
     Some(candidate)
 }
 
-fn candidate(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, (peak, place): (f64, Place)) -> Candidate {
+fn candidate(setting: &Setting, metal: &LayerMetal, rims: &[(f64, f64)], disc: &mut Disc, (peak, place): (f64, Place)) -> Candidate {
     let covered = disc.mean(place, metal.gauge);
-    let unit = |v: Point| if v.norm() > 0.0 { v * (1.0 / v.norm()) } else { v };
-    // Pushed inside, and a little up and down the current: at a corner only one of these has the narrow side in its cuts.
-    let push = 0.02 * metal.gauge;
-    let inside = metal.moved(place, place.point + unit(covered.middle - place.point) * push);
-    let places = [0.0, 1.0, -1.0].map(|s| metal.moved(inside, inside.point + unit(covered.direction) * (s * push)));
-    let section = section::best_cut(metal, &places);
-    let character = kind::character(setting, metal, disc, place, section.as_ref());
-    let rim = match (character.kind, character.spot) {
-        (HotspotKind::WeldRim, Some(area)) => kind::rim(setting, metal, area),
-        _ => None,
-    };
+    let touched = kind::Touched::new(setting, metal, disc, place);
+    let (mut rim, mut section) = (None, None);
+    if let Some(area) = touched.weld {
+        let label = setting.plan.areas.iter().position(|&a| a == area);
+        rim = label.map(|l| rims[l]).filter(|r| r.0 > 0.0);
+    } else {
+        let unit = |v: Point| if v.norm() > 0.0 { v * (1.0 / v.norm()) } else { v };
+        // Pushed inside, and a little up and down the current: at a corner only one of these has the narrow side in its cuts.
+        let push = 0.02 * metal.gauge;
+        let inside = metal.moved(place, place.point + unit(covered.middle - place.point) * push);
+        let places = [0.0, 1.0, -1.0].map(|s| metal.moved(inside, inside.point + unit(covered.direction) * (s * push)));
+        section = section::best_cut(metal, &places, setting.most, covered.direction);
+    }
+    let character = kind::character(setting, metal, &touched, place, section.as_ref());
     let exceeds = match character.kind {
         HotspotKind::Neck => true,
         HotspotKind::WeldRim => peak >= CROWDING * disc.mean(place, 4.0 * metal.gauge).mean,
@@ -280,7 +277,7 @@ fn one_neck(metal: &LayerMetal, s: &Section, t: &Section) -> bool {
 fn row(setting: &Setting, metal: &LayerMetal, c: &Candidate, rank: usize) -> Hotspot {
     let mut remarks: Vec<&str> = Vec::new();
     if c.character.coarse {
-        remarks.push("as small as the sheet is thick: the thin-sheet model is coarse here");
+        remarks.push("less than three thicknesses wide or round: the thin-sheet model is coarse here");
     }
     if c.character.singular {
         remarks.push("the exact peak is infinite: the gauge mean is what is compared");
@@ -295,7 +292,7 @@ fn row(setting: &Setting, metal: &LayerMetal, c: &Candidate, rank: usize) -> Hot
     };
     let mean = width.zip(current).map(|(w, i)| i / (w * metal.thickness));
     let crowding = mean.filter(|&m| m > 0.01 * c.peak).map(|m| c.peak / m);
-    let stretch = if c.rim.is_some() { None } else { c.section.as_ref().and_then(|s| section::stretch(metal, s)) };
+    let stretch = c.section.as_ref().and_then(|s| section::stretch(metal, s));
     Hotspot {
         rank,
         kind: c.character.kind,
@@ -311,370 +308,5 @@ fn row(setting: &Setting, metal: &LayerMetal, c: &Candidate, rank: usize) -> Hot
         drop_mv: stretch.map(|s| 1e3 * s.drop),
         loss_w: stretch.map(|s| s.loss),
         remark: (!remarks.is_empty()).then(|| remarks.join("; ")),
-    }
-}
-
-/// |J| at the vertices of a sheet: the mean over the triangles around them, held ones left out.
-struct Nodes {
-    value: Vec<f64>,
-    /// A triangle at the vertex: the one with the largest |J|.
-    at: Vec<u32>,
-}
-
-impl Nodes {
-    fn new(mesh: &Mesh, metal: &LayerMetal) -> Self {
-        let mut value = vec![0.0; mesh.points.len()];
-        let mut area = vec![0.0; mesh.points.len()];
-        let mut at = vec![NONE; mesh.points.len()];
-        for (t, triangle) in metal.triangles.iter().enumerate().filter(|(_, t)| !t.held) {
-            for v in mesh.triangles[triangle.triangle as usize].map(|v| v as usize) {
-                value[v] += triangle.area * triangle.magnitude;
-                area[v] += triangle.area;
-                if at[v] == NONE || metal.at(at[v]).magnitude < triangle.magnitude {
-                    at[v] = t as u32;
-                }
-            }
-        }
-        value.iter_mut().zip(&area).filter(|(_, a)| **a > 0.0).for_each(|(v, a)| *v /= a);
-        Self { value, at }
-    }
-
-    /// Vertices of at least this value from which every way to a higher one leads down by [`PROMINENCE`].
-    fn summits(&self, mesh: &Mesh, metal: &LayerMetal, least: f64) -> Vec<u32> {
-        let value = |v: u32| self.value[v as usize];
-        let mut edges: Vec<(f64, [u32; 2])> = Vec::new();
-        for (t, triangle) in metal.triangles.iter().enumerate() {
-            for k in 0..3 {
-                // Each edge once: with the first of its triangles.
-                if triangle.neighbours[k] == NONE || triangle.neighbours[k] > t as u32 {
-                    let ends = mesh.edges.ends[mesh.edges.of_triangle[triangle.triangle as usize][k] as usize];
-                    let saddle = value(ends[0]).min(value(ends[1]));
-                    if saddle >= least {
-                        edges.push((saddle, ends));
-                    }
-                }
-            }
-        }
-        edges.sort_unstable_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
-        let mut parent: Vec<u32> = (0..self.value.len() as u32).collect();
-        let mut root = |mut v: u32, link: Option<u32>| {
-            while parent[v as usize] != v {
-                parent[v as usize] = parent[parent[v as usize] as usize];
-                v = parent[v as usize];
-            }
-            if let Some(link) = link {
-                parent[v as usize] = link;
-            }
-            v
-        };
-        let mut summits = Vec::new();
-        for (saddle, [a, b]) in edges {
-            let (a, b) = (root(a, None), root(b, None));
-            if a != b {
-                let (high, low) = if value(a) > value(b) || value(a) == value(b) && a < b { (a, b) } else { (b, a) };
-                root(low, Some(high));
-                if value(low) >= PROMINENCE * saddle {
-                    summits.push(low);
-                }
-            }
-        }
-        summits.extend((0..self.value.len() as u32).filter(|&v| value(v) >= least && root(v, None) == v));
-        summits
-    }
-}
-
-/// The places to look at closely: the highest gauge means, one per spot of an electrode or join, none within half a gauge of a higher one.
-fn thinned(setting: &Setting, metal: &LayerMetal, nodes: &Nodes, summits: Vec<u32>) -> Vec<Place> {
-    let mesh = &setting.solution.mesh;
-    let start = |&v: &u32| {
-        let triangle = nodes.at[v as usize];
-        let point = mesh.points[v as usize];
-        let inward = metal.at(triangle).middle() - point;
-        Place { triangle, point: point + inward * (1e-6 / inward.norm()) }
-    };
-    let mut ranked: Vec<(f64, Place)> = summits
-        .par_iter()
-        .map_init(
-            || Disc::new(metal),
-            |disc, v| {
-                let place = start(v);
-                (disc.mean(place, metal.gauge).mean, place)
-            },
-        )
-        .collect();
-    ranked.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.triangle.cmp(&b.1.triangle)));
-    let spots_at = |place: Place| {
-        let around = metal.at(place.triangle).neighbours.into_iter().chain([place.triangle]).filter(|&t| t != NONE);
-        let areas = around.flat_map(|t| mesh.cover(metal.at(t).triangle as usize)).map(|&a| setting.plan.areas[a as usize]);
-        areas.filter(|&a| attaches(setting.problem, metal.layer, a)).collect::<Vec<Area>>()
-    };
-    let mut taken: Vec<Area> = Vec::new();
-    let mut kept: Vec<Place> = Vec::new();
-    for (_, place) in ranked {
-        if kept.len() == MOST_STARTS {
-            break;
-        }
-        let spots = spots_at(place);
-        if spots.iter().all(|s| !taken.contains(s)) && kept.iter().all(|k| k.point.distance(place.point) >= 0.5 * metal.gauge) {
-            taken.extend(spots);
-            kept.push(place);
-        }
-    }
-    kept
-}
-
-#[cfg(test)]
-mod tests {
-    use super::super::trial::*;
-    use super::*;
-    use crate::geometry::Ring;
-    use crate::problem::*;
-
-    /// A strip along x whose ends are terminals; mean density 1 A/mm² at full width.
-    fn strip_job(rings: Vec<Ring>, length: f64, width: f64, bracket: f64, gauge: f64) -> Problem {
-        let ends = terminals(line(&[(0.0, 0.0), (0.0, width)]), line(&[(length, 0.0), (length, width)]), 0, width);
-        problem(vec![sheet("a", rings, 1.0)], ends, bracket, gauge)
-    }
-
-    fn near(value: f64, expected: f64, part: f64) {
-        assert!((value / expected - 1.0).abs() <= part, "{value} is not {expected} within {part}");
-    }
-
-    #[test]
-    fn a_uniform_strip_has_one_row_at_mid_length() {
-        let body = polygon(&[(0.0, 0.0), (60.0, 0.0), (60.0, 10.0), (0.0, 10.0)]);
-        let (.., survey) = surveyed(&strip_job(vec![body], 60.0, 10.0, 1e-3, 0.5));
-        assert_eq!(survey.rows.len(), 1);
-        let row = &survey.rows[0];
-        assert_eq!(row.kind, HotspotKind::Strip);
-        assert!((row.x_mm - 30.0).abs() < 0.01 && (row.peak_a_mm2 - 1.0).abs() < 1e-6);
-        assert!((row.width_mm.unwrap() - 10.0).abs() < 1e-6 && (row.section_a.unwrap() - 10.0).abs() < 1e-6);
-        // One square of 1 mm copper: 17.241 microhm at 10 A.
-        near(row.drop_mv.unwrap(), 0.17241, 1e-5);
-        near(row.loss_w.unwrap(), 1.7241e-3, 1e-5);
-    }
-
-    #[test]
-    fn a_hole_in_a_strip_has_its_peaks_beside_the_hole() {
-        // checks.md B15 (limit of small holes: potential flow past a cylinder, Lamb).
-        for (part, ratio, kind) in
-            [(0.1, 2.06940028, HotspotKind::HoleEdge), (0.2, 2.32872166, HotspotKind::HoleEdge), (0.3, 3.02206308, HotspotKind::Neck)]
-        {
-            let radius = 10.0 * part;
-            let body = polygon(&[(0.0, 0.0), (60.0, 0.0), (60.0, 10.0), (0.0, 10.0)]);
-            let hole = Ring::circle(Point::new(30.0, 5.0), 2.0 * radius);
-            let (.., survey) = surveyed(&strip_job(vec![body, hole], 60.0, 10.0, 1e-3, 0.1 * radius));
-            assert_eq!(survey.rows.len(), 2);
-            for row in &survey.rows {
-                assert_eq!(row.kind, kind);
-                // The gauge mean lies about a fifth of the gauge inside the metal, where less flows.
-                assert!(row.peak_a_mm2 > 0.95 * ratio && row.peak_a_mm2 < 1.01 * ratio, "{} {ratio}", row.peak_a_mm2);
-                near(row.width_mm.unwrap(), 5.0 - radius, 0.002);
-                near(row.section_a.unwrap(), 5.0, 0.002);
-                assert!((row.x_mm - 30.0).abs() < 0.1 * radius, "{}", row.x_mm);
-            }
-        }
-    }
-
-    /// An L of two arms of width 7 with an inner corner of some radius.
-    fn bend(radius: f64, bracket: f64, gauge: f64) -> Problem {
-        let (w, arm) = (7.0, 28.0);
-        let corner = if radius > 0.0 {
-            // Metal on the left of a ring that runs counter-clockwise: the fillet turns to the right.
-            vec![(w + radius, w, -(std::f64::consts::PI / 8.0).tan()), (w, w + radius, 0.0)]
-        } else {
-            vec![(w, w, 0.0)]
-        };
-        let ring: Vec<(f64, f64, f64)> =
-            [(0.0, 0.0, 0.0), (arm, 0.0, 0.0), (arm, w, 0.0)].into_iter().chain(corner).chain([(w, arm, 0.0), (0.0, arm, 0.0)]).collect();
-        let ends = terminals(line(&[(arm, 0.0), (arm, w)]), line(&[(w, arm), (0.0, arm)]), 0, w);
-        problem(vec![sheet("a", vec![bulged(&ring)], 1.0)], ends, bracket, gauge)
-    }
-
-    #[test]
-    fn a_fillet_peaks_as_published() {
-        // checks.md B22 (for the effect: Hagedorn and Hall 1963, Clem and Berggren 2011).
-        for (part, ratio) in [(0.25, 2.06451), (0.5, 1.617003)] {
-            let (.., survey) = surveyed(&bend(7.0 * part, 1e-3, 0.04 * 7.0 * part));
-            assert_eq!(survey.rows.len(), 1);
-            assert_eq!(survey.rows[0].kind, HotspotKind::InsideCorner);
-            near(survey.rows[0].peak_a_mm2, ratio, 0.02);
-            assert_eq!(survey.rows[0].remark.as_deref().filter(|r| r.contains("infinite")), None);
-        }
-    }
-
-    #[test]
-    fn a_sharp_inside_corner_is_one_row_that_says_its_peak_is_infinite() {
-        let (.., survey) = surveyed(&bend(0.0, 1e-3, 0.5));
-        assert_eq!(survey.rows.len(), 1);
-        let row = &survey.rows[0];
-        assert_eq!(row.kind, HotspotKind::InsideCorner);
-        assert!(row.x_mm.hypot(row.y_mm) - 7.0 * 2f64.sqrt() < 0.2);
-        near(row.section_a.unwrap(), 7.0, 1e-6);
-        near(row.width_mm.unwrap(), 7.0, 0.01);
-        assert!(row.remark.as_deref().unwrap().contains("infinite"));
-    }
-
-    #[test]
-    fn an_arc_bend_crowds_at_its_inner_radius() {
-        // checks.md B11: J = I / (t r ln(r2 / r1)), radii 8 and 15.
-        let quarter = (std::f64::consts::PI / 8.0).tan();
-        let ring = bulged(&[(8.0, 0.0, 0.0), (15.0, 0.0, quarter), (0.0, 15.0, 0.0), (0.0, 8.0, -quarter)]);
-        let ends = terminals(line(&[(8.0, 0.0), (15.0, 0.0)]), line(&[(0.0, 15.0), (0.0, 8.0)]), 0, 7.0);
-        let (.., survey) = surveyed(&problem(vec![sheet("a", vec![ring], 1.0)], ends, 1e-3, 0.3));
-        near(survey.rows[0].peak_a_mm2, 7.0 / (8.0 * (15f64 / 8.0).ln()), 0.015);
-        near(survey.rows[0].section_a.unwrap(), 7.0, 1e-3);
-        assert_eq!(survey.rows[0].kind, HotspotKind::InsideCorner);
-    }
-
-    #[test]
-    fn slots_leave_one_neck() {
-        // checks.md B17: notches from both sides leave 4 of 10 mm.
-        let (.., survey) = surveyed(&slotted(1e-3));
-        assert_eq!(survey.rows.len(), 1);
-        let row = &survey.rows[0];
-        assert_eq!(row.kind, HotspotKind::Neck);
-        near(row.width_mm.unwrap(), 4.0, 0.005);
-        near(row.section_a.unwrap(), 10.0, 1e-6);
-        near(row.section_a_mm2.unwrap(), 2.5, 0.005);
-    }
-
-    fn slotted(bracket: f64) -> Problem {
-        let ring = polygon(&[
-            (0.0, 0.0),
-            (18.0, 0.0),
-            (18.0, 3.0),
-            (22.0, 3.0),
-            (22.0, 0.0),
-            (40.0, 0.0),
-            (40.0, 10.0),
-            (22.0, 10.0),
-            (22.0, 7.0),
-            (18.0, 7.0),
-            (18.0, 10.0),
-            (0.0, 10.0),
-        ]);
-        strip_job(vec![ring], 40.0, 10.0, bracket, 0.5)
-    }
-
-    /// A 12 mm strip with a post hole that leaves two legs 2 mm wide and 5 mm long.
-    fn post_hole(bracket: f64) -> Problem {
-        let body = polygon(&[(0.0, 0.0), (40.0, 0.0), (40.0, 12.0), (0.0, 12.0)]);
-        let hole = polygon(&[(17.5, 2.0), (22.5, 2.0), (22.5, 10.0), (17.5, 10.0)]);
-        strip_job(vec![body, hole], 40.0, 12.0, bracket, 0.3)
-    }
-
-    #[test]
-    fn a_post_hole_leaves_two_legs() {
-        let (.., survey) = surveyed(&post_hole(1e-3));
-        assert_eq!(survey.rows.iter().map(|r| r.kind).collect::<Vec<_>>(), [HotspotKind::Neck; 2]);
-        for row in &survey.rows {
-            near(row.width_mm.unwrap(), 2.0, 0.01);
-            near(row.section_a.unwrap(), 6.0, 0.002);
-        }
-    }
-
-    #[test]
-    fn a_taper_crowds_where_it_ends() {
-        let ring = polygon(&[(0.0, 0.0), (20.0, 0.0), (40.0, 6.0), (60.0, 6.0), (60.0, 10.0), (40.0, 10.0), (20.0, 16.0), (0.0, 16.0)]);
-        let ends = terminals(line(&[(0.0, 0.0), (0.0, 16.0)]), line(&[(60.0, 6.0), (60.0, 10.0)]), 0, 4.0);
-        let (.., survey) = surveyed(&problem(vec![sheet("a", vec![ring], 1.0)], ends, 1e-3, 0.5));
-        let row = &survey.rows[0];
-        assert_eq!(row.kind, HotspotKind::InsideCorner);
-        near(row.width_mm.unwrap(), 4.0, 0.02);
-        near(row.section_a_mm2.unwrap(), 1.0, 0.02);
-    }
-
-    /// Three cells on a strip, current taken off at its right end.
-    fn nuggets(bracket: f64, joint_ohm: f64) -> Problem {
-        let body = polygon(&[(0.0, 0.0), (70.0, 0.0), (70.0, 16.0), (0.0, 16.0)]);
-        let cell = |x: f64, i: f64| electrode(ElectrodeKind::Cell, 0, disc(x, 8.0, 4.0), joint_ohm, Drive::Current(i));
-        let lug = electrode(ElectrodeKind::Terminal, 0, line(&[(70.0, 0.0), (70.0, 16.0)]), 0.0, Drive::Balance);
-        problem(vec![sheet("a", vec![body], 0.3)], vec![cell(10.0, 5.0), cell(30.0, 6.0), cell(50.0, 7.0), lug], bracket, 0.5)
-    }
-
-    #[test]
-    fn every_nugget_has_one_rim() {
-        for joint_ohm in [0.0, 5e-5] {
-            let (.., survey) = surveyed(&nuggets(1e-3, joint_ohm));
-            assert_eq!(survey.rows.iter().map(|r| r.kind).collect::<Vec<_>>(), [HotspotKind::WeldRim; 3]);
-            for (row, (x, current)) in survey.rows.iter().zip([(50.0, 7.0), (30.0, 6.0), (10.0, 5.0)]) {
-                assert!((row.x_mm - x).hypot(row.y_mm - 8.0) < 2.6);
-                near(row.section_a.unwrap(), current, 1e-6);
-                near(row.width_mm.unwrap(), std::f64::consts::PI * 4.0, 0.01);
-            }
-        }
-    }
-
-    /// A lap of two strips in contact.
-    fn lap(bracket: f64) -> Problem {
-        let a = polygon(&[(0.0, 0.0), (30.0, 0.0), (30.0, 9.0), (0.0, 9.0)]);
-        let b = polygon(&[(18.0, 0.0), (60.0, 0.0), (60.0, 9.0), (18.0, 9.0)]);
-        let ends = terminals(line(&[(0.0, 0.0), (0.0, 9.0)]), line(&[(60.0, 0.0), (60.0, 9.0)]), 1, 9.0);
-        let mut job = problem(vec![sheet("a", vec![a], 0.2), sheet("b", vec![b], 0.15)], ends, bracket, 0.5);
-        job.contacts.push(Contact {
-            name: "c".into(),
-            between: [LayerId(0), LayerId(1)],
-            area: None,
-            interface: Interface::Conductance(200.0),
-        });
-        job
-    }
-
-    #[test]
-    fn a_lap_has_no_crowding_in_the_plane() {
-        // One-dimensional: each sheet carries all of the current up to the lap (the mathematics of Volkersen 1938).
-        let (.., survey) = surveyed(&lap(1e-3));
-        assert_eq!(
-            survey.rows.iter().map(|r| (r.kind, r.layer.as_str())).collect::<Vec<_>>(),
-            [(HotspotKind::Strip, "b"), (HotspotKind::Strip, "a")]
-        );
-    }
-
-    #[test]
-    fn the_list_does_not_depend_on_the_mesh() {
-        for job in [slotted as fn(f64) -> Problem, post_hole, |b| nuggets(b, 0.0), |b| bend(0.0, b, 0.5), |b| bend(2.0, b, 0.5)] {
-            let lists: Vec<Survey> = [1e-2, 1e-3, 2e-4].map(|bracket| surveyed(&job(bracket)).2).into();
-            let finest = &lists[2];
-            for survey in &lists {
-                assert_eq!(survey.rows.len(), finest.rows.len());
-                for (row, other) in survey.rows.iter().zip(&finest.rows) {
-                    assert_eq!(row.kind, other.kind);
-                    near(row.peak_a_mm2, other.peak_a_mm2, 0.03);
-                    near(row.section_a_mm2.unwrap(), other.section_a_mm2.unwrap(), 0.03);
-                    assert!((row.x_mm - other.x_mm).hypot(row.y_mm - other.y_mm) < 1.0, "{row:?} {other:?}");
-                }
-            }
-        }
-    }
-}
-#[cfg(test)]
-mod speed_probe {
-    use super::super::trial::*;
-    use super::*;
-    use crate::problem::*;
-    #[test]
-    fn plate() {
-        let rings = vec![
-            polygon(&[(0., 0.), (240., 0.), (240., 80.), (0., 80.)]),
-            polygon(&[(90., 28.), (150., 28.), (150., 32.), (90., 32.)]),
-            polygon(&[(90., 48.), (150., 48.), (150., 52.), (90., 52.)]),
-        ];
-        let mut electrodes = vec![];
-        for y in [15.0, 65.0] {
-            for i in 0..10 {
-                electrodes.push(electrode(ElectrodeKind::Cell, 0, disc(12.0 + 24.0 * i as f64, y, 4.0), 5e-5, Drive::Current(1.0)));
-            }
-        }
-        electrodes.push(electrode(ElectrodeKind::Terminal, 0, line(&[(240., 0.), (240., 80.)]), 0.0, Drive::Balance));
-        let job = problem(vec![sheet("p", rings, 0.2)], electrodes, 3e-4, 0.5);
-        let (s, ..) = surveyed(&job);
-        for _ in 0..5 {
-            let t = std::time::Instant::now();
-            let d = DensityField::new(&job, &s);
-            let t1 = t.elapsed();
-            let v = survey(&job, &s, &d);
-            eprintln!("{} triangles: density {:?} survey {:?} rows {}", s.mesh.triangles.len(), t1, t.elapsed() - t1, v.rows.len());
-        }
     }
 }

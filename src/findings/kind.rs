@@ -11,17 +11,20 @@
 //! 6. *hole edge*: the edge of a hole is in reach;
 //! 7. *other*. (*strip* is given where a sheet has no hotspot at all.)
 
+use super::HotspotKind;
 use super::gauge::Disc;
 use super::hotspot::Setting;
 use super::metal::{LayerMetal, Place, nearest_on_segment};
 use super::section::{Section, width_through};
-use super::{HotspotKind, metal};
 use crate::geometry::ring::Arc;
 use crate::geometry::{Point, Region};
 use crate::index::LayerId;
 use crate::mesh::NONE;
 use crate::physics::plan::Area;
 use crate::problem::{ElectrodeKind, Footprint, Problem};
+
+/// How far from the disc's centre a feature may lie, in gauge diameters.
+const REACH: f64 = 0.75;
 
 /// A neck's surroundings are wider by this factor.
 pub const WIDER: f64 = 1.15;
@@ -194,42 +197,62 @@ pub fn attaches(problem: &Problem, layer: LayerId, area: Area) -> bool {
     }
 }
 
+/// What the reach of a place meets.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct Touched {
+    /// The rim of this spot of a cell or join.
+    pub weld: Option<Area>,
+    /// The rim of this patch of a terminal.
+    pub patch: Option<Area>,
+    /// The edge of an area in contact with another sheet.
+    pub overlay: bool,
+}
+
+impl Touched {
+    /// Looks at the triangles within reach.
+    pub fn new(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, place: Place) -> Self {
+        let problem = setting.problem;
+        let mut spots: Vec<(Area, usize)> = Vec::new();
+        let mut masks: Vec<u64> = Vec::new();
+        let mut count = 0;
+        disc.flood(place, 2.0 * REACH * metal.gauge, |t, part| {
+            if part > 0.0 {
+                let cover = setting.solution.mesh.cover(metal.at(t).triangle as usize);
+                count += 1;
+                for area in cover.iter().map(|&a| setting.plan.areas[a as usize]).filter(|&a| attaches(problem, metal.layer, a)) {
+                    match spots.iter_mut().find(|x| x.0 == area) {
+                        Some(x) => x.1 += 1,
+                        None => spots.push((area, 1)),
+                    }
+                }
+                let mask = partners(setting, metal.layer, cover);
+                if !masks.contains(&mask) {
+                    masks.push(mask);
+                }
+            }
+        });
+        let is_terminal = |area: Area| matches!(area, Area::Spot(k, _) if problem.electrodes[k.index()].kind == ElectrodeKind::Terminal);
+        let order = |area: &Area| match *area {
+            Area::Spot(k, i) => (0, k.0, i),
+            Area::Join(j, i) => (1, j.0, i),
+            _ => (2, 0, 0),
+        };
+        let rims = || spots.iter().filter(|x| x.1 < count).map(|x| x.0);
+        Self {
+            weld: rims().filter(|&a| !is_terminal(a)).min_by_key(order),
+            patch: rims().filter(|&a| is_terminal(a)).min_by_key(order),
+            overlay: masks.len() > 1,
+        }
+    }
+}
+
 /// What the spot at a place is.
-pub fn character(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, place: Place, section: Option<&Section>) -> Character {
+pub fn character(setting: &Setting, metal: &LayerMetal, touched: &Touched, place: Place, section: Option<&Section>) -> Character {
     let (problem, outline) = (setting.problem, &setting.outlines[metal.layer.index()]);
-    let reach = 0.75 * metal.gauge;
+    let reach = REACH * metal.gauge;
     let p = place.point;
     let mut character = Character { kind: HotspotKind::Other, spot: None, ring: None, singular: false, coarse: false };
     let small = |length: f64| length < THIN * metal.thickness;
-
-    let mut touched: Vec<(Area, usize)> = Vec::new();
-    let mut masks: Vec<u64> = Vec::new();
-    let mut count = 0;
-    disc.flood(place, 2.0 * reach, |t, part| {
-        if part > 0.0 {
-            let cover = setting.solution.mesh.cover(metal.at(t).triangle as usize);
-            count += 1;
-            for area in cover.iter().map(|&a| setting.plan.areas[a as usize]).filter(|&a| attaches(problem, metal.layer, a)) {
-                match touched.iter_mut().find(|x| x.0 == area) {
-                    Some(x) => x.1 += 1,
-                    None => touched.push((area, 1)),
-                }
-            }
-            let mask = partners(setting, metal.layer, cover);
-            if !masks.contains(&mask) {
-                masks.push(mask);
-            }
-        }
-    });
-    let is_terminal = |area: Area| matches!(area, Area::Spot(k, _) if problem.electrodes[k.index()].kind == ElectrodeKind::Terminal);
-    let key = |area: Area| match area {
-        Area::Spot(k, i) => (0, k.0, i),
-        Area::Join(j, i) => (1, j.0, i),
-        _ => (2, 0, 0),
-    };
-    let rims = || touched.iter().filter(|x| x.1 < count).map(|x| x.0);
-    let weld = rims().filter(|&a| !is_terminal(a)).min_by_key(|&a| key(a));
-    let patch = rims().filter(|&a| is_terminal(a)).min_by_key(|&a| key(a));
     let line_end = outline.line_ends.iter().find(|e| e.0.distance(p) <= reach);
     let corner =
         outline.corners.iter().filter(|c| c.point.distance(p) <= reach).min_by(|a, b| a.point.distance(p).total_cmp(&b.point.distance(p)));
@@ -252,8 +275,8 @@ pub fn character(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, place: 
     character.singular = corner.is_some();
     character.coarse = fillet.is_some_and(|f| small(f.arc.radius));
 
-    if let Some(area) = weld.or(patch) {
-        character.kind = if weld.is_some() { HotspotKind::WeldRim } else { HotspotKind::TerminalEdge };
+    if let Some(area) = touched.weld.or(touched.patch) {
+        character.kind = if touched.weld.is_some() { HotspotKind::WeldRim } else { HotspotKind::TerminalEdge };
         character.spot = Some(area);
         character.coarse |= nugget(problem, area).is_some_and(small);
         return character;
@@ -264,7 +287,7 @@ pub fn character(setting: &Setting, metal: &LayerMetal, disc: &mut Disc, place: 
         return character;
     }
     character.coarse |= section.is_some_and(|s| small(s.width));
-    if masks.len() > 1 {
+    if touched.overlay {
         character.kind = HotspotKind::OverlayEnd;
         return character;
     }
@@ -342,24 +365,26 @@ fn widens(metal: &LayerMetal, section: &Section, sign: f64) -> bool {
     wide > 0.9 * width
 }
 
-/// Rim of a spot on a sheet: its length where there is metal on both sides, and the current that leaves through it, A.
-pub fn rim(setting: &Setting, metal: &LayerMetal, area: Area) -> Option<(f64, f64)> {
-    let areas = &setting.plan.areas;
-    let label = areas.iter().position(|&a| a == area)? as u32;
-    let within = |t: &metal::MetalTriangle| setting.solution.mesh.cover(t.triangle as usize).binary_search(&label).is_ok();
-    let (mut length, mut current) = (0.0, 0.0);
-    for triangle in metal.triangles.iter().filter(|t| within(t)) {
-        for k in 0..3 {
-            let other = triangle.neighbours[k];
-            if other == NONE || within(metal.at(other)) {
-                continue;
-            }
-            length += triangle.corners[(k + 1) % 3].distance(triangle.corners[(k + 2) % 3]);
-            let outside = metal.at(other);
-            if let Some(j) = (0..3).find(|&j| outside.neighbours[j] != NONE && std::ptr::eq(metal.at(outside.neighbours[j]), triangle)) {
-                current -= outside.flux[j];
+/// Rims on a sheet, by the areas of the plan: length where there is metal on both sides in mm, and current that leaves through it in A.
+pub fn rims(setting: &Setting, metal: &LayerMetal) -> Vec<(f64, f64)> {
+    let (mesh, areas) = (&setting.solution.mesh, &setting.plan.areas);
+    let mut rims = vec![(0.0, 0.0); areas.len()];
+    let attaching = |cover: &Vec<u32>| -> Vec<u32> {
+        cover.iter().copied().filter(|&a| attaches(setting.problem, metal.layer, areas[a as usize])).collect()
+    };
+    let by_cell: Vec<Vec<u32>> = mesh.covers.iter().map(attaching).collect();
+    let labels = |triangle: u32| &by_cell[mesh.cells[metal.at(triangle).triangle as usize] as usize];
+    for (t, triangle) in metal.triangles.iter().enumerate().filter(|(t, _)| !labels(*t as u32).is_empty()) {
+        for k in (0..3).filter(|&k| triangle.neighbours[k] != NONE) {
+            let outside = triangle.neighbours[k];
+            for &label in labels(t as u32).iter().filter(|l| !labels(outside).contains(l)) {
+                let rim = &mut rims[label as usize];
+                rim.0 += triangle.corners[(k + 1) % 3].distance(triangle.corners[(k + 2) % 3]);
+                if let Some(back) = (0..3).find(|&j| metal.at(outside).neighbours[j] == t as u32) {
+                    rim.1 -= metal.at(outside).flux[back];
+                }
             }
         }
     }
-    (length > 0.0).then_some((length, current))
+    rims
 }

@@ -6,6 +6,7 @@ use crate::index::LayerId;
 use crate::mesh::NONE;
 use crate::physics::Solution;
 use crate::problem::Problem;
+use rayon::prelude::*;
 
 /// How far from the edge a point that ran into it is put, mm: enough for the signs of cross products, nothing for the result.
 const INSET: f64 = 1e-6;
@@ -54,7 +55,7 @@ impl MetalTriangle {
     /// Length of the longest edge.
     pub fn longest(&self) -> f64 {
         let [a, b, c] = self.corners;
-        a.distance(b).max(b.distance(c)).max(c.distance(a))
+        [b - a, c - b, a - c].into_iter().fold(0.0, |m: f64, e| m.max(e.dot(e))).sqrt()
     }
     /// Potential at a point.
     pub fn potential_at(&self, p: Point) -> f64 {
@@ -112,33 +113,39 @@ impl LayerMetal {
         let (mesh, complex) = (&solution.mesh, &solution.complex);
         let bit = 1u64 << layer.0;
         let mut local = vec![NONE; mesh.triangles.len()];
-        let mut triangles = Vec::new();
+        let mut own: Vec<(u32, u32)> = Vec::new();
         for (t, place) in local.iter_mut().enumerate() {
-            let Some(e) = complex.element_of(t, bit) else { continue };
-            *place = triangles.len() as u32;
+            if let Some(e) = complex.element_of(t, bit) {
+                *place = own.len() as u32;
+                own.push((t as u32, e as u32));
+            }
+        }
+        let build = |&(triangle, element): &(u32, u32)| {
+            let (t, e) = (triangle as usize, element as usize);
             let leaf = complex.elements[e].leaf;
-            let corners = mesh.corners(t);
-            let area = mesh.area(t);
-            let held = leaf.held.is_some();
+            let (corners, area, held) = (mesh.corners(t), mesh.area(t), leaf.held.is_some());
             let share = sheet.sheet_conductance() / leaf.conductance;
             let potential = complex.unknowns[e].map(|u| solution.potential.values[u as usize]);
             let flux = if held { [0.0; 3] } else { solution.flux.flux[e].map(|f| f * share) };
             let middle = (corners[0] + corners[1] + corners[2]) * (1.0 / 3.0);
             let mut density = Point::default();
             if !held {
-                let to_sheet = 0.5 / sheet.thickness_mm;
                 for k in 0..3 {
                     let opposite = corners[(k + 2) % 3] - corners[(k + 1) % 3];
-                    let gradient = opposite.perpendicular() * (1.0 / (2.0 * area));
-                    density = density - gradient * (potential[k] * 0.5 / sheet.resistivity)
-                        + (middle - corners[k]) * (flux[k] / (2.0 * area) * to_sheet);
+                    let conducted = opposite.perpendicular() * (-potential[k] / sheet.resistivity);
+                    let balanced = (middle - corners[k]) * (flux[k] / sheet.thickness_mm);
+                    density = density + (conducted + balanced) * (0.25 / area);
                 }
             }
-            triangles.push(MetalTriangle {
-                triangle: t as u32,
-                element: e as u32,
+            let neighbour = |k: usize| match mesh.edges.across(t, k) {
+                NONE => NONE,
+                across => local[across as usize / 3],
+            };
+            MetalTriangle {
+                triangle,
+                element,
                 corners,
-                neighbours: [NONE; 3],
+                neighbours: [0, 1, 2].map(neighbour),
                 held,
                 open: [0, 1, 2].map(|k| matches!(complex.links[complex.link_of[e][k] as usize], Link::Open(_))),
                 flux,
@@ -146,16 +153,9 @@ impl LayerMetal {
                 density,
                 magnitude: density.norm(),
                 area,
-            });
-        }
-        for triangle in &mut triangles {
-            for k in 0..3 {
-                let across = mesh.edges.across(triangle.triangle as usize, k);
-                if across != NONE {
-                    triangle.neighbours[k] = local[across as usize / 3];
-                }
             }
-        }
+        };
+        let mut triangles: Vec<MetalTriangle> = own.par_iter().map(build).collect();
         for x in &complex.edge_exchanges {
             let first = complex.elements[x.element as usize].triangle as usize;
             let second = mesh.edges.across(first, x.edge as usize);

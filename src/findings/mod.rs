@@ -7,6 +7,9 @@ pub mod kind;
 pub mod metal;
 pub mod section;
 #[cfg(test)]
+mod shapes;
+pub mod summit;
+#[cfg(test)]
 mod trial;
 pub mod verdict;
 

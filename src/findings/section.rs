@@ -46,35 +46,42 @@ fn crossing_density(triangle: &MetalTriangle, origin: Point, along: Point) -> f6
     (0..3).map(|k| triangle.flux[k] * along.cross(triangle.corners[k] - origin)).sum::<f64>() / (2.0 * triangle.area)
 }
 
-/// The cut through a place at an angle (radians); `None` where it runs into a pole: a held patch or a line joint.
-fn cut(metal: &LayerMetal, place: Place, angle: f64) -> Option<Section> {
+/// The cut through a place at an angle (radians); `None` where it runs into a pole (a held patch or a line joint) or is longer than `longest`.
+fn cut(metal: &LayerMetal, place: Place, angle: f64, longest: f64) -> Option<Section> {
     let along = Point::new(angle.cos(), angle.sin());
     let mut defined = true;
     let mut current = 0.0;
-    let mut half = |way: Point, sign: f64| {
+    let mut half = |way: Point, sign: f64, longest: f64| {
         let walk = metal.walk(place, way, f64::INFINITY, |step| {
             let triangle = metal.at(step.triangle);
             current += sign * (step.to - step.from) * crossing_density(triangle, place.point, way);
-            defined &= !triangle.held && step.edge.is_none_or(|k| !triangle.open[k]);
+            defined &= step.to <= longest && !triangle.held && step.edge.is_none_or(|k| !triangle.open[k]);
             defined
         });
         defined.then_some(walk.length)
     };
-    let (forward, backward) = (half(along, 1.0)?, half(-along, -1.0)?);
+    let forward = half(along, 1.0, longest)?;
+    let backward = half(-along, -1.0, longest - forward)?;
     let ends = [place.point - along * backward, place.point + along * forward];
     let width = forward + backward;
     (width > 0.0).then_some(Section { ends, middle: place, along, width, current })
 }
 
 /// The cut with the highest mean density of all that pass one of the places (given in order of preference), equal ones by lower angle.
-pub fn best_cut(metal: &LayerMetal, places: &[Place]) -> Option<Section> {
+/// `most`: no cut carries more than this, A; `flow`: roughly where the current goes. They save work and change nothing.
+pub fn best_cut(metal: &LayerMetal, places: &[Place], most: f64, flow: Point) -> Option<Section> {
     let mean = |s: &Section| s.current.abs() / s.width;
     let step = std::f64::consts::PI / ANGLES as f64;
+    let across = flow.perpendicular();
+    let first_guess = (across.y.atan2(across.x).rem_euclid(std::f64::consts::PI) / step).round() * step;
+    let guessed = places.iter().filter_map(|&place| cut(metal, place, first_guess, f64::INFINITY)).map(|s| mean(&s)).fold(0.0, f64::max);
     let mut best: Option<(Section, Place, f64)> = None;
     for &place in places {
         for i in 0..ANGLES {
             let angle = i as f64 * step;
-            if let Some(section) = cut(metal, place, angle)
+            let to_beat = best.map_or(guessed * (1.0 - 1e-6), |(b, ..)| mean(&b).max(guessed * (1.0 - 1e-6)));
+            let longest = if to_beat > 0.0 { 1.01 * most / to_beat } else { f64::INFINITY };
+            if let Some(section) = cut(metal, place, angle, longest)
                 && best.is_none_or(|(b, ..)| mean(&section) > mean(&b) * (1.0 + 1e-6))
             {
                 best = Some((section, place, angle));
@@ -82,9 +89,10 @@ pub fn best_cut(metal: &LayerMetal, places: &[Place]) -> Option<Section> {
         }
     }
     let (mut section, place, mut angle) = best?;
+    let longest = f64::INFINITY;
     let mut turn = 0.5 * step;
     while turn > 2e-4 {
-        let tried = [angle - turn, angle + turn].map(|a| (cut(metal, place, a), a));
+        let tried = [angle - turn, angle + turn].map(|a| (cut(metal, place, a, longest), a));
         let better = tried.into_iter().filter_map(|(s, a)| Some((s?, a))).find(|(s, _)| mean(s) > mean(&section) * (1.0 + 1e-9));
         match better {
             Some(b) => (section, angle) = b,
@@ -233,4 +241,77 @@ fn crossing_of(metal: &LayerMetal, from: Point, along: Point, length: f64) -> Re
         }
     }
     Ok(current)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::gauge::DensityField;
+    use super::super::trial::*;
+    use super::*;
+    use crate::problem::*;
+
+    /// A strip with a nugget of 4 mm at its middle, held, that gives 3 of the 5 A that leave on the right.
+    fn fed_strip() -> DensityField {
+        let body = polygon(&[(0.0, 0.0), (40.0, 0.0), (40.0, 10.0), (0.0, 10.0)]);
+        let electrodes = vec![
+            electrode(ElectrodeKind::Terminal, 0, line(&[(0.0, 0.0), (0.0, 10.0)]), 0.0, Drive::Current(2.0)),
+            electrode(ElectrodeKind::Cell, 0, disc(20.0, 5.0, 4.0), 0.0, Drive::Current(3.0)),
+            electrode(ElectrodeKind::Terminal, 0, line(&[(40.0, 0.0), (40.0, 10.0)]), 0.0, Drive::Balance),
+        ];
+        surveyed(&problem(vec![sheet("a", vec![body], 0.2)], electrodes, 1e-2, 0.5)).1
+    }
+
+    #[test]
+    fn crossings_conserve_current_and_know_their_direction() {
+        let density = fed_strip();
+        let across = |a: (f64, f64), b: (f64, f64)| crossing_current(&density, Point::new(a.0, a.1), Point::new(b.0, b.1)).map(|c| c[0]);
+        // Upwards, the right-hand side is that of larger x.
+        for (a, b, expected) in [
+            ((10.0, -1.0), (10.0, 11.0), 2.0),
+            ((30.0, -1.0), (30.0, 11.0), 5.0),
+            ((30.0, 11.0), (30.0, -1.0), -5.0),
+            ((3.0, 0.0), (17.0, 10.0), 2.0),
+            ((40.0, 0.0), (40.0, 10.0), 5.0),
+            ((0.0, 0.0), (0.0, 10.0), 2.0),
+            ((5.0, 0.0), (35.0, 0.0), 0.0),
+            ((50.0, 0.0), (50.0, 10.0), 0.0),
+            ((1.0, 1.0), (1.0, 1.0), 0.0),
+        ] {
+            let found = across(a, b).unwrap();
+            assert!((found - expected).abs() < 1e-9, "{a:?} {b:?}: {found} {expected}");
+        }
+        let held = across((20.0, 0.0), (20.0, 10.0)).unwrap_err();
+        assert!(held.at.distance(Point::new(20.0, 5.0)) < 2.01);
+        // Around the nugget, from edge to edge on either side of it.
+        let around = [((15.0, 0.0), (15.0, 10.0)), ((25.0, 10.0), (25.0, 0.0))].map(|(a, b)| across(a, b).unwrap());
+        assert!((around[0] + around[1] + 3.0).abs() < 1e-9);
+    }
+
+    #[test]
+    fn the_best_cut_of_a_turned_strip_is_square_to_it() {
+        let turned = |x: f64, y: f64| (0.8 * x - 0.6 * y, 0.6 * x + 0.8 * y);
+        let body = polygon(&[turned(0.0, 0.0), turned(40.0, 0.0), turned(40.0, 8.0), turned(0.0, 8.0)]);
+        let ends = terminals(line(&[turned(0.0, 0.0), turned(0.0, 8.0)]), line(&[turned(40.0, 0.0), turned(40.0, 8.0)]), 0, 8.0);
+        let (_, density, _) = surveyed(&problem(vec![sheet("a", vec![body], 0.5)], ends, 1e-3, 0.5));
+        let metal = &density.layers[0];
+        let (x, y) = turned(13.0, 3.0);
+        let place = metal.locate(Point::new(x, y), 1e-6).unwrap();
+        let section = best_cut(metal, &[place], 8.0, Point::new(0.8, 0.6)).unwrap();
+        assert!((section.width - 8.0).abs() < 1e-5 && (section.current.abs() - 8.0).abs() < 1e-6, "{section:?}");
+        // One square of 0.5 mm copper: 34.482 microhm at 8 A.
+        let stretch = stretch(metal, &section).unwrap();
+        assert!((stretch.drop - 8.0 * 3.4482e-5).abs() < 1e-8 && (stretch.loss - 64.0 * 3.4482e-5).abs() < 1e-6, "{stretch:?}");
+        // Guesses only save work.
+        let other = best_cut(metal, &[place], 800.0, Point::new(0.0, 1.0)).unwrap();
+        assert!((other.width - section.width).abs() < 1e-6);
+    }
+
+    #[test]
+    fn a_box_cuts_a_triangle() {
+        let corners = [Point::new(0.0, 0.0), Point::new(4.0, 0.0), Point::new(0.0, 4.0)];
+        assert!((area_within(corners, Point::new(-1.0, -1.0), Point::new(9.0, 9.0)) - 8.0).abs() < 1e-12);
+        assert!((area_within(corners, Point::new(1.0, 1.0), Point::new(9.0, 9.0)) - 2.0).abs() < 1e-12);
+        assert!((area_within(corners, Point::new(0.0, 0.0), Point::new(2.0, 2.0)) - 4.0).abs() < 1e-12);
+        assert_eq!(area_within(corners, Point::new(5.0, 5.0), Point::new(9.0, 9.0)), 0.0);
+    }
 }

@@ -69,28 +69,6 @@ pub fn surveyed(problem: &Problem) -> (Solution, DensityField, Survey) {
     for _ in 0..8 {
         let density = DensityField::new(problem, &solution);
         let survey = hotspot::survey(problem, &solution, &density);
-        if std::env::var("SHOW").is_ok() {
-            for (h, p) in survey.rows.iter().zip(&survey.places) {
-                eprintln!(
-                    "{} {:?} {} ({:.3},{:.3}) peak {:.4} width {:.3?} I {:.4?} mean {:.4?} crowd {:.3?} drop {:.4?} loss {:.6?} {:?} {:?}",
-                    h.rank,
-                    h.kind,
-                    h.layer,
-                    h.x_mm,
-                    h.y_mm,
-                    h.peak_a_mm2,
-                    h.width_mm,
-                    h.section_a,
-                    h.section_a_mm2,
-                    h.crowding,
-                    h.drop_mv,
-                    h.loss_w,
-                    p.section_ends,
-                    h.remark
-                );
-            }
-            eprintln!("peaks {:?} unresolved {:?} triangles {}", survey.layer_peaks, survey.unresolved, solution.mesh.triangles.len());
-        }
         if survey.unresolved.is_empty() {
             return (solution, density, survey);
         }

@@ -1,0 +1,136 @@
+//! Where to look for hotspots: vertices from which |J| falls on every way to a higher one.
+
+use super::gauge::Disc;
+use super::hotspot::Setting;
+use super::kind::attaches;
+use super::metal::{LayerMetal, Place};
+use crate::mesh::{Mesh, NONE};
+use crate::physics::plan::Area;
+use rayon::prelude::*;
+
+/// A place is looked at when |J| falls by this factor on every way from it to a higher place.
+const PROMINENCE: f64 = 1.03;
+
+/// Most places of a sheet that are looked at closely.
+const MOST_STARTS: usize = 48;
+
+/// |J| at the vertices of a sheet: the mean over the triangles around them, held ones left out.
+struct Nodes {
+    value: Vec<f64>,
+    /// A triangle at the vertex: the one with the largest |J|.
+    at: Vec<u32>,
+}
+
+impl Nodes {
+    fn new(mesh: &Mesh, metal: &LayerMetal) -> Self {
+        let mut value = vec![0.0; mesh.points.len()];
+        let mut area = vec![0.0; mesh.points.len()];
+        let mut at = vec![NONE; mesh.points.len()];
+        for (t, triangle) in metal.triangles.iter().enumerate().filter(|(_, t)| !t.held) {
+            for v in mesh.triangles[triangle.triangle as usize].map(|v| v as usize) {
+                value[v] += triangle.area * triangle.magnitude;
+                area[v] += triangle.area;
+                if at[v] == NONE || metal.at(at[v]).magnitude < triangle.magnitude {
+                    at[v] = t as u32;
+                }
+            }
+        }
+        value.iter_mut().zip(&area).filter(|(_, a)| **a > 0.0).for_each(|(v, a)| *v /= a);
+        Self { value, at }
+    }
+
+    /// A vertex as a place: a hair inside the triangle, because a walk from the very tip of a re-entrant corner may leave the metal at once.
+    fn place(&self, mesh: &Mesh, metal: &LayerMetal, vertex: u32) -> Option<Place> {
+        let triangle = self.at[vertex as usize];
+        if triangle == NONE {
+            return None;
+        }
+        let tip = mesh.points[vertex as usize];
+        Some(Place { triangle, point: tip + (metal.at(triangle).middle() - tip) * 1e-3 })
+    }
+
+    /// Vertices of at least this value from which every way to a higher one leads down by [`PROMINENCE`].
+    fn summits(&self, mesh: &Mesh, metal: &LayerMetal, least: f64) -> Vec<u32> {
+        let value = |v: u32| self.value[v as usize];
+        let mut edges: Vec<(f64, [u32; 2])> = Vec::new();
+        for (t, triangle) in metal.triangles.iter().enumerate() {
+            for k in 0..3 {
+                // Each edge once: with the first of its triangles.
+                if triangle.neighbours[k] == NONE || triangle.neighbours[k] > t as u32 {
+                    let ends = mesh.edges.ends[mesh.edges.of_triangle[triangle.triangle as usize][k] as usize];
+                    let saddle = value(ends[0]).min(value(ends[1]));
+                    if saddle >= least {
+                        edges.push((saddle, ends));
+                    }
+                }
+            }
+        }
+        edges.sort_unstable_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
+        let mut parent: Vec<u32> = (0..self.value.len() as u32).collect();
+        let mut root = |mut v: u32, link: Option<u32>| {
+            while parent[v as usize] != v {
+                parent[v as usize] = parent[parent[v as usize] as usize];
+                v = parent[v as usize];
+            }
+            if let Some(link) = link {
+                parent[v as usize] = link;
+            }
+            v
+        };
+        let mut summits = Vec::new();
+        for (saddle, [a, b]) in edges {
+            let (a, b) = (root(a, None), root(b, None));
+            if a != b {
+                let (high, low) = if value(a) > value(b) || value(a) == value(b) && a < b { (a, b) } else { (b, a) };
+                root(low, Some(high));
+                if value(low) >= PROMINENCE * saddle {
+                    summits.push(low);
+                }
+            }
+        }
+        summits.extend((0..self.value.len() as u32).filter(|&v| value(v) >= least && root(v, None) == v));
+        summits
+    }
+}
+
+/// The places of a sheet to look at closely; `None` where |J| is nowhere above its mean (given) by more than [`PROMINENCE`]: a strip.
+/// Places below a part (`floor`) of the highest are left out.
+pub fn starts(setting: &Setting, metal: &LayerMetal, mean: f64, floor: f64) -> Option<Vec<Place>> {
+    let mesh = &setting.solution.mesh;
+    let nodes = Nodes::new(mesh, metal);
+    let highest = nodes.value.iter().fold(0.0, |m: f64, &v| m.max(v));
+    if highest <= PROMINENCE * mean {
+        return None;
+    }
+    // Measured by its gauge mean: the value at a vertex grows without end where triangles get smaller at a corner.
+    let top = (0..nodes.value.len()).rfind(|&v| nodes.value[v] == highest).and_then(|v| nodes.place(mesh, metal, v as u32));
+    let least = floor * top.map_or(0.0, |place| Disc::new(metal).mean(place, metal.gauge).mean).min(highest);
+    Some(thinned(setting, metal, &nodes, nodes.summits(mesh, metal, least)))
+}
+
+/// The places to look at closely: the highest gauge means, one per spot of an electrode or join, none within half a gauge of a higher one.
+fn thinned(setting: &Setting, metal: &LayerMetal, nodes: &Nodes, summits: Vec<u32>) -> Vec<Place> {
+    let mesh = &setting.solution.mesh;
+    let places: Vec<Place> = summits.into_iter().filter_map(|v| nodes.place(mesh, metal, v)).collect();
+    let mut ranked: Vec<(f64, Place)> =
+        places.par_iter().map_init(|| Disc::new(metal), |disc, &place| (disc.mean(place, metal.gauge).mean, place)).collect();
+    ranked.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.triangle.cmp(&b.1.triangle)));
+    let spots_at = |place: Place| {
+        let around = metal.at(place.triangle).neighbours.into_iter().chain([place.triangle]).filter(|&t| t != NONE);
+        let areas = around.flat_map(|t| mesh.cover(metal.at(t).triangle as usize)).map(|&a| setting.plan.areas[a as usize]);
+        areas.filter(|&a| attaches(setting.problem, metal.layer, a)).collect::<Vec<Area>>()
+    };
+    let mut taken: Vec<Area> = Vec::new();
+    let mut kept: Vec<Place> = Vec::new();
+    for (_, place) in ranked {
+        if kept.len() == MOST_STARTS {
+            break;
+        }
+        let spots = spots_at(place);
+        if spots.iter().all(|s| !taken.contains(s)) && kept.iter().all(|k| k.point.distance(place.point) >= 0.5 * metal.gauge) {
+            taken.extend(spots);
+            kept.push(place);
+        }
+    }
+    kept
+}
