@@ -296,3 +296,16 @@ fn bytes_are_the_same_each_time_and_the_same_as_before() {
     let known = std::fs::read_to_string(path).unwrap_or_default();
     assert_eq!(known, found, "look at the pictures (PINCHBAR_PICTURES=DIR), then renew with PINCHBAR_RENEW=1");
 }
+
+#[test]
+fn a_million_triangles_are_no_burden() {
+    for (cells, most_ms) in [(35, 400), (317, 2000)] {
+        let sheet = sheet("Fine", vec![necked(cells)]);
+        let start = std::time::Instant::now();
+        let bytes = heat_map(&sheet).unwrap();
+        let taken = start.elapsed().as_millis();
+        println!("{} triangles: {taken} ms, {} bytes", sheet.panels[0].triangles.len(), bytes.len());
+        // Ten times what an idle machine needs: a test of the order of growth, not of the machine.
+        assert!(taken < most_ms, "{taken} ms");
+    }
+}

@@ -8,8 +8,10 @@ use crate::geometry::{BoundingBox, Point};
 pub const PAGE_WIDTH: f64 = 1600.0;
 /// Blank rim of the page, px.
 pub const MARGIN: f64 = 48.0;
-/// The page grows no higher than this, px.
-const MOST_HEIGHT: f64 = 1500.0;
+/// The page grows no higher than this with the legend below, px.
+const HEIGHT_BELOW: f64 = 1200.0;
+/// And with the legend beside, px.
+const HEIGHT_BESIDE: f64 = 1300.0;
 /// Width of a legend that stands beside the panels, px.
 const LEGEND_WIDTH: f64 = 330.0;
 /// Room between legend and panels, px.
@@ -126,12 +128,12 @@ pub fn arrange(panels: &[Panel], headings: &[f64], top: f64, legend_height: impl
     let below = legend_height(full, false);
     let mut best: Option<(f64, Setting<'_>)> = None;
     for beside in [false, true] {
-        let height = (MOST_HEIGHT - top - MARGIN - if beside { 0.0 } else { below }).max(200.0);
+        let height = (if beside { HEIGHT_BESIDE } else { HEIGHT_BELOW - below } - top - MARGIN).max(200.0);
         for columns in 1..=panels.len() {
             let setting = Setting { panels, headings, columns, beside };
             let scale = setting.best_scale(height);
             // Only a clear gain is worth leaving the plain order: stacked, the legend below.
-            if best.as_ref().is_none_or(|(known, _)| scale > 1.06 * known) {
+            if best.as_ref().is_none_or(|(known, _)| scale > 1.03 * known) {
                 best = Some((scale, setting));
             }
         }
@@ -170,7 +172,7 @@ mod tests {
         let long = arranged(&[plate(0.0, 0.0, 300.0, 8.0)]);
         assert!(!long.beside && long.frames[0].area.width() > 1450.0 && long.height < 500.0, "{long:?}");
         let square = arranged(&[plate(0.0, 0.0, 40.0, 40.0)]);
-        assert!(square.beside && square.frames[0].area.height() > 1000.0 && square.height <= MOST_HEIGHT + MARGIN, "{square:?}");
+        assert!(square.beside && square.frames[0].area.height() > 1000.0 && square.height <= HEIGHT_BESIDE, "{square:?}");
     }
 
     #[test]

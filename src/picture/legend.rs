@@ -32,9 +32,14 @@ pub fn strong(size: f64, rgb: Rgb) -> Style {
 /// Title and subtitle from the page's upper left; returns where they end.
 pub fn title(drawing: &mut Drawing, lettering: &Lettering, sheet: &Sheet, margin: f64) -> f64 {
     let room = f64::from(drawing.width) - 2.0 * margin;
-    let mut base = margin + 22.0;
-    let words = lettering.fitted(&sheet.title, 31.0, Weight::Strong, room);
-    drawing.from_left(lettering, &words, [margin, base], strong(31.0, INK));
+    let mut base = margin - 14.0;
+    let lines = lettering.wrapped(&sheet.title, 31.0, Weight::Strong, room);
+    for (number, line) in lines.iter().take(2).enumerate() {
+        base += if number == 0 { 36.0 } else { 40.0 };
+        // A third line is one too many: the second says so.
+        let words = if number == 1 && lines.len() > 2 { lettering.fitted(&format!("{line} …"), 31.0, Weight::Strong, room) } else { line.clone() };
+        drawing.from_left(lettering, &words, [margin, base], strong(31.0, INK));
+    }
     for line in lettering.wrapped(&sheet.subtitle, 18.0, Weight::Regular, room).iter().take(2) {
         base += 32.0;
         drawing.from_left(lettering, line, [margin, base], plain(18.0, GREY));
@@ -105,7 +110,7 @@ impl Legend<'_> {
             let tip = [right + 16.0, 0.5 * (top + bottom)];
             drawing.marks.push(Mark::Fill(vec![vec![[right - 0.5, top], tip, [right - 0.5, bottom]]], Ink::full(ramp.at(1.0))));
             rim.push(tip);
-            let words = format!("to {}", three_digits(scale.peak));
+            let words = format!("peak {}", three_digits(scale.peak));
             drawing.from_left(self.lettering, &words, [right + 21.0, tip[1] + 5.0], plain(14.0, INK));
         }
         rim.extend([[right, bottom], [left, bottom]]);
