@@ -15,8 +15,8 @@ use super::view::View;
 use super::{Panel, Sheet};
 
 /// Lines over light and over dark metal.
-const OVER_LIGHT: Ink = Ink::thin([44, 42, 58], 0.55);
-const OVER_DARK: Ink = Ink::thin([255, 226, 196], 0.55);
+const OVER_LIGHT: Ink = Ink::thin([44, 42, 58], 0.62);
+const OVER_DARK: Ink = Ink::thin([255, 226, 196], 0.62);
 
 /// A drawing and the panels it paints.
 pub struct Scene<'a> {
@@ -65,7 +65,7 @@ pub fn compose<'a>(sheet: &'a Sheet, lettering: &Lettering) -> Scene<'a> {
     let words = std::mem::take(&mut drawing.marks);
     for ((number, view), lines) in views.iter().enumerate().zip(&lines) {
         drawing.marks.push(Mark::Field(number));
-        over_metal(&mut drawing, view, &ramp, lines.iter().map(|c| c.line.clone()), 1.1, [OVER_LIGHT, OVER_DARK]);
+        over_metal(&mut drawing, view, &ramp, lines.iter().map(|c| c.line.clone()), 1.0, [OVER_LIGHT, OVER_DARK]);
         strokes(&mut drawing, view, &ramp);
         shapes(&mut drawing, view);
     }

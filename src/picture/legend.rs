@@ -117,11 +117,16 @@ impl Legend<'_> {
         drawing.marks.push(Mark::Loop(rim, 1.2, Ink::full(INK)));
         let mut ticks = Vec::new();
         let count = (scale.top / scale.tick + 1e-6).floor().min(40.0) as usize;
-        for number in 0..=count {
-            let value = number as f64 * scale.tick;
-            let x = left + width * value / scale.top;
-            ticks.push(vec![[x, bottom], [x, bottom + 6.0]]);
-            drawing.centred(self.lettering, &with_step(value, scale.tick), [x, bottom + 18.0], 0.0, plain(15.0, INK));
+        let words: Vec<String> = (0..=count).map(|number| with_step(number as f64 * scale.tick, scale.tick)).collect();
+        let widest = words.iter().fold(0.0f64, |most, text| most.max(self.lettering.width(text, 15.0, Weight::Regular)));
+        let every = if widest + 14.0 > width * scale.tick / scale.top { 2 } else { 1 };
+        for (number, text) in words.iter().enumerate() {
+            let x = left + width * number as f64 * scale.tick / scale.top;
+            ticks.push(vec![[x, bottom], [x, bottom + if number % every == 0 { 6.0 } else { 4.0 }]]);
+            if number % every != 0 {
+                continue;
+            }
+            drawing.centred(self.lettering, text, [x, bottom + 18.0], 0.0, plain(15.0, INK));
         }
         drawing.marks.push(Mark::Lines(ticks, 1.2, Ink::full(INK)));
         bottom + 26.0

@@ -14,6 +14,8 @@ use super::view::View;
 const PAPER: Rgb = [255, 248, 238];
 /// Electrodes and joints.
 pub const SEA: Rgb = [0, 74, 104];
+/// Words of electrodes and joints: darker, for they are thin.
+const DEEP: Rgb = [0, 44, 64];
 const WHITE: Ink = Ink::thin([255, 255, 255], 0.85);
 /// Radius of a balloon, px.
 const BALLOON: f64 = 14.5;
@@ -196,7 +198,7 @@ impl Notes<'_> {
                 continue;
             }
             let (marks, labels, places) = (drawing.marks.len(), drawing.labels.len(), drawing.occupied.count());
-            let written = labelled.iter().filter(|(text, area)| self.beside(drawing, text, area, SEA)).count();
+            let written = labelled.iter().filter(|(text, area)| self.beside(drawing, text, area)).count();
             if 4 * written < 3 * labelled.len() {
                 drawing.marks.truncate(marks);
                 drawing.labels.truncate(labels);
@@ -206,14 +208,14 @@ impl Notes<'_> {
     }
 
     /// Words right, left, above or below a box.
-    fn beside(&self, drawing: &mut Drawing, text: &str, area: &Area, rgb: Rgb) -> bool {
+    fn beside(&self, drawing: &mut Drawing, text: &str, area: &Area) -> bool {
         let half = 0.5 * self.lettering.width(text, SIZE, Weight::Regular) + 2.0;
         let ([x, y], gap) = (area.centre(), 4.0);
         let high = 0.5 * (ABOVE + BELOW) * SIZE + 2.0;
         let right = area.right + gap + half;
         let left = area.left - gap - half;
         let places = [[right, y], [left, y], [x, area.top - high], [x, area.bottom + high], [right, y - high], [right, y + high], [left, y - high], [left, y + high]];
-        places.into_iter().any(|p| drawing.centred(self.lettering, text, p, 0.0, self.style(p, SIZE, Weight::Regular, rgb)))
+        places.into_iter().any(|p| drawing.centred(self.lettering, text, p, 0.0, self.style(p, SIZE, Weight::Regular, DEEP)))
     }
 
     /// Names of electrodes, at or near where they belong.
@@ -233,8 +235,8 @@ impl Notes<'_> {
                 let whole = |p: Spot| [0, 5].contains(&self.metal_below(&Area::around(p, 2.0 * half, size)));
                 let style = |p: Spot| {
                     let on_patch = patches.iter().any(|patch| patch.overlaps(&Area::around(p, 2.0, 2.0)));
-                    let style = self.style(p, size, Weight::Strong, SEA);
-                    if on_patch { Style { ink: Ink::full(SEA), halo: Some((3.5, Ink::thin([255; 3], 0.9))), ..style } } else { style }
+                    let style = self.style(p, size, Weight::Strong, DEEP);
+                    if on_patch { Style { ink: Ink::full(DEEP), halo: Some((3.5, Ink::thin([255; 3], 0.9))), ..style } } else { style }
                 };
                 let _ = places.iter().any(|&p| whole(p) && drawing.centred(self.lettering, name, p, 0.0, style(p)));
             }
