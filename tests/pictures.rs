@@ -141,9 +141,8 @@ fn holed(side: f64, radius: f64, cells: usize) -> Panel {
 /// A plate fed by spots: sources in a plane, with their total drawn off at the right.
 fn spotted(width: f64, height: f64, rows: usize, columns: usize, cells: usize) -> Panel {
     let pitch = (width / (columns as f64 + 0.5), height / rows as f64);
-    let places: Vec<Point> = (0..rows * columns)
-        .map(|k| Point::new(pitch.0 * ((k % columns) as f64 + 0.5), pitch.1 * ((k / columns) as f64 + 0.5)))
-        .collect();
+    let places: Vec<Point> =
+        (0..rows * columns).map(|k| Point::new(pitch.0 * ((k % columns) as f64 + 0.5), pitch.1 * ((k / columns) as f64 + 0.5))).collect();
     let radius = 0.11 * pitch.0.min(pitch.1);
     let sources = places.clone();
     let field = move |p: Point| {
@@ -236,7 +235,10 @@ fn words_never_overlap_or_leave_the_page() {
         assert!((300..=2000).contains(&placed.height), "{name}: {}", placed.height);
         for (number, one) in placed.boxes.iter().enumerate() {
             let a = one.area;
-            assert!(a.left >= 0.0 && a.top >= 0.0 && a.right <= f64::from(placed.width) && a.bottom <= f64::from(placed.height), "{name}: {one:?}");
+            assert!(
+                a.left >= 0.0 && a.top >= 0.0 && a.right <= f64::from(placed.width) && a.bottom <= f64::from(placed.height),
+                "{name}: {one:?}"
+            );
             for other in &placed.boxes[number + 1..] {
                 assert!(!a.overlaps(&other.area), "{name}: {one:?} over {other:?}");
             }

@@ -98,7 +98,8 @@ impl Setting<'_> {
             let top = bottom + above;
             let mut left = 0.0;
             for (column, &panel) in row.iter().enumerate() {
-                let (x, width, height) = (left + side(panel) + shift(panel), extents[panel].width() * scale, extents[panel].height() * scale);
+                let (x, width, height) =
+                    (left + side(panel) + shift(panel), extents[panel].width() * scale, extents[panel].height() * scale);
                 let area = Area { left: x, top, right: x + width, bottom: top + height };
                 frames[panel] = Some(Frame { area, scale, upper_left: Point::new(extents[panel].min.x, extents[panel].max.y) });
                 left += columns[column] + COLUMN_GAP;

@@ -82,10 +82,10 @@ fn heading(drawing: &mut Drawing, lettering: &Lettering, view: &View<'_>) {
     let at = [view.frame.area.left, view.frame.area.top - 13.0];
     let room = heading_width(view.panel, lettering);
     let name = lettering.fitted(&view.panel.name, 17.0, Weight::Strong, room);
-    drawing.from_left(lettering, &name, at, legend::strong(17.0, INK));
+    drawing.left_aligned(lettering, &name, at, legend::strong(17.0, INK));
     let used = if name.is_empty() { 0.0 } else { lettering.width(&name, 17.0, Weight::Strong) + 14.0 };
     let details = lettering.fitted(&view.panel.details, 16.0, Weight::Regular, room - used);
-    drawing.from_left(lettering, &details, [at[0] + used, at[1]], legend::plain(16.0, GREY));
+    drawing.left_aligned(lettering, &details, [at[0] + used, at[1]], legend::plain(16.0, GREY));
 }
 
 /// Draws lines so that they show on what is below.

@@ -114,7 +114,10 @@ mod tests {
         let at = |i: usize, j: usize| (j * (n + 1) + i) as u32;
         let points = (0..=n).flat_map(|j| (0..=n).map(move |i| [i as f64, j as f64])).collect();
         let cells = (0..n).flat_map(|j| (0..n).map(move |i| (i, j)));
-        (points, cells.flat_map(|(i, j)| [[at(i, j), at(i + 1, j), at(i + 1, j + 1)], [at(i, j), at(i + 1, j + 1), at(i, j + 1)]]).collect())
+        (
+            points,
+            cells.flat_map(|(i, j)| [[at(i, j), at(i + 1, j), at(i + 1, j + 1)], [at(i, j), at(i + 1, j + 1), at(i, j + 1)]]).collect(),
+        )
     }
 
     #[test]

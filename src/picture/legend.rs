@@ -37,12 +37,16 @@ pub fn title(drawing: &mut Drawing, lettering: &Lettering, sheet: &Sheet, margin
     for (number, line) in lines.iter().take(2).enumerate() {
         base += if number == 0 { 36.0 } else { 40.0 };
         // A third line is one too many: the second says so.
-        let words = if number == 1 && lines.len() > 2 { lettering.fitted(&format!("{line} …"), 31.0, Weight::Strong, room) } else { line.clone() };
-        drawing.from_left(lettering, &words, [margin, base], strong(31.0, INK));
+        let words = if number == 1 && lines.len() > 2 {
+            lettering.fitted(&format!("{line} …"), 31.0, Weight::Strong, room)
+        } else {
+            line.clone()
+        };
+        drawing.left_aligned(lettering, &words, [margin, base], strong(31.0, INK));
     }
     for line in lettering.wrapped(&sheet.subtitle, 18.0, Weight::Regular, room).iter().take(2) {
         base += 32.0;
-        drawing.from_left(lettering, line, [margin, base], plain(18.0, GREY));
+        drawing.left_aligned(lettering, line, [margin, base], plain(18.0, GREY));
     }
     base + 12.0
 }
@@ -63,7 +67,8 @@ impl Legend<'_> {
     /// Writes the legend from its upper left corner; returns where it ends. `beside` stacks its parts, else they stand in a row.
     pub fn write(&self, drawing: &mut Drawing, at: Spot, width: f64, beside: bool) -> f64 {
         let [left, top] = at;
-        let rule = |drawing: &mut Drawing, y: f64| drawing.marks.push(Mark::Lines(vec![vec![[left, y], [left + width, y]]], 1.0, Ink::full(RULE)));
+        let rule =
+            |drawing: &mut Drawing, y: f64| drawing.marks.push(Mark::Lines(vec![vec![[left, y], [left + width, y]]], 1.0, Ink::full(RULE)));
         rule(drawing, top);
         let mut end;
         if beside {
@@ -86,7 +91,7 @@ impl Legend<'_> {
             end += 18.0;
             for line in self.lettering.wrapped(&self.sheet.caution, 16.0, Weight::Regular, width).iter().take(8) {
                 end += 25.0;
-                drawing.from_left(self.lettering, line, [left, end], plain(16.0, CAUTION));
+                drawing.left_aligned(self.lettering, line, [left, end], plain(16.0, CAUTION));
             }
         }
         end
@@ -95,7 +100,7 @@ impl Legend<'_> {
     fn colour_bar(&self, drawing: &mut Drawing, at: Spot, width: f64) -> f64 {
         let ([left, base], scale) = (at, self.scale);
         let label = self.lettering.fitted(&self.sheet.scale_label, 16.0, Weight::Strong, width + 60.0);
-        drawing.from_left(self.lettering, &label, at, strong(16.0, INK));
+        drawing.left_aligned(self.lettering, &label, at, strong(16.0, INK));
         let (top, bottom, right) = (base + 12.0, base + 12.0 + BAR, left + width);
         let ramp = Ramp::new();
         let slices = width.floor();
@@ -111,7 +116,7 @@ impl Legend<'_> {
             drawing.marks.push(Mark::Fill(vec![vec![[right - 0.5, top], tip, [right - 0.5, bottom]]], Ink::full(ramp.at(1.0))));
             rim.push(tip);
             let words = format!("peak {}", three_digits(scale.peak));
-            drawing.from_left(self.lettering, &words, [right + 21.0, tip[1] + 5.0], plain(14.0, INK));
+            drawing.left_aligned(self.lettering, &words, [right + 21.0, tip[1] + 5.0], plain(14.0, INK));
         }
         rim.extend([[right, bottom], [left, bottom]]);
         drawing.marks.push(Mark::Loop(rim, 1.2, Ink::full(INK)));
@@ -142,7 +147,7 @@ impl Legend<'_> {
         drawing.marks.push(Mark::Lines(vec![vec![[left, y], [right, y]]], 2.4, Ink::full(INK)));
         let ends = [(left, 6.0), (middle, 4.0), (right, 6.0)].map(|(x, h)| vec![[x, y - h], [x, y + h]]);
         drawing.marks.push(Mark::Lines(ends.to_vec(), 1.6, Ink::full(INK)));
-        drawing.from_left(self.lettering, &format!("{} mm", with_step(length, length)), [right + 12.0, y + 5.5], plain(16.0, INK));
+        drawing.left_aligned(self.lettering, &format!("{} mm", with_step(length, length)), [right + 12.0, y + 5.5], plain(16.0, INK));
         let mut lines = vec!["seen from above, drawing y up".to_string()];
         let with_lines = self.sheet.panels.iter().any(|p| !p.potential_mv.is_empty());
         if let Some(step) = self.scale.potential_step.filter(|_| with_lines) {
@@ -157,7 +162,7 @@ impl Legend<'_> {
         let mut base = y + 12.0;
         for line in lines.iter().flat_map(|l| self.lettering.wrapped(l, 15.0, Weight::Regular, width)) {
             base += 22.0;
-            drawing.from_left(self.lettering, &line, [left, base], plain(15.0, GREY));
+            drawing.left_aligned(self.lettering, &line, [left, base], plain(15.0, GREY));
         }
         base + 4.0
     }
@@ -167,7 +172,7 @@ impl Legend<'_> {
         base -= 24.0;
         for line in self.sheet.footer.iter().flat_map(|l| self.lettering.wrapped(l, 16.0, Weight::Regular, width)).take(12) {
             base += 24.0;
-            drawing.from_left(self.lettering, &line, [left, base], plain(16.0, INK));
+            drawing.left_aligned(self.lettering, &line, [left, base], plain(16.0, INK));
         }
         base + 4.0
     }

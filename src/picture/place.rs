@@ -19,7 +19,12 @@ pub struct Area {
 impl Area {
     /// The box of this width and height around a centre.
     pub fn around(centre: Spot, width: f64, height: f64) -> Self {
-        Self { left: centre[0] - 0.5 * width, top: centre[1] - 0.5 * height, right: centre[0] + 0.5 * width, bottom: centre[1] + 0.5 * height }
+        Self {
+            left: centre[0] - 0.5 * width,
+            top: centre[1] - 0.5 * height,
+            right: centre[0] + 0.5 * width,
+            bottom: centre[1] + 0.5 * height,
+        }
     }
 
     /// The smallest box that holds two points.

@@ -106,7 +106,7 @@ pub fn three_digits(value: f64) -> String {
     if value.is_nan() || value <= 0.0 {
         return "0".to_string();
     }
-    if value >= 1e6 || value < 1e-4 {
+    if !(1e-4..1e6).contains(&value) {
         return format!("{value:.2e}");
     }
     let decimals = (2 - value.log10().floor() as i32).max(0) as usize;
