@@ -298,3 +298,20 @@ fn bytes_are_the_same_each_time_and_the_same_as_before() {
     let known = std::fs::read_to_string(path).unwrap_or_default();
     assert_eq!(known, found, "look at the pictures (PINCHBAR_PICTURES=DIR), then renew with PINCHBAR_RENEW=1");
 }
+
+#[test]
+fn a_million_triangles_are_no_burden() {
+    for (cells, most_ms) in [(35, 400), (317, 2000)] {
+        let sheet = sheet("Fine", vec![necked(cells)]);
+        let times = (0..9).map(|_| {
+            let start = std::time::Instant::now();
+            heat_map(&sheet).unwrap();
+            start.elapsed().as_millis()
+        });
+        // The quickest of some runs: others may share the machine.
+        let taken = times.min().unwrap();
+        println!("{} triangles: {taken} ms", sheet.panels[0].triangles.len());
+        // Ten times what an idle machine needs: a test of the order of growth, not of the machine.
+        assert!(taken < most_ms, "{taken} ms");
+    }
+}

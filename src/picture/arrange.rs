@@ -8,8 +8,10 @@ use crate::geometry::{BoundingBox, Point};
 pub const PAGE_WIDTH: f64 = 1600.0;
 /// Blank rim of the page, px.
 pub const MARGIN: f64 = 48.0;
-/// The page grows no higher than this, px.
-const MOST_HEIGHT: f64 = 1500.0;
+/// The page grows no higher than this with the legend below, px.
+const HEIGHT_BELOW: f64 = 1200.0;
+/// And with the legend beside, px.
+const HEIGHT_BESIDE: f64 = 1300.0;
 /// Width of a legend that stands beside the panels, px.
 const LEGEND_WIDTH: f64 = 330.0;
 /// Room between legend and panels, px.
@@ -60,6 +62,7 @@ pub fn extent(panel: &Panel) -> BoundingBox {
 /// One way to set the panels.
 struct Setting<'a> {
     panels: &'a [Panel],
+    extents: &'a [BoundingBox],
     headings: &'a [f64],
     columns: usize,
     beside: bool,
@@ -72,7 +75,7 @@ impl Setting<'_> {
 
     /// Frames from (0, 0) on at this scale, and the width and height they need.
     fn frames(&self, scale: f64) -> (Vec<Frame>, f64, f64) {
-        let extents: Vec<BoundingBox> = self.panels.iter().map(extent).collect();
+        let extents = self.extents;
         let union = extents.iter().fold(BoundingBox::EMPTY, |all, &one| all.union(one));
         let widest = extents.iter().fold(0.0f64, |most, e| most.max(e.width()));
         let aligned = self.columns == 1 && union.width() <= 1.3 * widest;
@@ -109,7 +112,7 @@ impl Setting<'_> {
 
     /// The largest scale at which all fits, by halving.
     fn best_scale(&self, height: f64) -> f64 {
-        let widest = self.panels.iter().map(|p| extent(p).width()).fold(0.0, f64::max);
+        let widest = self.extents.iter().map(BoundingBox::width).fold(0.0, f64::max);
         let (mut low, mut high) = (0.0, PAGE_WIDTH / widest);
         for _ in 0..40 {
             let middle = 0.5 * (low + high);
@@ -123,21 +126,23 @@ impl Setting<'_> {
 /// Divides the page. `headings` are the widths of the panels' headings, `top` is where the title block ends, and the legend is as high as
 /// `legend_height(width, beside)` says. There must be a panel, and every panel must have an extent.
 pub fn arrange(panels: &[Panel], headings: &[f64], top: f64, legend_height: impl Fn(f64, bool) -> f64) -> Page {
+    let extents: Vec<BoundingBox> = panels.iter().map(extent).collect();
+    let extents = &extents[..];
     let full = PAGE_WIDTH - 2.0 * MARGIN;
     let below = legend_height(full, false);
     let mut best: Option<(f64, Setting<'_>)> = None;
     for beside in [false, true] {
-        let height = (MOST_HEIGHT - top - MARGIN - if beside { 0.0 } else { below }).max(200.0);
+        let height = (if beside { HEIGHT_BESIDE } else { HEIGHT_BELOW - below } - top - MARGIN).max(200.0);
         for columns in 1..=panels.len() {
-            let setting = Setting { panels, headings, columns, beside };
+            let setting = Setting { panels, extents, headings, columns, beside };
             let scale = setting.best_scale(height);
             // Only a clear gain is worth leaving the plain order: stacked, the legend below.
-            if best.as_ref().is_none_or(|(known, _)| scale > 1.06 * known) {
+            if best.as_ref().is_none_or(|(known, _)| scale > 1.03 * known) {
                 best = Some((scale, setting));
             }
         }
     }
-    let (scale, setting) = best.unwrap_or((1.0, Setting { panels, headings, columns: 1, beside: false }));
+    let (scale, setting) = best.unwrap_or((1.0, Setting { panels, extents, headings, columns: 1, beside: false }));
     let (mut frames, width, height) = setting.frames(scale);
     let left = MARGIN + 0.5 * (setting.room() - width).max(0.0);
     for frame in &mut frames {
@@ -171,7 +176,7 @@ mod tests {
         let long = arranged(&[plate(0.0, 0.0, 300.0, 8.0)]);
         assert!(!long.beside && long.frames[0].area.width() > 1450.0 && long.height < 500.0, "{long:?}");
         let square = arranged(&[plate(0.0, 0.0, 40.0, 40.0)]);
-        assert!(square.beside && square.frames[0].area.height() > 1000.0 && square.height <= MOST_HEIGHT + MARGIN, "{square:?}");
+        assert!(square.beside && square.frames[0].area.height() > 1000.0 && square.height <= HEIGHT_BESIDE, "{square:?}");
     }
 
     #[test]

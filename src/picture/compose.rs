@@ -15,8 +15,8 @@ use super::view::View;
 use super::{Panel, Sheet};
 
 /// Lines over light and over dark metal.
-const OVER_LIGHT: Ink = Ink::thin([44, 42, 58], 0.55);
-const OVER_DARK: Ink = Ink::thin([255, 226, 196], 0.55);
+const OVER_LIGHT: Ink = Ink::thin([44, 42, 58], 0.62);
+const OVER_DARK: Ink = Ink::thin([255, 226, 196], 0.62);
 
 /// A drawing and the panels it paints.
 pub struct Scene<'a> {
@@ -45,13 +45,9 @@ pub fn compose<'a>(sheet: &'a Sheet, lettering: &Lettering) -> Scene<'a> {
     legend::title(&mut drawing, lettering, sheet, MARGIN);
     let per_mm = page.frames.first().map_or(1.0, |frame| frame.scale);
     Legend { sheet, scale: &scale, per_mm, lettering }.write(&mut drawing, page.legend.0, page.legend.1, page.beside);
-    let mut lines: Vec<Vec<Contour>> = Vec::new();
-    for (number, view) in views.iter().enumerate() {
+    let lines: Vec<Vec<Contour>> = views.iter().map(|view| equipotentials(view, &scale)).collect();
+    for view in &views {
         heading(&mut drawing, lettering, view);
-        drawing.marks.push(Mark::Field(number));
-        lines.push(equipotentials(&mut drawing, view, &scale, &ramp));
-        strokes(&mut drawing, view, &ramp);
-        shapes(&mut drawing, view);
     }
     let notes = Notes { views: &views, lettering, ramp: &ramp };
     notes.guard(&mut drawing);
@@ -65,11 +61,20 @@ pub fn compose<'a>(sheet: &'a Sheet, lettering: &Lettering) -> Scene<'a> {
             notes.potentials(&mut drawing, view, lines, step);
         }
     }
+    // What lies below the words is drawn first but chosen last: strokes keep off words.
+    let words = std::mem::take(&mut drawing.marks);
+    for ((number, view), lines) in views.iter().enumerate().zip(&lines) {
+        drawing.marks.push(Mark::Field(number));
+        over_metal(&mut drawing, view, &ramp, lines.iter().map(|c| c.line.clone()), 1.0, [OVER_LIGHT, OVER_DARK]);
+        strokes(&mut drawing, view, &ramp);
+        shapes(&mut drawing, view);
+    }
+    drawing.marks.extend(words);
     Scene { views, drawing }
 }
 
 fn heading_width(panel: &Panel, lettering: &Lettering) -> f64 {
-    (lettering.width(&panel.name, 17.0, Weight::Strong) + 14.0 + lettering.width(&panel.details, 16.0, Weight::Regular)).min(560.0)
+    (lettering.width(&panel.name, 17.0, Weight::Strong) + 14.0 + lettering.width(&panel.details, 16.0, Weight::Regular) + 1.0).min(560.0)
 }
 
 /// Name and details above the panel's left end.
@@ -77,10 +82,10 @@ fn heading(drawing: &mut Drawing, lettering: &Lettering, view: &View<'_>) {
     let at = [view.frame.area.left, view.frame.area.top - 13.0];
     let room = heading_width(view.panel, lettering);
     let name = lettering.fitted(&view.panel.name, 17.0, Weight::Strong, room);
-    drawing.from_left(lettering, &name, at, legend::strong(17.0, INK));
+    drawing.left_aligned(lettering, &name, at, legend::strong(17.0, INK));
     let used = if name.is_empty() { 0.0 } else { lettering.width(&name, 17.0, Weight::Strong) + 14.0 };
     let details = lettering.fitted(&view.panel.details, 16.0, Weight::Regular, room - used);
-    drawing.from_left(lettering, &details, [at[0] + used, at[1]], legend::plain(16.0, GREY));
+    drawing.left_aligned(lettering, &details, [at[0] + used, at[1]], legend::plain(16.0, GREY));
 }
 
 /// Draws lines so that they show on what is below.
@@ -109,20 +114,19 @@ fn over_metal(drawing: &mut Drawing, view: &View<'_>, ramp: &Ramp, lines: impl I
     }
 }
 
-fn equipotentials(drawing: &mut Drawing, view: &View<'_>, scale: &Scale, ramp: &Ramp) -> Vec<Contour> {
+fn equipotentials(view: &View<'_>, scale: &Scale) -> Vec<Contour> {
     let Some(step) = scale.potential_step.filter(|_| !view.panel.potential_mv.is_empty()) else { return Vec::new() };
     let mut lines = contours(&view.corners, &view.panel.triangles, &view.panel.potential_mv, step, scale.potential_levels);
     for contour in &mut lines {
         contour.line = thinned(&contour.line, 1.5);
     }
-    over_metal(drawing, view, ramp, lines.iter().map(|c| c.line.clone()), 1.1, [OVER_LIGHT, OVER_DARK]);
     lines
 }
 
 fn strokes(drawing: &mut Drawing, view: &View<'_>, ramp: &Ramp) {
-    let strokes = flow::strokes(view);
+    let strokes = flow::strokes(view, &drawing.occupied);
     let heads: Vec<Vec<Spot>> = strokes.iter().map(|s| flow::head(s, 6.5)).collect();
-    let inks = [Ink::thin([60, 48, 44], 0.38), Ink::thin([255, 232, 206], 0.46)];
+    let inks = [Ink::thin([60, 48, 44], 0.36), Ink::thin([255, 232, 206], 0.42)];
     over_metal(drawing, view, ramp, strokes.into_iter().chain(heads), 1.5, inks);
 }
 

@@ -57,7 +57,7 @@ pub struct Drawing {
 impl Drawing {
     /// An empty page.
     pub fn new(width: u32, height: u32) -> Self {
-        let page = Area { left: 0.0, top: 0.0, right: f64::from(width), bottom: f64::from(height) }.widened(-6.0);
+        let page = Area { left: 0.0, top: 0.0, right: f64::from(width), bottom: f64::from(height) }.widened(-14.0);
         Self { width, height, marks: Vec::new(), labels: Vec::new(), occupied: Occupied::new(page) }
     }
 
@@ -86,7 +86,7 @@ impl Drawing {
     }
 
     /// Writes a line of words from a left end, its base line at `at`, if the place is free.
-    pub fn from_left(&mut self, lettering: &Lettering, text: &str, at: Spot, style: Style) -> bool {
+    pub fn left_aligned(&mut self, lettering: &Lettering, text: &str, at: Spot, style: Style) -> bool {
         let width = lettering.width(text, style.size, style.weight);
         self.centred(lettering, text, [at[0] + 0.5 * width, at[1] - 0.5 * (ABOVE - BELOW) * style.size], 0.0, style)
     }
@@ -127,7 +127,7 @@ mod tests {
         let style = Style { size: 14.0, weight: Weight::Regular, ink: Ink::full([0; 3]), halo: None };
         assert!(drawing.centred(&lettering, "54 mV", [100.0, 50.0], 0.3, style));
         assert!(!drawing.centred(&lettering, "60 mV", [110.0, 50.0], 0.0, style));
-        assert!(!drawing.centred(&lettering, "60 mV", [299.0, 50.0], 0.0, style), "off the page");
+        assert!(!drawing.centred(&lettering, "60 mV", [290.0, 50.0], 0.0, style), "off the page");
         assert!(!drawing.centred(&lettering, "", [200.0, 50.0], 0.0, style));
         assert_eq!((drawing.labels.len(), drawing.marks.len()), (1, 1));
     }

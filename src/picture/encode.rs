@@ -6,6 +6,9 @@ use image::{ExtendedColorType, ImageEncoder};
 
 /// The PNG of rows of red, green, blue; quick rather than small.
 pub fn png(width: u32, height: u32, rgb: &[u8]) -> Result<Vec<u8>, PictureFault> {
+    if rgb.len() as u64 != 3 * u64::from(width) * u64::from(height) {
+        return Err(PictureFault::Encoding("the pixels do not fill the page".to_string()));
+    }
     let mut bytes = Vec::with_capacity(rgb.len() / 8);
     PngEncoder::new_with_quality(&mut bytes, CompressionType::Fast, FilterType::Up)
         .write_image(rgb, width, height, ExtendedColorType::Rgb8)
@@ -28,6 +31,6 @@ mod tests {
 
     #[test]
     fn too_few_pixels_are_a_fault_and_no_panic() {
-        assert!(png(4, 3, &[0; 3]).is_err() || cfg!(debug_assertions));
+        assert!(png(4, 3, &[0; 3]).is_err());
     }
 }

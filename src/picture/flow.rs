@@ -1,13 +1,13 @@
 //! Direction of the current: short strokes along it, evenly strewn, each with a head.
 
-use super::place::Spot;
+use super::place::{Area, Occupied, Spot};
 use super::view::View;
 use std::collections::HashMap;
 
 /// Distance of the places where a stroke may begin, px.
-const SPACING: f64 = 42.0;
+const SPACING: f64 = 54.0;
 /// Strokes keep this distance, px.
-const CLEAR: f64 = 24.0;
+const CLEAR: f64 = 28.0;
 /// Steps along the current, px.
 const STEP: f64 = 3.0;
 /// Steps to each side of the beginning, at most.
@@ -15,8 +15,8 @@ const STEPS: usize = 8;
 /// Below this share of the scale there is no stroke.
 const FAINT: f32 = 0.01;
 
-/// Strokes along the current, each from tail to tip.
-pub fn strokes(view: &View<'_>) -> Vec<Vec<Spot>> {
+/// Strokes along the current, each from tail to tip, none through what is taken on the page.
+pub fn strokes(view: &View<'_>, occupied: &Occupied) -> Vec<Vec<Spot>> {
     if view.panel.flow.is_empty() {
         return Vec::new();
     }
@@ -30,11 +30,12 @@ pub fn strokes(view: &View<'_>) -> Vec<Vec<Spot>> {
             let shift = if row % 2 == 0 { 0.25 } else { 0.75 };
             let x = area.left + area.width() * (column as f64 + shift) / columns;
             let y = area.top + area.height() * (row as f64 + 0.5) / rows;
-            let mut stroke = traced(view, [x, y], -1.0, &taken);
+            let free = |p: Spot| occupied.is_free(&Area::around(p, 6.0, 6.0)) && is_clear(&taken, p);
+            let mut stroke = traced(view, [x, y], -1.0, &free);
             stroke.reverse();
             stroke.push([x, y]);
-            stroke.extend(traced(view, [x, y], 1.0, &taken));
-            if stroke.len() < 7 || !is_clear(&taken, [x, y]) {
+            stroke.extend(traced(view, [x, y], 1.0, &free));
+            if stroke.len() < 7 || !free([x, y]) {
                 continue;
             }
             for &p in &stroke {
@@ -55,7 +56,7 @@ pub fn head(stroke: &[Spot], size: f64) -> Vec<Spot> {
     vec![[tip[0] - x - 0.5 * y, tip[1] - y + 0.5 * x], *tip, [tip[0] - x + 0.5 * y, tip[1] - y - 0.5 * x]]
 }
 
-fn traced(view: &View<'_>, from: Spot, sense: f64, taken: &HashMap<(i64, i64), Vec<Spot>>) -> Vec<Spot> {
+fn traced(view: &View<'_>, from: Spot, sense: f64, free: &dyn Fn(Spot) -> bool) -> Vec<Spot> {
     let mut path = Vec::new();
     let mut here = from;
     let mut last: Option<Spot> = None;
@@ -69,7 +70,7 @@ fn traced(view: &View<'_>, from: Spot, sense: f64, taken: &HashMap<(i64, i64), V
         here = [here[0] + sense * STEP * x, here[1] + sense * STEP * y];
         // The line keeps off the rim by one step more than it is drawn.
         let ahead = [here[0] + sense * STEP * x, here[1] + sense * STEP * y];
-        if view.share(ahead).is_none() || !is_clear(taken, here) {
+        if view.share(ahead).is_none() || !free(here) {
             break;
         }
         path.push(here);
@@ -108,12 +109,16 @@ mod tests {
         let panels = [panel];
         let frame = arrange(&panels, &[0.0], 0.0, |_, _| 100.0).frames[0];
         let view = View::new(&panels[0], frame, &Scale::new(&panels));
-        let strokes = strokes(&view);
+        let page = Area { left: 0.0, top: 0.0, right: 1600.0, bottom: 1000.0 };
+        let mut occupied = Occupied::new(page);
+        let sign = Area::around(frame.area.centre(), 90.0, 30.0);
+        occupied.take(sign);
+        let strokes = strokes(&view, &occupied);
         assert!(strokes.len() > 100, "{}", strokes.len());
         for stroke in &strokes {
             let (tail, tip) = (stroke[0], stroke[stroke.len() - 1]);
             assert!(tip[1] < tail[1] - 15.0 && (tip[0] - tail[0]).abs() < 1e-9, "up on the page");
-            assert!(stroke.iter().all(|&p| view.share(p).is_some()));
+            assert!(stroke.iter().all(|&p| view.share(p).is_some() && !sign.overlaps(&Area::around(p, 1.0, 1.0))));
         }
         assert_eq!(head(&strokes[0], 6.0)[1], strokes[0][strokes[0].len() - 1]);
         assert!(head(&[], 6.0).is_empty());

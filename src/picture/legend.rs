@@ -32,12 +32,21 @@ pub fn strong(size: f64, rgb: Rgb) -> Style {
 /// Title and subtitle from the page's upper left; returns where they end.
 pub fn title(drawing: &mut Drawing, lettering: &Lettering, sheet: &Sheet, margin: f64) -> f64 {
     let room = f64::from(drawing.width) - 2.0 * margin;
-    let mut base = margin + 22.0;
-    let words = lettering.fitted(&sheet.title, 31.0, Weight::Strong, room);
-    drawing.from_left(lettering, &words, [margin, base], strong(31.0, INK));
+    let mut base = margin - 14.0;
+    let lines = lettering.wrapped(&sheet.title, 31.0, Weight::Strong, room);
+    for (number, line) in lines.iter().take(2).enumerate() {
+        base += if number == 0 { 36.0 } else { 40.0 };
+        // A third line is one too many: the second says so.
+        let words = if number == 1 && lines.len() > 2 {
+            lettering.fitted(&format!("{line} …"), 31.0, Weight::Strong, room)
+        } else {
+            line.clone()
+        };
+        drawing.left_aligned(lettering, &words, [margin, base], strong(31.0, INK));
+    }
     for line in lettering.wrapped(&sheet.subtitle, 18.0, Weight::Regular, room).iter().take(2) {
         base += 32.0;
-        drawing.from_left(lettering, line, [margin, base], plain(18.0, GREY));
+        drawing.left_aligned(lettering, line, [margin, base], plain(18.0, GREY));
     }
     base + 12.0
 }
@@ -82,7 +91,7 @@ impl Legend<'_> {
             end += 18.0;
             for line in self.lettering.wrapped(&self.sheet.caution, 16.0, Weight::Regular, width).iter().take(8) {
                 end += 25.0;
-                drawing.from_left(self.lettering, line, [left, end], plain(16.0, CAUTION));
+                drawing.left_aligned(self.lettering, line, [left, end], plain(16.0, CAUTION));
             }
         }
         end
@@ -91,7 +100,7 @@ impl Legend<'_> {
     fn colour_bar(&self, drawing: &mut Drawing, at: Spot, width: f64) -> f64 {
         let ([left, base], scale) = (at, self.scale);
         let label = self.lettering.fitted(&self.sheet.scale_label, 16.0, Weight::Strong, width + 60.0);
-        drawing.from_left(self.lettering, &label, at, strong(16.0, INK));
+        drawing.left_aligned(self.lettering, &label, at, strong(16.0, INK));
         let (top, bottom, right) = (base + 12.0, base + 12.0 + BAR, left + width);
         let ramp = Ramp::new();
         let slices = width.floor();
@@ -106,18 +115,23 @@ impl Legend<'_> {
             let tip = [right + 16.0, 0.5 * (top + bottom)];
             drawing.marks.push(Mark::Fill(vec![vec![[right - 0.5, top], tip, [right - 0.5, bottom]]], Ink::full(ramp.at(1.0))));
             rim.push(tip);
-            let words = format!("to {}", three_digits(scale.peak));
-            drawing.from_left(self.lettering, &words, [right + 21.0, tip[1] + 5.0], plain(14.0, INK));
+            let words = format!("peak {}", three_digits(scale.peak));
+            drawing.left_aligned(self.lettering, &words, [right + 21.0, tip[1] + 5.0], plain(14.0, INK));
         }
         rim.extend([[right, bottom], [left, bottom]]);
         drawing.marks.push(Mark::Loop(rim, 1.2, Ink::full(INK)));
         let mut ticks = Vec::new();
         let count = (scale.top / scale.tick + 1e-6).floor().min(40.0) as usize;
-        for number in 0..=count {
-            let value = number as f64 * scale.tick;
-            let x = left + width * value / scale.top;
-            ticks.push(vec![[x, bottom], [x, bottom + 6.0]]);
-            drawing.centred(self.lettering, &with_step(value, scale.tick), [x, bottom + 18.0], 0.0, plain(15.0, INK));
+        let words: Vec<String> = (0..=count).map(|number| with_step(number as f64 * scale.tick, scale.tick)).collect();
+        let widest = words.iter().fold(0.0f64, |most, text| most.max(self.lettering.width(text, 15.0, Weight::Regular)));
+        let every = if widest + 14.0 > width * scale.tick / scale.top { 2 } else { 1 };
+        for (number, text) in words.iter().enumerate() {
+            let x = left + width * number as f64 * scale.tick / scale.top;
+            ticks.push(vec![[x, bottom], [x, bottom + if number % every == 0 { 6.0 } else { 4.0 }]]);
+            if number % every != 0 {
+                continue;
+            }
+            drawing.centred(self.lettering, text, [x, bottom + 18.0], 0.0, plain(15.0, INK));
         }
         drawing.marks.push(Mark::Lines(ticks, 1.2, Ink::full(INK)));
         bottom + 26.0
@@ -133,7 +147,7 @@ impl Legend<'_> {
         drawing.marks.push(Mark::Lines(vec![vec![[left, y], [right, y]]], 2.4, Ink::full(INK)));
         let ends = [(left, 6.0), (middle, 4.0), (right, 6.0)].map(|(x, h)| vec![[x, y - h], [x, y + h]]);
         drawing.marks.push(Mark::Lines(ends.to_vec(), 1.6, Ink::full(INK)));
-        drawing.from_left(self.lettering, &format!("{} mm", with_step(length, length)), [right + 12.0, y + 5.5], plain(16.0, INK));
+        drawing.left_aligned(self.lettering, &format!("{} mm", with_step(length, length)), [right + 12.0, y + 5.5], plain(16.0, INK));
         let mut lines = vec!["seen from above, drawing y up".to_string()];
         let with_lines = self.sheet.panels.iter().any(|p| !p.potential_mv.is_empty());
         if let Some(step) = self.scale.potential_step.filter(|_| with_lines) {
@@ -148,7 +162,7 @@ impl Legend<'_> {
         let mut base = y + 12.0;
         for line in lines.iter().flat_map(|l| self.lettering.wrapped(l, 15.0, Weight::Regular, width)) {
             base += 22.0;
-            drawing.from_left(self.lettering, &line, [left, base], plain(15.0, GREY));
+            drawing.left_aligned(self.lettering, &line, [left, base], plain(15.0, GREY));
         }
         base + 4.0
     }
@@ -158,7 +172,7 @@ impl Legend<'_> {
         base -= 24.0;
         for line in self.sheet.footer.iter().flat_map(|l| self.lettering.wrapped(l, 16.0, Weight::Regular, width)).take(12) {
             base += 24.0;
-            drawing.from_left(self.lettering, &line, [left, base], plain(16.0, INK));
+            drawing.left_aligned(self.lettering, &line, [left, base], plain(16.0, INK));
         }
         base + 4.0
     }

@@ -240,7 +240,8 @@ mod tests {
         sheet.panels[0].potential_mv = vec![f64::NAN; 4];
         assert_eq!(layout(&sheet), Err(PictureFault::NotFinite { panel: 0 }));
         let mut sheet = square();
-        sheet.panels[0].points.iter_mut().chain(sheet.panels[0].loops.iter_mut().flatten()).for_each(|p| p.y = 3.0);
+        let panel = &mut sheet.panels[0];
+        panel.points.iter_mut().chain(panel.loops.iter_mut().flatten()).for_each(|p| p.y = 3.0);
         assert_eq!(layout(&sheet), Err(PictureFault::Empty));
     }
 

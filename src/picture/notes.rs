@@ -14,6 +14,8 @@ use super::view::View;
 const PAPER: Rgb = [255, 248, 238];
 /// Electrodes and joints.
 pub const SEA: Rgb = [0, 74, 104];
+/// Words of electrodes and joints: darker, for they are thin.
+const DEEP: Rgb = [0, 44, 64];
 const WHITE: Ink = Ink::thin([255, 255, 255], 0.85);
 /// Radius of a balloon, px.
 const BALLOON: f64 = 14.5;
@@ -53,6 +55,11 @@ impl Notes<'_> {
                     drawing.occupied.take(area.widened(1.5));
                 }
             }
+            for line in &view.panel.lines {
+                for pair in view.frame.all(line).windows(2) {
+                    bar(drawing, [pair[0], pair[1]], 8.0);
+                }
+            }
             for mark in &view.panel.hotspots {
                 drawing.occupied.take(Area::around(view.frame.at(mark.at), 11.0, 11.0));
             }
@@ -64,11 +71,11 @@ impl Notes<'_> {
         for (neck, _) in self.all_necks() {
             for [tip, tail] in arrows(neck) {
                 let barbs = super::flow::head(&[tail, tip], 11.0);
-                let heads = vec![[&barbs[..], &[tip]].concat()];
+                let heads = vec![barbs.clone()];
                 drawing.marks.push(Mark::Lines(vec![vec![tail, tip], barbs], 4.6, WHITE));
                 drawing.marks.push(Mark::Lines(vec![vec![tail, tip]], 1.7, Ink::full(INK)));
                 drawing.marks.push(Mark::Fill(heads, Ink::full(INK)));
-                drawing.occupied.take(Area::spanning(tail, tip).widened(4.0));
+                drawing.occupied.take(Area::spanning(tail, tip).widened(6.0));
             }
         }
     }
@@ -115,37 +122,38 @@ impl Notes<'_> {
     /// Numbered balloons with leaders, outside the metal where there is room.
     pub fn balloons(&self, drawing: &mut Drawing) {
         let mut leaders: Vec<[Spot; 2]> = Vec::new();
+        let mut numbers: Vec<String> = Vec::new();
         for view in self.views {
             for mark in &view.panel.hotspots {
                 let at = view.frame.at(mark.at);
                 if let Some(place) = self.balloon_place(drawing, at, &leaders) {
                     let number = mark.number.to_string();
-                    drawing.claim(Area::around(place, 2.0 * BALLOON + 3.0, 2.0 * BALLOON + 3.0), &number);
-                    let way = unit(place, at);
-                    let start = [place[0] + BALLOON * way[0], place[1] + BALLOON * way[1]];
+                    drawing.claim(balloon(place), &number);
                     leaders.push([place, at]);
-                    drawing.marks.push(Mark::Lines(vec![vec![start, at]], 4.0, WHITE));
-                    drawing.marks.push(Mark::Lines(vec![vec![start, at]], 1.4, Ink::full(INK)));
-                    drawing.marks.push(Mark::Disc(at, 5.0, Ink::thin([255; 3], 0.95)));
-                    drawing.marks.push(Mark::Disc(at, 3.2, Ink::full(INK)));
-                    drawing.marks.push(Mark::Disc(place, BALLOON + 2.0, WHITE));
-                    drawing.marks.push(Mark::Disc(place, BALLOON, Ink::full([255; 3])));
-                    drawing.marks.push(Mark::Circle(place, BALLOON, 1.7, Ink::full(INK)));
-                    let size = if number.len() > 2 { 12.0 } else { 17.0 };
-                    let width = self.lettering.width(&number, size, Weight::Strong);
-                    let base = [place[0] - 0.5 * width, place[1] + 0.5 * CAPITAL * size];
-                    let steps = self.lettering.outline(&number, size, Weight::Strong, base, 0.0);
-                    drawing.marks.push(Mark::Glyphs(steps, Ink::full(INK), None));
+                    numbers.push(number);
                 }
             }
         }
-        for [a, b] in leaders {
-            // Words keep off leaders, piece by piece so that a slanting one does not block its whole box.
-            let pieces = (((b[0] - a[0]).hypot(b[1] - a[1])) / 8.0).ceil().max(1.0);
-            for piece in 0..=pieces as usize {
-                let t = piece as f64 / pieces;
-                drawing.occupied.take(Area::around([a[0] + t * (b[0] - a[0]), a[1] + t * (b[1] - a[1])], 5.0, 5.0));
-            }
+        // No leader over a balloon: all leaders first.
+        for &[place, at] in &leaders {
+            let line = vec![place, at];
+            drawing.marks.push(Mark::Lines(vec![line.clone()], 4.0, WHITE));
+            drawing.marks.push(Mark::Lines(vec![line], 1.4, Ink::full(INK)));
+            drawing.marks.push(Mark::Disc(at, 5.0, Ink::thin([255; 3], 0.95)));
+            drawing.marks.push(Mark::Disc(at, 3.2, Ink::full(INK)));
+        }
+        for (&[place, _], number) in leaders.iter().zip(&numbers) {
+            drawing.marks.push(Mark::Disc(place, BALLOON + 2.0, WHITE));
+            drawing.marks.push(Mark::Disc(place, BALLOON, Ink::full([255; 3])));
+            drawing.marks.push(Mark::Circle(place, BALLOON, 1.7, Ink::full(INK)));
+            let size = if number.len() > 2 { 12.0 } else { 17.0 };
+            let width = self.lettering.width(number, size, Weight::Strong);
+            let base = [place[0] - 0.5 * width, place[1] + 0.5 * CAPITAL * size];
+            let steps = self.lettering.outline(number, size, Weight::Strong, base, 0.0);
+            drawing.marks.push(Mark::Glyphs(steps, Ink::full(INK), None));
+        }
+        for leader in leaders {
+            bar(drawing, leader, 5.0);
         }
     }
 
@@ -160,14 +168,17 @@ impl Notes<'_> {
             for turn in 0..32 {
                 let angle = std::f64::consts::TAU * (f64::from(turn) + 0.5) / 32.0;
                 let place = [at[0] + distance * angle.cos(), at[1] + distance * angle.sin()];
-                let area = Area::around(place, 2.0 * BALLOON + 4.0, 2.0 * BALLOON + 4.0);
+                let area = balloon(place);
                 if !drawing.occupied.is_free(&area.widened(3.0)) {
                     continue;
                 }
                 let steps = (distance / 8.0).ceil();
                 let along = |k: f64| [at[0] + (place[0] - at[0]) * k / steps, at[1] + (place[1] - at[1]) * k / steps];
                 let over = (0..steps as usize).filter(|&k| self.share(along(k as f64)).is_some()).count() as f64 * 8.0;
-                let crossed = leaders.iter().filter(|l| cross(**l, [at, place])).count() as f64;
+                let entangled = |&[other, spot]: &[Spot; 2]| {
+                    cross([other, spot], [at, place]) || balloon(other).crossed_by(at, place) || area.widened(2.0).crossed_by(other, spot)
+                };
+                let crossed = leaders.iter().filter(|&leader| entangled(leader)).count() as f64;
                 let blocked = drawing.occupied.crossed_by(at, place) as f64;
                 let cost = distance + 0.4 * over + 26.0 * self.metal_below(&area) as f64 + 400.0 * crossed + 30.0 * blocked;
                 if best.is_none_or(|(known, _)| cost < known) {
@@ -187,7 +198,7 @@ impl Notes<'_> {
                 continue;
             }
             let (marks, labels, places) = (drawing.marks.len(), drawing.labels.len(), drawing.occupied.count());
-            let written = labelled.iter().filter(|(text, area)| self.beside(drawing, text, area, SEA)).count();
+            let written = labelled.iter().filter(|(text, area)| self.beside(drawing, text, area)).count();
             if 4 * written < 3 * labelled.len() {
                 drawing.marks.truncate(marks);
                 drawing.labels.truncate(labels);
@@ -197,7 +208,7 @@ impl Notes<'_> {
     }
 
     /// Words right, left, above or below a box.
-    fn beside(&self, drawing: &mut Drawing, text: &str, area: &Area, rgb: Rgb) -> bool {
+    fn beside(&self, drawing: &mut Drawing, text: &str, area: &Area) -> bool {
         let half = 0.5 * self.lettering.width(text, SIZE, Weight::Regular) + 2.0;
         let ([x, y], gap) = (area.centre(), 4.0);
         let high = 0.5 * (ABOVE + BELOW) * SIZE + 2.0;
@@ -213,12 +224,13 @@ impl Notes<'_> {
             [left, y - high],
             [left, y + high],
         ];
-        places.into_iter().any(|p| drawing.centred(self.lettering, text, p, 0.0, self.style(p, SIZE, Weight::Regular, rgb)))
+        places.into_iter().any(|p| drawing.centred(self.lettering, text, p, 0.0, self.style(p, SIZE, Weight::Regular, DEEP)))
     }
 
     /// Names of electrodes, at or near where they belong.
     pub fn names(&self, drawing: &mut Drawing) {
         for view in self.views {
+            let patches = patches_of(view);
             for (at, name) in &view.panel.names {
                 let (at, size) = (view.frame.at(*at), SIZE + 1.0);
                 let half = 0.5 * self.lettering.width(name, size, Weight::Strong) + 4.0;
@@ -228,7 +240,14 @@ impl Notes<'_> {
                     places.extend([[at[0], at[1] - y], [at[0], at[1] + y], [at[0] + x, at[1]], [at[0] - x, at[1]]]);
                     places.extend([[at[0] + x, at[1] - y], [at[0] - x, at[1] - y], [at[0] + x, at[1] + y], [at[0] - x, at[1] + y]]);
                 }
-                let _ = places.iter().any(|&p| drawing.centred(self.lettering, name, p, 0.0, self.style(p, size, Weight::Strong, SEA)));
+                // Half on the metal and half off reads badly.
+                let whole = |p: Spot| [0, 5].contains(&self.metal_below(&Area::around(p, 2.0 * half, size)));
+                let style = |p: Spot| {
+                    let on_patch = patches.iter().any(|patch| patch.overlaps(&Area::around(p, 2.0, 2.0)));
+                    let style = self.style(p, size, Weight::Strong, DEEP);
+                    if on_patch { Style { ink: Ink::full(DEEP), halo: Some((3.5, Ink::thin([255; 3], 0.9))), ..style } } else { style }
+                };
+                let _ = places.iter().any(|&p| whole(p) && drawing.centred(self.lettering, name, p, 0.0, style(p)));
             }
         }
     }
@@ -240,6 +259,7 @@ impl Notes<'_> {
         // Round numbers first, long lines before short ones.
         let rank = |level: i64| if level % 5 == 0 { 0 } else { 1 + level.rem_euclid(2) };
         order.sort_by(|a, b| rank(a.level).cmp(&rank(b.level)).then(b.line.len().cmp(&a.line.len())));
+        let patches = patches_of(view);
         let mut written: Vec<(i64, Spot)> = Vec::new();
         for contour in &order {
             let text = format!("{} mV", with_step(contour.level as f64 * step, step));
@@ -259,7 +279,8 @@ impl Notes<'_> {
                 let centre = [0.5 * (a[0] + b[0]), 0.5 * (a[1] + b[1])];
                 let chord = (b[0] - a[0]).hypot(b[1] - a[1]);
                 let bent = (m[0] - centre[0]).hypot(m[1] - centre[1]) > 2.5 || chord < 0.97 * (to - from);
-                let crowded = view.line_distance(centre, step).is_none_or(|d| d < 13.0);
+                let hatched = patches.iter().any(|patch| patch.overlaps(&Area::around(centre, 8.0, 8.0)));
+                let crowded = hatched || view.line_distance(centre, step).is_none_or(|d| d < 13.0);
                 let near = written
                     .iter()
                     .any(|&(level, p)| (p[0] - centre[0]).hypot(p[1] - centre[1]) < if level == contour.level { 260.0 } else { 46.0 });
@@ -280,6 +301,9 @@ impl Notes<'_> {
             return;
         }
         for contour in order {
+            if written.iter().any(|&(level, _)| level == contour.level) {
+                continue;
+            }
             let [first, second, ..] = contour.line[..] else { continue };
             let [.., before, last] = contour.line[..] else { continue };
             let text = format!("{} mV", with_step(contour.level as f64 * step, step));
@@ -312,11 +336,30 @@ fn arrows([a, b]: [Spot; 2]) -> [[Spot; 2]; 2] {
     [far(a, 1.0), far(b, -1.0)]
 }
 
+/// Keeps words off a straight line of this width, piece by piece so that a slanting one does not block its whole box.
+fn bar(drawing: &mut Drawing, [a, b]: [Spot; 2], width: f64) {
+    let pieces = ((b[0] - a[0]).hypot(b[1] - a[1]) / 8.0).ceil().clamp(1.0, 500.0);
+    for piece in 0..=pieces as usize {
+        let t = piece as f64 / pieces;
+        drawing.occupied.take(Area::around([a[0] + t * (b[0] - a[0]), a[1] + t * (b[1] - a[1])], width, width));
+    }
+}
+
+/// The box of a balloon.
+fn balloon(centre: Spot) -> Area {
+    Area::around(centre, 2.0 * BALLOON + 4.0, 2.0 * BALLOON + 4.0)
+}
+
 /// Unit vector from one place to another; to the right where they are the same.
 fn unit(a: Spot, b: Spot) -> Spot {
     let (x, y) = (b[0] - a[0], b[1] - a[1]);
     let length = x.hypot(y);
     if length > 0.0 { [x / length, y / length] } else { [1.0, 0.0] }
+}
+
+/// Boxes of the terminals that are areas.
+fn patches_of(view: &View<'_>) -> Vec<Area> {
+    view.panel.patches.iter().filter_map(|patch| around(&view.frame.all(patch))).collect()
 }
 
 /// The upright box around some places.
@@ -330,12 +373,12 @@ fn around(places: &[Spot]) -> Option<Area> {
     }))
 }
 
-/// The angle turned by half a turn where words would stand on their head.
+/// The angle turned by half a turn where words would stand on their head. Steep words all read upwards, so that neighbours agree.
 fn upright(angle: f64) -> f64 {
     use std::f64::consts::{FRAC_PI_2, PI};
-    if angle > FRAC_PI_2 - 0.02 {
+    if angle > FRAC_PI_2 - 0.4 {
         angle - PI
-    } else if angle < -FRAC_PI_2 - 0.02 {
+    } else if angle <= -FRAC_PI_2 - 0.4 {
         angle + PI
     } else {
         angle
@@ -374,7 +417,7 @@ mod tests {
     fn words_never_stand_on_their_head() {
         for degrees in -180..=180 {
             let angle = upright(f64::from(degrees).to_radians());
-            assert!((-1.6..=1.56).contains(&angle), "{degrees}: {angle}");
+            assert!((-1.98..=1.18).contains(&angle), "{degrees}: {angle}");
         }
     }
 

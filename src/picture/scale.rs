@@ -98,9 +98,7 @@ pub fn with_step(value: f64, step: f64) -> String {
         (scaled - scaled.round()).abs() < 1e-6 * scaled
     });
     let decimals = decimals.unwrap_or(9) as usize;
-    let text = format!("{value:.decimals$}");
-    // Nobody writes a negative nothing.
-    if text.trim_start_matches('-').bytes().all(|b| b == b'0' || b == b'.') { text.trim_start_matches('-').to_string() } else { text }
+    if value.abs() < 1e-6 * step { "0".to_string() } else { format!("{value:.decimals$}").replace('-', "−") }
 }
 
 /// Three significant digits.
@@ -108,7 +106,7 @@ pub fn three_digits(value: f64) -> String {
     if value.is_nan() || value <= 0.0 {
         return "0".to_string();
     }
-    if value >= 1e6 || value < 1e-4 {
+    if !(1e-4..1e6).contains(&value) {
         return format!("{value:.2e}");
     }
     let decimals = (2 - value.log10().floor() as i32).max(0) as usize;
@@ -138,7 +136,7 @@ mod tests {
         assert_eq!([round_step(0.0), round_step(f64::NAN)], [1.0, 1.0]);
         assert_eq!(with_step(7.5, 2.5), "7.5");
         assert_eq!(with_step(0.30000000000000004, 0.1), "0.3");
-        assert_eq!(with_step(-0.0, 5.0), "0");
+        assert_eq!([with_step(-0.0, 0.5), with_step(-1.5, 0.5)], ["0", "−1.5"]);
         assert_eq!([three_digits(57.31), three_digits(1234.0), three_digits(0.0456), three_digits(0.0)], ["57.3", "1234", "0.0456", "0"]);
     }
 
