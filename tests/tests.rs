@@ -1,0 +1,5 @@
+//! One integration binary: the themes are its modules.
+
+mod published;
+mod refusals;
+mod support;
