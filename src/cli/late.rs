@@ -1,7 +1,7 @@
 //! Faults that only the mesh or the numbers show, led back to their place in the sheet.
 
 use crate::diagnostic::{Fault, Label, Span};
-use crate::index::{ElectrodeId, ProbeId};
+use crate::index::{CrossingId, ElectrodeId, ProbeId};
 use crate::mesh::MeshFault;
 use crate::physics::Fault as Late;
 use crate::problem::Problem;
@@ -58,6 +58,12 @@ pub fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
             format!("tip {} of `{}` does not stand on one piece of metal", tip + 1, problem.probes[*probe].name),
             "a tip's disc on one piece of the layer",
             "move the tip, or make `tip_mm` smaller",
+        ),
+        Late::CrossingHeld { crossing, .. } => at(
+            origins.crossing(CrossingId::new(*crossing)).clone(),
+            format!("`{}`: {fault}", problem.crossings[*crossing].name),
+            "a line over metal outside solid patches",
+            "move the crossing, or give the joint a resistance",
         ),
         Late::SpotOff(k) | Late::LineThroughSheets(k) => at(
             origins.electrode(*k).clone(),

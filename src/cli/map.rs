@@ -60,7 +60,7 @@ pub fn run(request: &Request) -> io::Result<Ending> {
     let solved = physics::run(&problem);
     clock.lap("solve");
     let found = solved.and_then(|solution| findings::find(&problem, solution));
-    let (mut findings, solution) = match found {
+    let mut found = match found {
         Ok(found) => found,
         Err(faults) if faults.iter().any(late::is_ours) => {
             faults.iter().for_each(|f| terminal::say(&f.to_string()));
@@ -69,10 +69,11 @@ pub fn run(request: &Request) -> io::Result<Ending> {
         Err(faults) => return Ok(refused(&faults.iter().map(|f| late::placed(f, &problem, &origins)).collect::<Vec<_>>())),
     };
     clock.lap("find");
-    findings.remarks.splice(0..0, remarks);
-    let picture = if folder.is_some() { report::figure::heat_map(&problem, &solution, &findings) } else { Ok(Vec::new()) };
-    let picture = picture.map_err(|text| findings.remarks.push(Remark::new(format!("No picture: {text}.")))).ok();
+    found.findings.remarks.splice(0..0, remarks);
+    let picture = if folder.is_some() { report::figure::heat_map(&problem, &found) } else { Ok(Vec::new()) };
+    let picture = picture.map_err(|text| found.findings.remarks.push(Remark::new(format!("No picture: {text}.")))).ok();
     clock.lap("draw");
+    let mut findings = found.findings;
     if request.timings {
         findings.run.seconds = Some(clock.laps);
     }

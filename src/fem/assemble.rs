@@ -16,27 +16,23 @@ pub fn conduction(corners: [Point; 3], conductance: f64) -> [f64; 3] {
 /// The matrix over the unknowns that are `free`: `free[u]` is the row of unknown u, or `None` where it is zero by definition.
 pub fn assembled(mesh: &Mesh, complex: &Complex, free: &[Option<u32>]) -> SymmetricMatrix {
     let mut triplets = Triplets::new(free.iter().flatten().count());
-    // A difference of two unknowns with weight w adds w (u_i - u_j)^2 to the form.
-    let mut add_difference = |i: usize, j: usize, w: f64| {
-        if i == j {
-            return;
-        }
-        if let Some(r) = free[i] {
-            triplets.add(r as usize, r as usize, w);
-        }
-        if let Some(s) = free[j] {
-            triplets.add(s as usize, s as usize, w);
-        }
-        if let (Some(r), Some(s)) = (free[i], free[j]) {
-            triplets.add(r as usize, s as usize, -w);
-        }
-    };
     for (x, element) in complex.elements.iter().enumerate() {
         if element.leaf.held.is_none() {
-            let u = complex.unknowns[x].map(|u| u as usize);
+            let u = complex.unknowns[x];
             let pairs = conduction(mesh.corners(element.triangle as usize), element.leaf.conductance);
-            for (k, w) in pairs.into_iter().enumerate() {
-                add_difference(u[(k + 1) % 3], u[(k + 2) % 3], -w);
+            for k in 0..3 {
+                let (i, j) = (u[(k + 1) % 3] as usize, u[(k + 2) % 3] as usize);
+                // A corner whose neighbour is the same pole has no difference to it.
+                let own =
+                    if u[k] as usize == i { 0.0 } else { -pairs[(k + 2) % 3] } + if u[k] as usize == j { 0.0 } else { -pairs[(k + 1) % 3] };
+                if let Some(r) = free[u[k] as usize] {
+                    triplets.add(r as usize, r as usize, own);
+                }
+                if i != j
+                    && let (Some(r), Some(s)) = (free[i], free[j])
+                {
+                    triplets.add(r as usize, s as usize, pairs[k]);
+                }
             }
         }
     }

@@ -163,7 +163,8 @@ impl<'a> Chunk<'a> {
             let leaf = complex.elements[element].leaf;
             let points = self.mesh.corners(complex.elements[element].triangle as usize);
             let pairs = conduction(points, leaf.conductance);
-            let u = complex.unknowns[element].map(|u| field.at(u as usize));
+            let u = complex.unknowns[element].map(|u| &field.at(u as usize)[..width]);
+            let (ua, ub, uc) = (u[a], u[b], u[c]);
             let mass = flux_mass(points, leaf.conductance);
             let spread = mass[b][b] + mass[c][c] - 2.0 * mass[b][c];
             work.inverse[i] = 1.0 / spread;
@@ -173,8 +174,8 @@ impl<'a> Chunk<'a> {
             let (wb, wc) = ((mass[b][b] - mass[b][c]) / spread, (mass[c][c] - mass[b][c]) / spread);
             for col in 0..width {
                 // Half the flux of -g grad phi through the edges opposite b and c: the interpolation of psi times it.
-                let kb = pairs[a] * (u[c][col] - u[b][col]) + pairs[c] * (u[a][col] - u[b][col]);
-                let kc = pairs[a] * (u[b][col] - u[c][col]) + pairs[b] * (u[a][col] - u[c][col]);
+                let kb = pairs[a] * (uc[col] - ub[col]) + pairs[c] * (ua[col] - ub[col]);
+                let kc = pairs[a] * (ub[col] - uc[col]) + pairs[b] * (ua[col] - uc[col]);
                 demand[col] = kb + kc;
                 through[col] = wb * kb - wc * kc;
             }
@@ -196,11 +197,11 @@ impl<'a> Chunk<'a> {
             if self.range.contains(&element) {
                 let (b, c) = ((a + 1) % 3, (a + 2) % 3);
                 let base = 3 * (element - self.range.start) * width;
-                for col in 0..width {
-                    let t = work.through[i * width + col];
-                    self.flux[base + b * width + col] += t;
-                    self.flux[base + c * width + col] += work.demand[i * width + col] - t;
-                }
+                let (through, demand) = (&work.through[i * width..(i + 1) * width], &work.demand[i * width..(i + 1) * width]);
+                let far = &mut self.flux[base + b * width..base + (b + 1) * width];
+                far.iter_mut().zip(through).for_each(|(f, t)| *f += t);
+                let near = &mut self.flux[base + c * width..base + (c + 1) * width];
+                near.iter_mut().zip(demand.iter().zip(through)).for_each(|(f, (d, t))| *f += d - t);
             }
         }
     }
@@ -257,16 +258,21 @@ impl<'a> Chunk<'a> {
                 let u = self.complex.unknowns[element].map(|u| self.field.at(u as usize));
                 let root = square_root(flux_mass(points, leaf.conductance));
                 let base = 3 * (element - self.range.start) * width;
+                let [u0, u1, u2] = u.map(|u| &u[..width]);
+                let flux = &self.flux[base..base + 3 * width];
+                let (f0, rest) = flux.split_at(width);
+                let (f1, f2) = rest.split_at(width);
+                let (r0, rest) = rows.split_at_mut(width);
+                let (r1, r2) = rest.split_at_mut(width);
                 for col in 0..width {
-                    let mut defect = [0.0; 3];
-                    for (k, d) in defect.iter_mut().enumerate() {
-                        let (i, j) = ((k + 1) % 3, (k + 2) % 3);
-                        let half = pairs[j] * (u[i][col] - u[k][col]) + pairs[i] * (u[j][col] - u[k][col]);
-                        *d = self.flux[base + k * width + col] - 2.0 * half;
-                    }
-                    for (r, row) in rows.chunks_exact_mut(width).enumerate() {
-                        row[col] = (r..3).map(|k| root[k][r] * defect[k]).sum();
-                    }
+                    let (d01, d12, d20) = (u1[col] - u0[col], u2[col] - u1[col], u0[col] - u2[col]);
+                    // The flux of -g grad phi through the edges, as twice what its interpolation has.
+                    let e0 = f0[col] - 2.0 * (pairs[2] * d01 - pairs[1] * d20);
+                    let e1 = f1[col] - 2.0 * (pairs[0] * d12 - pairs[2] * d01);
+                    let e2 = f2[col] - 2.0 * (pairs[1] * d20 - pairs[0] * d12);
+                    r0[col] = root[0][0] * e0 + root[1][0] * e1 + root[2][0] * e2;
+                    r1[col] = root[1][1] * e1 + root[2][1] * e2;
+                    r2[col] = root[2][2] * e2;
                 }
                 take(triangle, &rows);
             }

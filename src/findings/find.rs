@@ -1,5 +1,8 @@
 //! From a solution to the findings: electrodes, joints, layers, balances.
 
+use super::gauge::DensityField;
+use super::hotspot::{self, HotspotPlace, survey};
+use super::section;
 use super::verdict::verdicts;
 use super::*;
 use crate::geometry::{Point, nested_area};
@@ -7,16 +10,68 @@ use crate::index::{ContactId, ElectrodeId, JoinId};
 use crate::physics::network::Interval;
 use crate::physics::plan::Mark;
 use crate::physics::solution::Passed;
-use crate::physics::{Fault, Solution};
-use crate::problem::{Electrode, ElectrodeKind, Footprint, Interface, Problem};
+use crate::physics::{self, Fault, Solution};
+use crate::problem::{Crossing, Electrode, ElectrodeKind, Footprint, Interface, Problem};
 
-/// Everything that is reported of a solved problem, with the solution it was read from (sharpened under the hotspots).
+/// Times that the mesh is refined under the hotspots: the first places may move a little when they are resolved.
+const SHARPENINGS: usize = 3;
+
+/// All that was found of a solved problem.
+pub struct Found {
+    /// What is reported.
+    pub findings: Findings,
+    /// Where the hotspots lie, in the order of the table.
+    pub places: Vec<HotspotPlace>,
+    /// Current density of every sheet.
+    pub density: DensityField,
+    /// The solution it was read from: the given one, refined under the hotspots.
+    pub solution: Solution,
+}
+
+/// Everything that is reported of a solved problem. Gauge discs are resolved before they are reported, whatever the bracket says.
 ///
 /// # Errors
-/// As [`crate::physics::run`].
-pub fn find(problem: &Problem, solution: Solution) -> Result<(Findings, Solution), Vec<Fault>> {
-    let findings = found(problem, &solution);
-    Ok((findings, solution))
+/// As [`crate::physics::run`]; a crossing that runs inside a held patch.
+pub fn find(problem: &Problem, mut solution: Solution) -> Result<Found, Vec<Fault>> {
+    let mut density = DensityField::new(problem, &solution);
+    let mut survey = survey(problem, &solution, &density);
+    for _ in 0..SHARPENINGS {
+        if survey.unresolved.is_empty() {
+            break;
+        }
+        solution = physics::sharpened(problem, solution, &survey.unresolved)?;
+        density = DensityField::new(problem, &solution);
+        survey = hotspot::survey(problem, &solution, &density);
+    }
+    let mut findings = found(problem, &solution);
+    for (layer, peak) in findings.layers.iter_mut().zip(&survey.layer_peaks) {
+        layer.peak_a_mm2 = *peak;
+    }
+    for (k, electrode) in problem.electrodes.iter().enumerate() {
+        let Some(&layer) = electrode.through.last() else { continue };
+        for (spot, out) in electrode.spots.iter().zip(&mut findings.electrodes[k].spots) {
+            if let Footprint::Area { region, .. } = &spot.footprint {
+                out.rim_a_mm2 = density.rim_peak(layer, &region.loops);
+            }
+        }
+    }
+    findings.crossings = crossings(problem, &density)?;
+    findings.hotspots = survey.rows;
+    findings.verdicts = verdicts(problem, &solution, &findings);
+    Ok(Found { findings, places: survey.places, density, solution })
+}
+
+fn crossings(problem: &Problem, density: &DensityField) -> Result<Vec<CrossingFinding>, Vec<Fault>> {
+    let one = |(c, crossing): (usize, &Crossing)| {
+        let currents = section::crossing_current(density, crossing.from, crossing.to)
+            .map_err(|held| Fault::CrossingHeld { crossing: c, at: held.at })?;
+        Ok(CrossingFinding {
+            name: crossing.name.clone(),
+            total_a: currents.iter().sum(),
+            current_a: problem.layers.iter().map(|l| l.name.clone()).zip(currents).collect(),
+        })
+    };
+    problem.crossings.iter().enumerate().map(one).collect::<Result<_, Fault>>().map_err(|f| vec![f])
 }
 
 fn found(problem: &Problem, solution: &Solution) -> Findings {
@@ -95,7 +150,6 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
         verdicts: Vec::new(),
         remarks: Vec::new(),
     };
-    findings.verdicts = verdicts(problem, solution, &findings);
     if !solution.run.reached {
         let gap = last.map_or(0.0, |r| 100.0 * r.gap);
         findings.remarks.push(Remark::new(format!(

@@ -1,9 +1,16 @@
 //! What a reader wants to know of a solved job: plain, serialisable, units in the field names. This is `result.json`.
 
 pub mod find;
+pub mod gauge;
+pub mod hotspot;
+pub mod kind;
+pub mod metal;
+pub mod section;
+#[cfg(test)]
+mod trial;
 pub mod verdict;
 
-pub use find::find;
+pub use find::{Found, find};
 
 use crate::diagnostic::Remark;
 use serde::Serialize;

@@ -24,9 +24,9 @@ impl Point {
     pub fn cross(self, other: Self) -> f64 {
         self.x * other.y - self.y * other.x
     }
-    /// Length.
+    /// Length. (Millimetres neither overflow nor underflow when squared; `hypot` was measured to cost a fifth of a run.)
     pub fn norm(self) -> f64 {
-        self.x.hypot(self.y)
+        self.dot(self).sqrt()
     }
     /// Distance to another point.
     pub fn distance(self, other: Self) -> f64 {

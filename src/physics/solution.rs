@@ -126,6 +126,13 @@ pub enum Fault {
         /// Which of its tips.
         tip: usize,
     },
+    /// A crossing of which a stretch lies inside a held patch.
+    CrossingHeld {
+        /// Which crossing.
+        crossing: usize,
+        /// A point in the patch.
+        at: Point,
+    },
     /// An electrode's spot found no metal.
     SpotOff(ElectrodeId),
     /// The mesh could not be made.
@@ -147,6 +154,9 @@ impl fmt::Display for Fault {
             Self::Unbalanced { sum, .. } => write!(f, "the currents on one connected piece add up to {sum} A, not to zero"),
             Self::BalanceUnclear(_) => write!(f, "which electrode takes the balance is not clear"),
             Self::TipOff { tip, .. } => write!(f, "tip {} of the probe does not stand on one piece of metal", tip + 1),
+            Self::CrossingHeld { at, .. } => {
+                write!(f, "the crossing runs inside a solid patch at ({}, {}): no current is defined there", at.x, at.y)
+            }
             Self::SpotOff(_) => write!(f, "the electrode touches no metal"),
             Self::Mesh(fault) => write!(f, "{fault}"),
             Self::Numerical(text) => write!(f, "the system could not be solved: {text}"),

@@ -1,13 +1,134 @@
-//! From a solution to the sheet that the picture draws.
+//! From a solution and its findings to the sheet that the picture draws.
 
-use crate::findings::Findings;
-use crate::physics::Solution;
-use crate::problem::Problem;
+use super::words::{CAUTION, interval};
+use crate::findings::metal::LayerMetal;
+use crate::findings::{Found, HotspotKind};
+use crate::geometry::Point;
+use crate::mesh::NONE;
+use crate::picture::{self, HotspotMark, Panel, Sheet, SpotMark};
+use crate::problem::{Drive, Electrode, ElectrodeKind, Footprint, Problem};
+use crate::quantity::three;
+
+/// Spots whose amperes are worth writing: beyond this many they would only be noise.
+const MOST_LABELS: usize = 80;
 
 /// The heat map as PNG.
 ///
 /// # Errors
 /// When it cannot be drawn.
-pub fn heat_map(_problem: &Problem, _solution: &Solution, _findings: &Findings) -> Result<Vec<u8>, String> {
-    Err("the renderer is not there yet".into())
+pub fn heat_map(problem: &Problem, found: &Found) -> Result<Vec<u8>, String> {
+    picture::heat_map(&sheet(problem, found)).map_err(|fault| fault.to_string())
+}
+
+/// What the picture shows.
+pub fn sheet(problem: &Problem, found: &Found) -> Sheet {
+    let findings = &found.findings;
+    let mut footer = vec![format!("loss {} W", interval(findings.loss_w))];
+    if let Some(r) = findings.resistance_mohm {
+        footer.push(format!("resistance {} mΩ", interval(r)));
+    }
+    let run = &findings.run;
+    footer.push(format!("enclosed to {} %{}", three(run.bracket_percent), if run.reached { "" } else { ", not as tight as asked" }));
+    Sheet {
+        title: problem.title.clone(),
+        subtitle: subtitle(problem, found),
+        panels: (0..problem.layers.len()).map(|l| panel(problem, found, l)).collect(),
+        scale_label: "current density, A/mm²".into(),
+        footer,
+        caution: CAUTION.into(),
+    }
+}
+
+fn subtitle(problem: &Problem, found: &Found) -> String {
+    let inward: f64 = found.findings.electrodes.iter().map(|e| e.current_a.max(0.0)).sum();
+    let count = |kind: ElectrodeKind| problem.electrodes.iter().filter(|e| e.kind == kind && !matches!(e.drive, Drive::Return(_))).count();
+    let plural = |n: usize, one: &str| if n == 1 { format!("1 {one}") } else { format!("{n} {one}s") };
+    let mut parts = Vec::new();
+    for (n, one) in [(count(ElectrodeKind::Cell), "cell"), (count(ElectrodeKind::Terminal), "terminal")] {
+        if n > 0 {
+            parts.push(plural(n, one));
+        }
+    }
+    format!("{} A through {} · metal at {} °C · seen from above", three(inward), parts.join(" and "), problem.temperature_c)
+}
+
+fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
+    let layer = &problem.layers[l];
+    let metal = &found.density.layers[l];
+    let (points, triangles, potential_mv) = nodes(found, metal);
+    let mut panel = Panel {
+        name: layer.name.clone(),
+        details: format!("{} {} mm", layer.material.name, layer.thickness_mm),
+        loops: layer.region.loops.clone(),
+        points,
+        triangles,
+        potential_mv,
+        values: metal.triangles.iter().map(|t| t.magnitude).collect(),
+        flow: metal.triangles.iter().map(|t| [t.density.x, t.density.y]).collect(),
+        ..Panel::default()
+    };
+    let spots: usize = problem.electrodes.iter().map(|e| e.spots.len()).sum();
+    for (electrode, finding) in
+        problem.electrodes.iter().zip(&found.findings.electrodes).filter(|(e, _)| e.through.iter().any(|t| t.index() == l))
+    {
+        for (spot, out) in electrode.spots.iter().zip(&finding.spots) {
+            match &spot.footprint {
+                Footprint::Line { points } => panel.lines.push(points.clone()),
+                Footprint::Area { region, .. } if electrode.kind == ElectrodeKind::Terminal => {
+                    panel.patches.extend(region.loops.iter().cloned())
+                }
+                Footprint::Area { region, .. } => {
+                    let label = (spots <= MOST_LABELS).then(|| format!("{} A", three(out.current_a)));
+                    panel.spots.extend(region.loops.iter().map(|outline| SpotMark { outline: outline.clone(), label: label.clone() }));
+                }
+            }
+        }
+        panel.names.push((name_place(electrode), electrode.name.clone()));
+    }
+    for join in problem.joins.iter().filter(|j| j.between.iter().any(|b| b.index() == l)) {
+        for spot in &join.spots {
+            if let Footprint::Area { region, .. } = spot {
+                panel.spots.extend(region.loops.iter().map(|outline| SpotMark { outline: outline.clone(), label: None }));
+            }
+        }
+    }
+    for (row, place) in found.findings.hotspots.iter().zip(&found.places).filter(|(_, p)| p.layer.index() == l) {
+        let neck = (row.kind == HotspotKind::Neck).then_some(place.section_ends).flatten();
+        let text = neck.and(row.width_mm).map(|w| format!("{w:.2}"));
+        panel.hotspots.push(HotspotMark { number: row.rank, at: place.centre, neck, text });
+    }
+    panel
+}
+
+/// The layer's triangles over points of their own: one per unknown, so that the two sides of a slit stay apart.
+fn nodes(found: &Found, metal: &LayerMetal) -> (Vec<Point>, Vec<[u32; 3]>, Vec<f64>) {
+    let solution = &found.solution;
+    let (mut points, mut potential) = (Vec::new(), Vec::new());
+    let mut place = vec![NONE; solution.complex.order()];
+    // A held patch has one unknown but many corners: those are numbered by vertex.
+    let mut held_place = vec![NONE; solution.mesh.points.len()];
+    let mut triangles = Vec::with_capacity(metal.triangles.len());
+    for triangle in &metal.triangles {
+        triangles.push([0, 1, 2].map(|k| {
+            let unknown = solution.complex.unknowns[triangle.element as usize][k] as usize;
+            let vertex = solution.mesh.triangles[triangle.triangle as usize][k] as usize;
+            let slot = if unknown < solution.complex.poles { &mut held_place[vertex] } else { &mut place[unknown] };
+            if *slot == NONE {
+                *slot = points.len() as u32;
+                points.push(solution.mesh.points[vertex]);
+                potential.push(1e3 * solution.potential.values[unknown]);
+            }
+            *slot
+        }));
+    }
+    (points, triangles, potential)
+}
+
+/// Where an electrode's name belongs: the middle of its spots.
+fn name_place(electrode: &Electrode) -> Point {
+    let middles = electrode.spots.iter().map(|spot| match &spot.footprint {
+        Footprint::Area { centre, .. } => *centre,
+        Footprint::Line { points } => points.iter().fold(Point::default(), |s, &p| s + p) * (1.0 / points.len().max(1) as f64),
+    });
+    middles.fold(Point::default(), |s, p| s + p) * (1.0 / electrode.spots.len().max(1) as f64)
 }

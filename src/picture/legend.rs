@@ -1,0 +1,165 @@
+//! Colour bar, scale bar, key and title block.
+
+use super::Sheet;
+use super::canvas::Ink;
+use super::colour::{Ramp, Rgb};
+use super::drawing::{Drawing, Mark, Style};
+use super::lettering::{Lettering, Weight};
+use super::place::Spot;
+use super::scale::{Scale, round_step, three_digits, with_step};
+
+/// Lines and words.
+pub const INK: Rgb = [28, 30, 38];
+/// Words of less weight.
+pub const GREY: Rgb = [92, 94, 100];
+/// Rules between parts of the page.
+const RULE: Rgb = [196, 194, 190];
+/// The caution.
+const CAUTION: Rgb = [142, 28, 34];
+/// Height of the colour bar, px.
+const BAR: f64 = 20.0;
+
+/// Plain words of this size.
+pub fn plain(size: f64, rgb: Rgb) -> Style {
+    Style { size, weight: Weight::Regular, ink: Ink::full(rgb), halo: None }
+}
+
+/// Words of this size in the stronger weight.
+pub fn strong(size: f64, rgb: Rgb) -> Style {
+    Style { weight: Weight::Strong, ..plain(size, rgb) }
+}
+
+/// Title and subtitle from the page's upper left; returns where they end.
+pub fn title(drawing: &mut Drawing, lettering: &Lettering, sheet: &Sheet, margin: f64) -> f64 {
+    let room = f64::from(drawing.width) - 2.0 * margin;
+    let mut base = margin + 22.0;
+    let words = lettering.fitted(&sheet.title, 31.0, Weight::Strong, room);
+    drawing.from_left(lettering, &words, [margin, base], strong(31.0, INK));
+    for line in lettering.wrapped(&sheet.subtitle, 18.0, Weight::Regular, room).iter().take(2) {
+        base += 32.0;
+        drawing.from_left(lettering, line, [margin, base], plain(18.0, GREY));
+    }
+    base + 12.0
+}
+
+/// What the legend needs to know.
+pub struct Legend<'a> {
+    /// The words.
+    pub sheet: &'a Sheet,
+    /// The scales.
+    pub scale: &'a Scale,
+    /// Pixels per mm.
+    pub per_mm: f64,
+    /// The font.
+    pub lettering: &'a Lettering,
+}
+
+impl Legend<'_> {
+    /// Writes the legend from its upper left corner; returns where it ends. `beside` stacks its parts, else they stand in a row.
+    pub fn write(&self, drawing: &mut Drawing, at: Spot, width: f64, beside: bool) -> f64 {
+        let [left, top] = at;
+        let rule =
+            |drawing: &mut Drawing, y: f64| drawing.marks.push(Mark::Lines(vec![vec![[left, y], [left + width, y]]], 1.0, Ink::full(RULE)));
+        rule(drawing, top);
+        let mut end;
+        if beside {
+            end = self.colour_bar(drawing, [left, top + 34.0], width - 66.0);
+            rule(drawing, end + 22.0);
+            end = self.key(drawing, [left, end + 46.0], width);
+            if !self.sheet.footer.is_empty() {
+                rule(drawing, end + 22.0);
+                end = self.footer(drawing, [left, end + 52.0], width);
+            }
+        } else {
+            let third = width / 3.0;
+            let bar = self.colour_bar(drawing, [left, top + 34.0], third - 40.0);
+            let key = self.key(drawing, [left + third + 76.0, top + 26.0], third - 70.0);
+            let footer = self.footer(drawing, [left + 2.0 * third + 50.0, top + 34.0], third - 50.0);
+            end = bar.max(key).max(footer);
+        }
+        if !self.sheet.caution.trim().is_empty() {
+            rule(drawing, end + 18.0);
+            end += 18.0;
+            for line in self.lettering.wrapped(&self.sheet.caution, 16.0, Weight::Regular, width).iter().take(8) {
+                end += 25.0;
+                drawing.from_left(self.lettering, line, [left, end], plain(16.0, CAUTION));
+            }
+        }
+        end
+    }
+
+    fn colour_bar(&self, drawing: &mut Drawing, at: Spot, width: f64) -> f64 {
+        let ([left, base], scale) = (at, self.scale);
+        let label = self.lettering.fitted(&self.sheet.scale_label, 16.0, Weight::Strong, width + 60.0);
+        drawing.from_left(self.lettering, &label, at, strong(16.0, INK));
+        let (top, bottom, right) = (base + 12.0, base + 12.0 + BAR, left + width);
+        let ramp = Ramp::new();
+        let slices = width.floor();
+        for slice in 0..slices as usize {
+            let (from, to) = (left + width * slice as f64 / slices, left + width * (slice + 1) as f64 / slices);
+            // Half a pixel over the next slice, so that no seam shows.
+            let area = vec![[from, top], [(to + 0.5).min(right), top], [(to + 0.5).min(right), bottom], [from, bottom]];
+            drawing.marks.push(Mark::Fill(vec![area], Ink::full(ramp.at((slice as f64 / (slices - 1.0)) as f32))));
+        }
+        let mut rim = vec![[left, top], [right, top]];
+        if scale.is_clipped() {
+            let tip = [right + 16.0, 0.5 * (top + bottom)];
+            drawing.marks.push(Mark::Fill(vec![vec![[right - 0.5, top], tip, [right - 0.5, bottom]]], Ink::full(ramp.at(1.0))));
+            rim.push(tip);
+            let words = format!("to {}", three_digits(scale.peak));
+            drawing.from_left(self.lettering, &words, [right + 21.0, tip[1] + 5.0], plain(14.0, INK));
+        }
+        rim.extend([[right, bottom], [left, bottom]]);
+        drawing.marks.push(Mark::Loop(rim, 1.2, Ink::full(INK)));
+        let mut ticks = Vec::new();
+        let count = (scale.top / scale.tick + 1e-6).floor().min(40.0) as usize;
+        for number in 0..=count {
+            let value = number as f64 * scale.tick;
+            let x = left + width * value / scale.top;
+            ticks.push(vec![[x, bottom], [x, bottom + 6.0]]);
+            drawing.centred(self.lettering, &with_step(value, scale.tick), [x, bottom + 18.0], 0.0, plain(15.0, INK));
+        }
+        drawing.marks.push(Mark::Lines(ticks, 1.2, Ink::full(INK)));
+        bottom + 26.0
+    }
+
+    /// Scale bar and what the lines mean.
+    fn key(&self, drawing: &mut Drawing, at: Spot, width: f64) -> f64 {
+        let [left, top] = at;
+        let length = round_step(170.0 / self.per_mm);
+        let right = left + length * self.per_mm;
+        let middle = 0.5 * (left + right);
+        let y = top + 10.0;
+        drawing.marks.push(Mark::Lines(vec![vec![[left, y], [right, y]]], 2.4, Ink::full(INK)));
+        let ends = [(left, 6.0), (middle, 4.0), (right, 6.0)].map(|(x, h)| vec![[x, y - h], [x, y + h]]);
+        drawing.marks.push(Mark::Lines(ends.to_vec(), 1.6, Ink::full(INK)));
+        drawing.from_left(self.lettering, &format!("{} mm", with_step(length, length)), [right + 12.0, y + 5.5], plain(16.0, INK));
+        let mut lines = vec!["seen from above, drawing y up".to_string()];
+        let with_lines = self.sheet.panels.iter().any(|p| !p.potential_mv.is_empty());
+        if let Some(step) = self.scale.potential_step.filter(|_| with_lines) {
+            lines.push(format!("thin lines: equal potential, every {} mV", with_step(step, step)));
+        }
+        if self.sheet.panels.iter().any(|p| !p.flow.is_empty()) {
+            lines.push("arrows: direction of the current".to_string());
+        }
+        if self.sheet.panels.iter().flat_map(|p| &p.hotspots).any(|h| h.neck.is_some()) {
+            lines.push("widths of necks in mm".to_string());
+        }
+        let mut base = y + 12.0;
+        for line in lines.iter().flat_map(|l| self.lettering.wrapped(l, 15.0, Weight::Regular, width)) {
+            base += 22.0;
+            drawing.from_left(self.lettering, &line, [left, base], plain(15.0, GREY));
+        }
+        base + 4.0
+    }
+
+    fn footer(&self, drawing: &mut Drawing, at: Spot, width: f64) -> f64 {
+        let [left, mut base] = at;
+        base -= 24.0;
+        for line in self.sheet.footer.iter().flat_map(|l| self.lettering.wrapped(l, 16.0, Weight::Regular, width)).take(12) {
+            base += 24.0;
+            drawing.from_left(self.lettering, &line, [left, base], plain(16.0, INK));
+        }
+        base + 4.0
+    }
+}

@@ -1,0 +1,398 @@
+//! Words and signs over the panels: balloons, necks, amperes, names, potentials. What finds no room is left out.
+
+use super::canvas::Ink;
+use super::colour::{Ramp, Rgb};
+use super::contour::Contour;
+use super::drawing::{Drawing, Mark, Style, turned};
+use super::legend::{GREY, INK};
+use super::lettering::{ABOVE, BELOW, CAPITAL, Lettering, Weight};
+use super::place::{Area, Spot};
+use super::scale::with_step;
+use super::view::View;
+
+/// Words over dark metal.
+const PAPER: Rgb = [255, 248, 238];
+/// Electrodes and joints.
+pub const SEA: Rgb = [0, 74, 104];
+const WHITE: Ink = Ink::thin([255, 255, 255], 0.85);
+/// Radius of a balloon, px.
+const BALLOON: f64 = 14.5;
+/// Size of the words over a panel, px.
+const SIZE: f64 = 14.5;
+/// More amperes than this in one panel are not written: they are in the table.
+const MOST_AMPERES: usize = 90;
+
+/// What notes are written with.
+pub struct Notes<'a> {
+    /// All panels.
+    pub views: &'a [View<'a>],
+    /// The font.
+    pub lettering: &'a Lettering,
+    /// The colour map, for halos.
+    pub ramp: &'a Ramp,
+}
+
+impl Notes<'_> {
+    fn share(&self, at: Spot) -> Option<f32> {
+        self.views.iter().find_map(|view| view.share(at))
+    }
+
+    /// Words in this colour, or light ones over dark metal, with a halo of what is below.
+    fn style(&self, at: Spot, size: f64, weight: Weight, rgb: Rgb) -> Style {
+        let share = self.share(at);
+        let dark = share.is_some_and(|share| self.ramp.is_dark(share));
+        let below = share.map_or([255; 3], |share| self.ramp.at(share));
+        Style { size, weight, ink: Ink::full(if dark { PAPER } else { rgb }), halo: Some((2.6, Ink::thin(below, 0.88))) }
+    }
+
+    /// Keeps words off spots and hotspots.
+    pub fn guard(&self, drawing: &mut Drawing) {
+        for view in self.views {
+            for spot in &view.panel.spots {
+                if let Some(area) = around(&view.frame.all(&spot.outline)) {
+                    drawing.occupied.take(area.widened(1.5));
+                }
+            }
+            for mark in &view.panel.hotspots {
+                drawing.occupied.take(Area::around(view.frame.at(mark.at), 11.0, 11.0));
+            }
+        }
+    }
+
+    /// Arrows of all necks.
+    pub fn necks(&self, drawing: &mut Drawing) {
+        for (neck, _) in self.all_necks() {
+            for [tip, tail] in arrows(neck) {
+                let barbs = super::flow::head(&[tail, tip], 11.0);
+                let heads = vec![[&barbs[..], &[tip]].concat()];
+                drawing.marks.push(Mark::Lines(vec![vec![tail, tip], barbs], 4.6, WHITE));
+                drawing.marks.push(Mark::Lines(vec![vec![tail, tip]], 1.7, Ink::full(INK)));
+                drawing.marks.push(Mark::Fill(heads, Ink::full(INK)));
+                drawing.occupied.take(Area::spanning(tail, tip).widened(4.0));
+            }
+        }
+    }
+
+    fn all_necks(&self) -> impl Iterator<Item = ([Spot; 2], Option<&str>)> {
+        self.views.iter().flat_map(|view| {
+            let necks = view.panel.hotspots.iter().filter_map(|mark| Some((mark.neck?, mark.text.as_deref())));
+            necks.map(|(neck, text)| (neck.map(|p| view.frame.at(p)), text))
+        })
+    }
+
+    /// Widths of necks, beside one of the two arrows.
+    pub fn widths(&self, drawing: &mut Drawing) {
+        for (neck, text) in self.all_necks() {
+            let Some(text) = text else { continue };
+            let half = 0.5 * self.lettering.width(text, SIZE + 0.5, Weight::Strong) + 4.0;
+            let mut places = Vec::new();
+            for [tip, tail] in arrows(neck) {
+                let along = unit(tip, tail);
+                // Beyond the tail, then to either side of the arrow.
+                let beyond = half * along[0].abs() + 10.0 * along[1].abs() + 4.0;
+                places.push([tail[0] + beyond * along[0], tail[1] + beyond * along[1]]);
+                let middle = [0.4 * tip[0] + 0.6 * tail[0], 0.4 * tip[1] + 0.6 * tail[1]];
+                for side in [1.0, -1.0] {
+                    let normal = [-along[1] * side, along[0] * side];
+                    let away = half * normal[0].abs() + 10.0 * normal[1].abs() + 6.0;
+                    places.push([middle[0] + away * normal[0], middle[1] + away * normal[1]]);
+                }
+            }
+            // Off the metal first; the order is stable otherwise.
+            places.sort_by_key(|&p| self.metal_below(&Area::around(p, 2.0 * half, SIZE)));
+            let _ = places.iter().any(|&p| drawing.centred(self.lettering, text, p, 0.0, self.style(p, SIZE + 0.5, Weight::Strong, INK)));
+        }
+    }
+
+    fn metal_below(&self, area: &Area) -> usize {
+        let [x, y] = area.centre();
+        [[x, y], [area.left, area.top], [area.right, area.top], [area.left, area.bottom], [area.right, area.bottom]]
+            .into_iter()
+            .filter(|&p| self.share(p).is_some())
+            .count()
+    }
+
+    /// Numbered balloons with leaders, outside the metal where there is room.
+    pub fn balloons(&self, drawing: &mut Drawing) {
+        let mut leaders: Vec<[Spot; 2]> = Vec::new();
+        for view in self.views {
+            for mark in &view.panel.hotspots {
+                let at = view.frame.at(mark.at);
+                if let Some(place) = self.balloon_place(drawing, at, &leaders) {
+                    let number = mark.number.to_string();
+                    drawing.claim(Area::around(place, 2.0 * BALLOON + 3.0, 2.0 * BALLOON + 3.0), &number);
+                    let way = unit(place, at);
+                    let start = [place[0] + BALLOON * way[0], place[1] + BALLOON * way[1]];
+                    leaders.push([place, at]);
+                    drawing.marks.push(Mark::Lines(vec![vec![start, at]], 4.0, WHITE));
+                    drawing.marks.push(Mark::Lines(vec![vec![start, at]], 1.4, Ink::full(INK)));
+                    drawing.marks.push(Mark::Disc(at, 5.0, Ink::thin([255; 3], 0.95)));
+                    drawing.marks.push(Mark::Disc(at, 3.2, Ink::full(INK)));
+                    drawing.marks.push(Mark::Disc(place, BALLOON + 2.0, WHITE));
+                    drawing.marks.push(Mark::Disc(place, BALLOON, Ink::full([255; 3])));
+                    drawing.marks.push(Mark::Circle(place, BALLOON, 1.7, Ink::full(INK)));
+                    let size = if number.len() > 2 { 12.0 } else { 17.0 };
+                    let width = self.lettering.width(&number, size, Weight::Strong);
+                    let base = [place[0] - 0.5 * width, place[1] + 0.5 * CAPITAL * size];
+                    let steps = self.lettering.outline(&number, size, Weight::Strong, base, 0.0);
+                    drawing.marks.push(Mark::Glyphs(steps, Ink::full(INK), None));
+                }
+            }
+        }
+        for [a, b] in leaders {
+            // Words keep off leaders, piece by piece so that a slanting one does not block its whole box.
+            let pieces = (((b[0] - a[0]).hypot(b[1] - a[1])) / 8.0).ceil().max(1.0);
+            for piece in 0..=pieces as usize {
+                let t = piece as f64 / pieces;
+                drawing.occupied.take(Area::around([a[0] + t * (b[0] - a[0]), a[1] + t * (b[1] - a[1])], 5.0, 5.0));
+            }
+        }
+    }
+
+    /// The place with the least cost: near, off the metal, its leader short over metal and across nothing.
+    fn balloon_place(&self, drawing: &Drawing, at: Spot, leaders: &[[Spot; 2]]) -> Option<Spot> {
+        let mut best: Option<(f64, Spot)> = None;
+        for distance in [40.0, 52.0, 66.0, 84.0, 106.0, 134.0, 170.0, 215.0, 270.0, 340.0] {
+            // Nothing farther can be cheaper.
+            if best.is_some_and(|(cost, _)| cost < distance) {
+                break;
+            }
+            for turn in 0..32 {
+                let angle = std::f64::consts::TAU * (f64::from(turn) + 0.5) / 32.0;
+                let place = [at[0] + distance * angle.cos(), at[1] + distance * angle.sin()];
+                let area = Area::around(place, 2.0 * BALLOON + 4.0, 2.0 * BALLOON + 4.0);
+                if !drawing.occupied.is_free(&area.widened(3.0)) {
+                    continue;
+                }
+                let steps = (distance / 8.0).ceil();
+                let along = |k: f64| [at[0] + (place[0] - at[0]) * k / steps, at[1] + (place[1] - at[1]) * k / steps];
+                let over = (0..steps as usize).filter(|&k| self.share(along(k as f64)).is_some()).count() as f64 * 8.0;
+                let crossed = leaders.iter().filter(|l| cross(**l, [at, place])).count() as f64;
+                let blocked = drawing.occupied.crossed_by(at, place) as f64;
+                let cost = distance + 0.4 * over + 26.0 * self.metal_below(&area) as f64 + 400.0 * crossed + 30.0 * blocked;
+                if best.is_none_or(|(known, _)| cost < known) {
+                    best = Some((cost, place));
+                }
+            }
+        }
+        best.map(|(_, place)| place)
+    }
+
+    /// Amperes at spots: all of a panel or, where too few find room, none.
+    pub fn amperes(&self, drawing: &mut Drawing) {
+        for view in self.views {
+            let labelled: Vec<(&str, Area)> =
+                view.panel.spots.iter().filter_map(|s| Some((s.label.as_deref()?, around(&view.frame.all(&s.outline))?))).collect();
+            if labelled.is_empty() || labelled.len() > MOST_AMPERES {
+                continue;
+            }
+            let (marks, labels, places) = (drawing.marks.len(), drawing.labels.len(), drawing.occupied.count());
+            let written = labelled.iter().filter(|(text, area)| self.beside(drawing, text, area, SEA)).count();
+            if 4 * written < 3 * labelled.len() {
+                drawing.marks.truncate(marks);
+                drawing.labels.truncate(labels);
+                drawing.occupied.forget(places);
+            }
+        }
+    }
+
+    /// Words right, left, above or below a box.
+    fn beside(&self, drawing: &mut Drawing, text: &str, area: &Area, rgb: Rgb) -> bool {
+        let half = 0.5 * self.lettering.width(text, SIZE, Weight::Regular) + 2.0;
+        let ([x, y], gap) = (area.centre(), 4.0);
+        let high = 0.5 * (ABOVE + BELOW) * SIZE + 2.0;
+        let right = area.right + gap + half;
+        let left = area.left - gap - half;
+        let places = [
+            [right, y],
+            [left, y],
+            [x, area.top - high],
+            [x, area.bottom + high],
+            [right, y - high],
+            [right, y + high],
+            [left, y - high],
+            [left, y + high],
+        ];
+        places.into_iter().any(|p| drawing.centred(self.lettering, text, p, 0.0, self.style(p, SIZE, Weight::Regular, rgb)))
+    }
+
+    /// Names of electrodes, at or near where they belong.
+    pub fn names(&self, drawing: &mut Drawing) {
+        for view in self.views {
+            for (at, name) in &view.panel.names {
+                let (at, size) = (view.frame.at(*at), SIZE + 1.0);
+                let half = 0.5 * self.lettering.width(name, size, Weight::Strong) + 4.0;
+                let mut places = vec![at];
+                for distance in [1.0, 1.7, 2.6, 4.0] {
+                    let (x, y) = (half + 12.0 * distance, 18.0 * distance);
+                    places.extend([[at[0], at[1] - y], [at[0], at[1] + y], [at[0] + x, at[1]], [at[0] - x, at[1]]]);
+                    places.extend([[at[0] + x, at[1] - y], [at[0] - x, at[1] - y], [at[0] + x, at[1] + y], [at[0] - x, at[1] + y]]);
+                }
+                let _ = places.iter().any(|&p| drawing.centred(self.lettering, name, p, 0.0, self.style(p, size, Weight::Strong, SEA)));
+            }
+        }
+    }
+
+    /// Potentials along their lines; beyond their ends where the metal is too narrow.
+    pub fn potentials(&self, drawing: &mut Drawing, view: &View<'_>, contours: &[Contour], step: f64) {
+        let size = 13.0;
+        let mut order: Vec<&Contour> = contours.iter().collect();
+        // Round numbers first, long lines before short ones.
+        let rank = |level: i64| if level % 5 == 0 { 0 } else { 1 + level.rem_euclid(2) };
+        order.sort_by(|a, b| rank(a.level).cmp(&rank(b.level)).then(b.line.len().cmp(&a.line.len())));
+        let mut written: Vec<(i64, Spot)> = Vec::new();
+        for contour in &order {
+            let text = format!("{} mV", with_step(contour.level as f64 * step, step));
+            let width = self.lettering.width(&text, size, Weight::Regular);
+            let lengths = running_length(&contour.line);
+            let whole = lengths.last().copied().unwrap_or(0.0);
+            for share in [0.5, 0.38, 0.62, 0.26, 0.74, 0.16, 0.84] {
+                let (from, to) = (share * whole - 0.5 * width - 4.0, share * whole + 0.5 * width + 4.0);
+                if from < 0.0 || to > whole {
+                    continue;
+                }
+                let (a, b, m) = (
+                    at_length(&contour.line, &lengths, from),
+                    at_length(&contour.line, &lengths, to),
+                    at_length(&contour.line, &lengths, share * whole),
+                );
+                let centre = [0.5 * (a[0] + b[0]), 0.5 * (a[1] + b[1])];
+                let chord = (b[0] - a[0]).hypot(b[1] - a[1]);
+                let bent = (m[0] - centre[0]).hypot(m[1] - centre[1]) > 2.5 || chord < 0.97 * (to - from);
+                let crowded = view.line_distance(centre, step).is_none_or(|d| d < 13.0);
+                let near = written
+                    .iter()
+                    .any(|&(level, p)| (p[0] - centre[0]).hypot(p[1] - centre[1]) < if level == contour.level { 260.0 } else { 46.0 });
+                if bent || crowded || near {
+                    continue;
+                }
+                let angle = upright((b[1] - a[1]).atan2(b[0] - a[0]));
+                let area = turned(centre, width + 4.0, (ABOVE + BELOW) * size, angle);
+                if self.metal_below(&area.widened(2.0)) == 5
+                    && drawing.centred(self.lettering, &text, centre, angle, self.style(centre, size, Weight::Regular, INK))
+                {
+                    written.push((contour.level, centre));
+                    break;
+                }
+            }
+        }
+        if written.len() >= 4 {
+            return;
+        }
+        for contour in order {
+            let [first, second, ..] = contour.line[..] else { continue };
+            let [.., before, last] = contour.line[..] else { continue };
+            let text = format!("{} mV", with_step(contour.level as f64 * step, step));
+            let half = 0.5 * self.lettering.width(&text, size, Weight::Regular) + 4.0;
+            let mut ends = [(first, unit(second, first)), (last, unit(before, last))];
+            ends.sort_by(|a, b| b.0[1].total_cmp(&a.0[1]));
+            for (end, way) in ends {
+                let away = half * way[0].abs() + 9.0 * way[1].abs() + 5.0;
+                let place = [end[0] + away * way[0], end[1] + away * way[1]];
+                let near = written.iter().any(|&(_, p)| (p[0] - place[0]).hypot(p[1] - place[1]) < 2.0 * half + 16.0);
+                let style = Style { halo: None, ..self.style(place, size, Weight::Regular, GREY) };
+                if !near
+                    && self.metal_below(&Area::around(place, 2.0 * half, 13.0)) == 0
+                    && drawing.centred(self.lettering, &text, place, 0.0, style)
+                {
+                    written.push((contour.level, place));
+                    break;
+                }
+            }
+        }
+    }
+}
+
+/// The two arrows of a neck from outside, each as tip and tail.
+fn arrows([a, b]: [Spot; 2]) -> [[Spot; 2]; 2] {
+    let out = unit(b, a);
+    let far = |p: Spot, sense: f64| {
+        [[p[0] + 2.0 * sense * out[0], p[1] + 2.0 * sense * out[1]], [p[0] + 34.0 * sense * out[0], p[1] + 34.0 * sense * out[1]]]
+    };
+    [far(a, 1.0), far(b, -1.0)]
+}
+
+/// Unit vector from one place to another; to the right where they are the same.
+fn unit(a: Spot, b: Spot) -> Spot {
+    let (x, y) = (b[0] - a[0], b[1] - a[1]);
+    let length = x.hypot(y);
+    if length > 0.0 { [x / length, y / length] } else { [1.0, 0.0] }
+}
+
+/// The upright box around some places.
+fn around(places: &[Spot]) -> Option<Area> {
+    let first = *places.first()?;
+    Some(places.iter().fold(Area::spanning(first, first), |area, &[x, y]| Area {
+        left: area.left.min(x),
+        top: area.top.min(y),
+        right: area.right.max(x),
+        bottom: area.bottom.max(y),
+    }))
+}
+
+/// The angle turned by half a turn where words would stand on their head.
+fn upright(angle: f64) -> f64 {
+    use std::f64::consts::{FRAC_PI_2, PI};
+    if angle > FRAC_PI_2 - 0.02 {
+        angle - PI
+    } else if angle < -FRAC_PI_2 - 0.02 {
+        angle + PI
+    } else {
+        angle
+    }
+}
+
+fn cross([a, b]: [Spot; 2], [c, d]: [Spot; 2]) -> bool {
+    let side = |p: Spot, q: Spot, r: Spot| (q[0] - p[0]) * (r[1] - p[1]) - (q[1] - p[1]) * (r[0] - p[0]);
+    side(a, b, c) * side(a, b, d) < 0.0 && side(c, d, a) * side(c, d, b) < 0.0
+}
+
+fn running_length(line: &[Spot]) -> Vec<f64> {
+    let mut sum = 0.0;
+    let steps = line.windows(2).map(|w| (w[1][0] - w[0][0]).hypot(w[1][1] - w[0][1]));
+    std::iter::once(0.0)
+        .chain(steps.map(|step| {
+            sum += step;
+            sum
+        }))
+        .collect()
+}
+
+fn at_length(line: &[Spot], lengths: &[f64], wanted: f64) -> Spot {
+    let after = lengths.partition_point(|&l| l < wanted).clamp(1, line.len() - 1);
+    let (before, step) = (lengths[after - 1], lengths[after] - lengths[after - 1]);
+    let t = if step > 0.0 { (wanted - before) / step } else { 0.0 };
+    let (p, q) = (line[after - 1], line[after]);
+    [p[0] + t * (q[0] - p[0]), p[1] + t * (q[1] - p[1])]
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn words_never_stand_on_their_head() {
+        for degrees in -180..=180 {
+            let angle = upright(f64::from(degrees).to_radians());
+            assert!((-1.6..=1.56).contains(&angle), "{degrees}: {angle}");
+        }
+    }
+
+    #[test]
+    fn arrows_of_a_neck_stand_outside_and_point_at_each_other() {
+        let [one, two] = arrows([[0.0, 10.0], [0.0, 30.0]]);
+        assert_eq!(one, [[0.0, 8.0], [0.0, -24.0]]);
+        assert_eq!(two, [[0.0, 32.0], [0.0, 64.0]]);
+    }
+
+    #[test]
+    fn half_the_length_of_a_bent_line_is_where_it_should_be() {
+        let line = [[0.0, 0.0], [3.0, 0.0], [3.0, 5.0]];
+        let lengths = running_length(&line);
+        assert_eq!(lengths, vec![0.0, 3.0, 8.0]);
+        assert_eq!(at_length(&line, &lengths, 4.0), [3.0, 1.0]);
+        assert_eq!(at_length(&line, &lengths, 99.0)[0], 3.0);
+        assert!(cross([[0.0, 0.0], [2.0, 2.0]], [[0.0, 2.0], [2.0, 0.0]]));
+        assert!(!cross([[0.0, 0.0], [2.0, 2.0]], [[3.0, 2.0], [5.0, 0.0]]));
+    }
+}
