@@ -101,12 +101,7 @@ fn every_published_figure_lies_inside_its_interval_at_three_accuracies() {
     for (name, case) in &cases {
         let problem = read(&case.sheet, &case.outlines);
         for percent in [1.0, 0.1, 0.02] {
-            let t = std::time::Instant::now();
-            let f = solved(&problem, percent);
-            eprintln!("{name} {percent} {:?} {} v {} rounds", t.elapsed(), f.run.vertices, f.run.rounds);
-            let w = complaints(name, case, &f, percent, 0.0);
-            for x in &w { eprintln!("  WRONG {x}"); }
-            wrong.extend(w);
+            wrong.extend(complaints(name, case, &solved(&problem, percent), percent, 0.0));
         }
     }
     assert!(wrong.is_empty(), "{}", wrong.join("\n"));
@@ -126,9 +121,7 @@ fn every_published_figure_survives_turning_mirroring_shifting_and_scaling() {
         for (change, similarity) in &changes {
             // Points are rounded to a grid of 1e-6 mm and merged within 1e-4 mm: felt by a drawing of less than a millimetre.
             let rounding = if similarity.scale < 1.0 { 5e-4 } else { 2e-6 };
-            let t = std::time::Instant::now();
             let findings = solved(&similarity.of(&problem), 0.1);
-            eprintln!("{name} {change} {:?} {} v {} rounds reached {}", t.elapsed(), findings.run.vertices, findings.run.rounds, findings.run.reached);
             wrong.extend(complaints(&format!("{name} {change}"), case, &findings, 0.1, rounding));
         }
     }

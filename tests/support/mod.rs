@@ -3,8 +3,8 @@
 pub mod random;
 pub mod transform;
 
-use pinchbar::findings::{self, Enclosure, Findings};
-use pinchbar::physics::{self, Solution};
+use pinchbar::findings::{self, Enclosure, Findings, Found};
+use pinchbar::physics;
 use pinchbar::problem::Problem;
 use pinchbar::reading;
 use std::collections::BTreeMap;
@@ -34,8 +34,8 @@ pub fn read_file(job: &Path) -> Problem {
     }
 }
 
-/// Solves a problem; faults are told to the caller.
-pub fn attempt(problem: &Problem) -> Result<(Findings, Solution), String> {
+/// Solves a problem and looks for hotspots; faults are told to the caller.
+pub fn attempt(problem: &Problem) -> Result<Found, String> {
     let solution = physics::run(problem).map_err(|faults| format!("{faults:?}"))?;
     findings::find(problem, solution).map_err(|faults| format!("{faults:?}"))
 }
@@ -44,7 +44,7 @@ pub fn attempt(problem: &Problem) -> Result<(Findings, Solution), String> {
 pub fn solved(problem: &Problem, bracket_percent: f64) -> Findings {
     let mut problem = problem.clone();
     problem.accuracy.bracket = bracket_percent / 100.0;
-    attempt(&problem).unwrap_or_else(|faults| panic!("not solved: {faults}")).0
+    attempt(&problem).unwrap_or_else(|faults| panic!("not solved: {faults}")).findings
 }
 
 /// Solves a sheet held in memory to a bracket in per cent.
