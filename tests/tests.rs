@@ -1,0 +1,8 @@
+//! One integration binary: the themes are its modules.
+
+mod convergence;
+mod demos;
+mod laws;
+mod published;
+mod refusals;
+mod support;
