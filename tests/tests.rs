@@ -1,8 +1,9 @@
 //! One integration binary: the themes are its modules.
 
+mod commands;
 mod convergence;
-mod demos;
 mod laws;
+mod pictures;
 mod published;
 mod refusals;
 mod support;

@@ -86,9 +86,7 @@ pub fn figure(findings: &Findings, name: &str) -> Option<Figure> {
         ["probes", who, "drop_mv"] => findings.probes.iter().find(|p| p.name == *who).map(|p| Figure::Enclosed(p.drop_mv)),
         ["contacts", who, "current_a"] => findings.contacts.iter().find(|c| c.name == *who)?.current_a.map(Figure::Plain),
         ["crossings", who, "total"] => findings.crossings.iter().find(|c| c.name == *who).map(|c| Figure::Plain(c.total_a)),
-        ["crossings", who, layer] => {
-            findings.crossings.iter().find(|c| c.name == *who)?.current_a.get(*layer).copied().map(Figure::Plain)
-        }
+        ["crossings", who, layer] => findings.crossings.iter().find(|c| c.name == *who)?.current_a.get(*layer).copied().map(Figure::Plain),
         _ => None,
     }
 }
