@@ -79,3 +79,32 @@ pub fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
         ),
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::reading::{Reading, read};
+    use std::path::Path;
+
+    const SHEET: &str = "[[layer]]\nname = \"a\"\nthickness_mm = 1\nresistivity_uohm_cm = 2\npoints_mm = [[0, 0], [9, 0], [9, 5], [0, 5]]\n\
+                         [[terminal]]\nname = \"in\"\nlayer = \"a\"\nline_mm = [[0, 0], [0, 5]]\ncurrent_a = 1\n\
+                         [[terminal]]\nname = \"out\"\nlayer = \"a\"\nline_mm = [[9, 0], [9, 5]]\n";
+
+    #[test]
+    fn late_faults_lead_back_to_their_lines_with_a_remedy() {
+        let Reading { problem, origins, .. } = read(Path::new("job.toml"), &|_| Ok(SHEET.into())).expect("a valid sheet");
+        let [a, b] = [0, 1].map(ElectrodeId::new);
+        let cases = [
+            (Late::ElectrodesMeet([a, b]), 12, "`in` and `out`"),
+            (Late::Unbalanced { electrodes: vec![a, b], sum: 0.5 }, 7, "add up to 0.5 A"),
+            (Late::BalanceUnclear(vec![b]), 12, "`out` cannot take the balance"),
+            (Late::SpotOff(a), 7, "`in`"),
+        ];
+        for (late, line, part) in cases {
+            let fault = placed(&late, &problem, &origins);
+            assert!(!is_ours(&late) && fault.message.contains(part), "{fault:?}");
+            assert_eq!(fault.span.map(|s| s.line_column().0), Some(line), "{}", fault.message);
+            assert!(fault.remedy.is_some_and(|r| !r.is_empty()) && fault.expected.is_some(), "{}", fault.message);
+        }
+    }
+}

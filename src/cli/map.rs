@@ -129,10 +129,8 @@ fn show(
     } else if !request.quiet {
         terminal::print(&report::table::summary(findings))?;
     }
-    if !request.quiet {
-        if let Some(folder) = &folder {
-            terminal::say(&format!("picture, tables and report are in {}", folder.path().display()));
-        }
+    if let (Some(folder), false) = (&folder, request.quiet) {
+        terminal::say(&format!("picture, tables and report are in {}", folder.path().display()));
     }
     if !findings.run.reached {
         terminal::say("the accuracy asked for was not reached within the vertex limit; the intervals hold, but are wider");

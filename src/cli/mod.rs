@@ -11,6 +11,7 @@ pub mod terminal;
 
 use args::{Command, Common};
 use std::ffi::OsString;
+use std::panic::AssertUnwindSafe;
 use std::process::ExitCode;
 
 /// How a command ended.
@@ -34,6 +35,14 @@ impl From<Ending> for ExitCode {
 
 /// Runs the command line and tells its exit status.
 pub fn run(arguments: impl Iterator<Item = OsString>) -> ExitCode {
+    // A defect of ours must not look like bad input or a broken limit; the panic itself has been printed already.
+    std::panic::catch_unwind(AssertUnwindSafe(|| dispatched(arguments))).unwrap_or_else(|_| {
+        terminal::say("this is a defect of the tool, not of the job; the results are not written");
+        Ending::Failed.into()
+    })
+}
+
+fn dispatched(arguments: impl Iterator<Item = OsString>) -> ExitCode {
     let line = match args::parse(arguments) {
         Ok(line) => line,
         Err((text, true)) => {

@@ -26,7 +26,7 @@ pub fn hotspots(findings: &Findings) -> Result<Vec<u8>, String> {
     ];
     let rows = findings.hotspots.iter().map(|h| {
         let mut row = vec![h.rank.to_string(), words::kind(h.kind).into(), h.layer.clone()];
-        row.extend([h.x_mm, h.y_mm, h.peak_a_mm2, h.gauge_mm].map(|v| v.to_string()));
+        row.extend([h.x_mm, h.y_mm, h.peak_a_mm2, h.gauge_mm].map(|v| cell(Some(v))));
         row.extend([h.width_mm, h.section_a, h.section_a_mm2, h.crowding, h.drop_mv, h.loss_w].map(cell));
         row.push(h.remark.clone().unwrap_or_default());
         row
@@ -43,7 +43,7 @@ pub fn welds(findings: &Findings) -> Result<Vec<u8>, String> {
     let electrodes = findings.electrodes.iter().flat_map(|e| {
         e.spots.iter().enumerate().map(move |(i, s)| {
             let mut row = vec![e.name.clone(), e.kind.into(), e.group.clone().unwrap_or_default(), (i + 1).to_string()];
-            row.extend([s.x_mm, s.y_mm, s.current_a, s.drop_mv, s.share_percent].map(|v| v.to_string()));
+            row.extend([s.x_mm, s.y_mm, s.current_a, s.drop_mv, s.share_percent].map(|v| cell(Some(v))));
             row.push(cell(s.rim_a_mm2));
             row
         })
@@ -57,8 +57,9 @@ pub fn welds(findings: &Findings) -> Result<Vec<u8>, String> {
     written(&header, electrodes.chain(joins))
 }
 
+/// A figure with all its digits; nothing where there is none.
 fn cell(value: Option<f64>) -> String {
-    value.map_or(String::new(), |v| v.to_string())
+    value.filter(|v| v.is_finite()).map_or(String::new(), |v| v.to_string())
 }
 
 fn written(header: &[&str], rows: impl Iterator<Item = Vec<String>>) -> Result<Vec<u8>, String> {
@@ -68,4 +69,16 @@ fn written(header: &[&str], rows: impl Iterator<Item = Vec<String>>) -> Result<V
         writer.write_record(row).map_err(|e| e.to_string())?;
     }
     writer.into_inner().map_err(|e| e.to_string())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn names_are_quoted_and_what_is_not_known_is_left_empty() {
+        let row = vec!["a,\"b\"".to_string(), cell(Some(0.1)), cell(None), cell(Some(f64::NAN))];
+        let text = written(&["name", "current_a", "drop_mv", "loss_w"], [row].into_iter()).expect("rows in memory");
+        assert_eq!(String::from_utf8(text).expect("UTF-8"), "name,current_a,drop_mv,loss_w\n\"a,\"\"b\"\"\",0.1,,\n");
+    }
 }

@@ -9,3 +9,14 @@ use serde::Serialize;
 pub fn json(value: &impl Serialize) -> Result<String, String> {
     serde_json::to_string_pretty(value).map(|text| text + "\n").map_err(|e| e.to_string())
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn figures_keep_their_digits_and_what_is_not_finite_is_null() {
+        let text = json(&[0.1 + 0.2, f64::NAN, f64::INFINITY]).expect("a list can be written");
+        assert_eq!(text, "[\n  0.30000000000000004,\n  null,\n  null\n]\n");
+    }
+}
