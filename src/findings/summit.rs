@@ -46,7 +46,9 @@ impl Nodes {
             return None;
         }
         let tip = mesh.points[vertex as usize];
-        Some(Place { triangle, point: tip + (metal.at(triangle).middle() - tip) * 1e-3 })
+        let inward = metal.at(triangle).middle() - tip;
+        let part = (0.02 * metal.gauge / inward.norm()).min(0.5);
+        Some(Place { triangle, point: tip + inward * part })
     }
 
     /// Vertices of at least this value from which every way to a higher one leads down by [`PROMINENCE`].
