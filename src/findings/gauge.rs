@@ -173,7 +173,7 @@ impl<'a> Disc<'a> {
                     metal.moved(aside, aside.point - inward * 2.0)
                 });
                 let across = [inward, -inward].map(|way| metal.moved(at, at.point + way));
-                pressed.into_iter().chain(across).chain(WAYS.map(|(x, y)| metal.moved(at, at.point + Point::new(x, y) * step))).collect()
+                pressed.into_iter().chain(across).collect()
             } else {
                 WAYS.iter().map(|&(x, y)| metal.moved(at, at.point + Point::new(x, y) * step)).collect()
             };

@@ -46,9 +46,7 @@ impl Nodes {
             return None;
         }
         let tip = mesh.points[vertex as usize];
-        let inward = metal.at(triangle).middle() - tip;
-        let part = (0.02 * metal.gauge / inward.norm()).min(0.5);
-        Some(Place { triangle, point: tip + inward * part })
+        Some(Place { triangle, point: tip + (metal.at(triangle).middle() - tip) * 1e-3 })
     }
 
     /// Vertices of at least this value from which every way to a higher one leads down by [`PROMINENCE`].
