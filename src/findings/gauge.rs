@@ -170,7 +170,7 @@ impl<'a> Disc<'a> {
                 let inward = inward * (step / inward.norm());
                 let pressed = [inward.perpendicular(), -inward.perpendicular()].map(|side| {
                     let aside = metal.moved(at, at.point + inward * 0.5 + side);
-                    metal.moved(aside, aside.point - inward)
+                    metal.moved(aside, aside.point - inward * 2.0)
                 });
                 let across = [inward, -inward].map(|way| metal.moved(at, at.point + way));
                 pressed.into_iter().chain(across).collect()

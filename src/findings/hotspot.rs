@@ -19,6 +19,9 @@ pub const MOST_ROWS: usize = 20;
 /// A row's gauge peak exceeds its section's mean (at a weld rim: its surroundings) by this factor, unless it is a neck.
 const CROWDING: f64 = 1.05;
 
+/// Width of a spot's surroundings in gauge diameters.
+const AROUND: f64 = 4.0;
+
 /// Places below this part of their sheet's highest are not looked at.
 const FLOOR: f64 = 0.25;
 
@@ -48,7 +51,8 @@ pub struct Survey {
     pub places: Vec<HotspotPlace>,
     /// Per sheet: the largest gauge mean, A/mm².
     pub layer_peaks: Vec<f64>,
-    /// Gauge discs (sheet, centre, diameter) of rows and sheets' peaks with a triangle under them longer than a quarter of their diameter.
+    /// Discs (sheet, centre, diameter) at rows and sheets' peaks with a triangle under them longer than a quarter of their diameter: gauge discs
+    /// and wider ones around them.
     pub unresolved: Vec<(LayerId, Point, f64)>,
 }
 
@@ -71,6 +75,8 @@ struct Candidate {
     place: Place,
     peak: f64,
     covered: Covered,
+    /// Under a disc [`AROUND`] times as wide.
+    around: Covered,
     section: Option<Section>,
     character: Character,
     /// Of a weld rim: length and current.
@@ -81,8 +87,14 @@ struct Candidate {
 }
 
 impl Candidate {
-    fn unresolved(&self, metal: &LayerMetal) -> bool {
-        self.character.kind != HotspotKind::Strip && self.covered.longest > 0.25 * metal.gauge
+    /// Discs under which the mesh is too coarse: the gauge disc, and a wider one, from which a coarse mesh would spoil the field within.
+    fn unresolved(&self, metal: &LayerMetal) -> Vec<(LayerId, Point, f64)> {
+        if self.character.kind == HotspotKind::Strip {
+            return Vec::new();
+        }
+        let discs = [(&self.covered, metal.gauge), (&self.around, AROUND * metal.gauge)];
+        let coarse = discs.into_iter().filter(|(covered, diameter)| covered.longest > 0.25 * diameter);
+        coarse.map(|(_, diameter)| (metal.layer, self.place.point, diameter)).collect()
     }
 
     /// Order of equals: from left to right, then upwards, in steps of the gauge.
@@ -106,9 +118,7 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
         let highest = candidates.iter().max_by(|a, b| a.peak.total_cmp(&b.peak));
         if let Some(highest) = highest {
             survey.layer_peaks[metal.layer.index()] = highest.peak;
-            if highest.unresolved(metal) {
-                survey.unresolved.push((metal.layer, highest.place.point, metal.gauge));
-            }
+            survey.unresolved.extend(highest.unresolved(metal));
         }
         found.extend(candidates.into_iter().filter(|c| c.exceeds).map(|c| (metal.layer, c)));
     }
@@ -129,9 +139,9 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
     for (layer, c) in &found {
         let metal = &density.layers[layer.index()];
         survey.places.push(HotspotPlace { layer: *layer, centre: c.place.point, section_ends: c.section.map(|s| s.ends) });
-        for each in c.twins.iter().chain([c]).filter(|each| each.unresolved(metal)) {
-            if !survey.unresolved.contains(&(*layer, each.place.point, metal.gauge)) {
-                survey.unresolved.push((*layer, each.place.point, metal.gauge));
+        for coarse in c.twins.iter().chain([c]).flat_map(|each| each.unresolved(metal)) {
+            if !survey.unresolved.contains(&coarse) {
+                survey.unresolved.push(coarse);
             }
         }
     }
@@ -213,6 +223,7 @@ fn strip(setting: &Setting, metal: &LayerMetal) -> Option<Candidate> {
 
 fn candidate(setting: &Setting, metal: &LayerMetal, rims: &[(f64, f64)], disc: &mut Disc, (peak, place): (f64, Place)) -> Candidate {
     let covered = disc.mean(place, metal.gauge);
+    let around = disc.mean(place, AROUND * metal.gauge);
     let touched = kind::Touched::new(setting, metal, disc, place);
     let (mut rim, mut section) = (None, None);
     if let Some(area) = touched.weld {
@@ -229,10 +240,10 @@ fn candidate(setting: &Setting, metal: &LayerMetal, rims: &[(f64, f64)], disc: &
     let character = kind::character(setting, metal, &touched, place, section.as_ref());
     let exceeds = match character.kind {
         HotspotKind::Neck => true,
-        HotspotKind::WeldRim => peak >= CROWDING * disc.mean(place, 4.0 * metal.gauge).mean,
+        HotspotKind::WeldRim => peak >= CROWDING * around.mean,
         _ => section.is_none_or(|s| peak * s.width * metal.thickness >= CROWDING * s.current.abs()),
     };
-    Candidate { place, peak, covered, section, character, rim, exceeds, twins: Vec::new() }
+    Candidate { place, peak, covered, around, section, character, rim, exceeds, twins: Vec::new() }
 }
 
 /// True when two places are one: the same spot's rim, the same neck, or corners or edges of one ring within a section width.
