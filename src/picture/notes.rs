@@ -434,7 +434,37 @@ fn piece(line: &[Spot], lengths: &[f64], from: f64, to: f64) -> Vec<Spot> {
 
 #[cfg(test)]
 mod tests {
+    use super::super::arrange::arrange;
+    use super::super::contour::contours;
+    use super::super::scale::Scale;
+    use super::super::{Panel, Point};
     use super::*;
+
+    #[test]
+    fn a_line_ends_well_before_its_number() {
+        let corners = [(0.0, 0.0), (40.0, 0.0), (40.0, 20.0), (0.0, 20.0)].map(|(x, y)| Point::new(x, y)).to_vec();
+        let panels = [Panel {
+            points: corners.clone(),
+            loops: vec![corners],
+            triangles: vec![[0, 1, 2], [0, 2, 3]],
+            values: vec![1.0; 2],
+            potential_mv: vec![-8.0, 8.0, 8.0, -8.0],
+            ..Panel::default()
+        }];
+        let frame = arrange(&panels, &[0.0], 0.0, |_, _| 100.0).frames[0];
+        let views = [View::new(&panels[0], frame, &Scale::new(&panels))];
+        let (lettering, ramp) = (Lettering::new().unwrap(), Ramp::new());
+        let mut drawing = Drawing::new(1600, 1200);
+        let mut lines = contours(&views[0].corners, &panels[0].triangles, &panels[0].potential_mv, 2.0, (-9, 9));
+        let before = lines.len();
+        Notes { views: &views, lettering: &lettering, ramp: &ramp }.potentials(&mut drawing, &views[0], &mut lines, 2.0);
+        assert!(drawing.labels.len() >= 5 && lines.len() == before + drawing.labels.len());
+        for label in &drawing.labels {
+            // The box reaches 2 px beyond the words.
+            let kept_free = label.area.widened(OPEN - 2.5);
+            assert!(!lines.iter().any(|c| c.line.windows(2).any(|w| kept_free.crossed_by(w[0], w[1]))), "{label:?}");
+        }
+    }
 
     #[test]
     fn words_never_stand_on_their_head() {
