@@ -45,7 +45,7 @@ pub fn compose<'a>(sheet: &'a Sheet, lettering: &Lettering) -> Scene<'a> {
     legend::title(&mut drawing, lettering, sheet, MARGIN);
     let per_mm = page.frames.first().map_or(1.0, |frame| frame.scale);
     Legend { sheet, scale: &scale, per_mm, lettering }.write(&mut drawing, page.legend.0, page.legend.1, page.beside);
-    let lines: Vec<Vec<Contour>> = views.iter().map(|view| equipotentials(view, &scale)).collect();
+    let mut lines: Vec<Vec<Contour>> = views.iter().map(|view| equipotentials(view, &scale)).collect();
     for view in &views {
         heading(&mut drawing, lettering, view);
     }
@@ -57,7 +57,7 @@ pub fn compose<'a>(sheet: &'a Sheet, lettering: &Lettering) -> Scene<'a> {
     notes.amperes(&mut drawing);
     notes.names(&mut drawing);
     if let Some(step) = scale.potential_step {
-        for (view, lines) in views.iter().zip(&lines) {
+        for (view, lines) in views.iter().zip(&mut lines) {
             notes.potentials(&mut drawing, view, lines, step);
         }
     }

@@ -63,19 +63,22 @@ impl Lettering {
         text.chars().filter(|c| !c.is_control()).map(|c| f64::from(font.h_advance_unscaled(font.glyph_id(c)))).sum::<f64>() * size / em
     }
 
-    /// The line shortened with an ellipsis until it is no wider than `room`.
+    /// The line shortened with an ellipsis until it is no wider than `room`; empty where not even the ellipsis fits.
     pub fn fitted(&self, text: &str, size: f64, weight: Weight, room: f64) -> String {
-        if self.width(text, size, weight) <= room {
-            return text.to_string();
-        }
-        let mut kept: String = text.to_string();
-        while kept.pop().is_some() {
-            let shortened = format!("{}…", kept.trim_end());
-            if self.width(&shortened, size, weight) <= room {
-                return shortened;
+        let ellipsis = self.width("…", size, weight);
+        let (mut width, mut kept) = (0.0, 0);
+        // One pass, so that a very long word costs no more than its length.
+        for (at, c) in text.char_indices() {
+            let end = at + c.len_utf8();
+            width += self.width(&text[at..end], size, weight);
+            if width > room {
+                return if ellipsis <= room { format!("{}…", text[..kept].trim_end()) } else { String::new() };
+            }
+            if width + ellipsis <= room {
+                kept = end;
             }
         }
-        String::new()
+        text.to_string()
     }
 
     /// The text in lines no wider than `room`, broken at blanks; a longer word is shortened.
@@ -159,6 +162,19 @@ mod tests {
         assert!(lines.last().unwrap().ends_with('…'));
         assert_eq!(lettering.wrapped("  ", 14.0, Weight::Regular, 120.0), Vec::<String>::new());
         assert_eq!(lettering.fitted("abc", 14.0, Weight::Regular, 0.0), "");
+    }
+
+    #[test]
+    fn a_shortened_word_keeps_as_much_as_fits() {
+        let lettering = Lettering::new().unwrap();
+        let width = |t: &str| lettering.width(t, 14.0, Weight::Regular);
+        let word = "Übergabe".repeat(20_000);
+        let fitted = lettering.fitted(&word, 14.0, Weight::Regular, 300.0);
+        let kept = fitted.trim_end_matches('…');
+        let longer: String = word.chars().take(kept.chars().count() + 1).collect();
+        assert!(word.starts_with(kept) && width(&fitted) <= 300.0, "{fitted}");
+        assert!(width(&format!("{longer}…")) > 300.0, "{fitted}");
+        assert_eq!(lettering.fitted("Übergabe", 14.0, Weight::Regular, 300.0), "Übergabe");
     }
 
     #[test]

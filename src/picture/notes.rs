@@ -21,6 +21,8 @@ const WHITE: Ink = Ink::thin([255, 255, 255], 0.85);
 const BALLOON: f64 = 14.5;
 /// Size of the words over a panel, px.
 const SIZE: f64 = 14.5;
+/// Room between the words of a potential and its line, px.
+const OPEN: f64 = 8.0;
 /// More amperes than this in one panel are not written: they are in the table.
 const MOST_AMPERES: usize = 90;
 
@@ -252,22 +254,25 @@ impl Notes<'_> {
         }
     }
 
-    /// Potentials along their lines; beyond their ends where the metal is too narrow.
-    pub fn potentials(&self, drawing: &mut Drawing, view: &View<'_>, contours: &[Contour], step: f64) {
+    /// Potentials along their lines; beyond their ends where the metal is too narrow. A line is cut open for its words: run up to a number,
+    /// it would read as a minus sign.
+    pub fn potentials(&self, drawing: &mut Drawing, view: &View<'_>, contours: &mut Vec<Contour>, step: f64) {
         let size = 13.0;
-        let mut order: Vec<&Contour> = contours.iter().collect();
+        let mut order: Vec<usize> = (0..contours.len()).collect();
         // Round numbers first, long lines before short ones.
         let rank = |level: i64| if level % 5 == 0 { 0 } else { 1 + level.rem_euclid(2) };
-        order.sort_by(|a, b| rank(a.level).cmp(&rank(b.level)).then(b.line.len().cmp(&a.line.len())));
+        order.sort_by_key(|&n| (rank(contours[n].level), std::cmp::Reverse(contours[n].line.len())));
         let patches = patches_of(view);
         let mut written: Vec<(i64, Spot)> = Vec::new();
-        for contour in &order {
+        let mut rests: Vec<Contour> = Vec::new();
+        for &number in &order {
+            let contour = &contours[number];
             let text = format!("{} mV", with_step(contour.level as f64 * step, step));
             let width = self.lettering.width(&text, size, Weight::Regular);
             let lengths = running_length(&contour.line);
             let whole = lengths.last().copied().unwrap_or(0.0);
             for share in [0.5, 0.38, 0.62, 0.26, 0.74, 0.16, 0.84] {
-                let (from, to) = (share * whole - 0.5 * width - 4.0, share * whole + 0.5 * width + 4.0);
+                let (from, to) = (share * whole - 0.5 * width - OPEN, share * whole + 0.5 * width + OPEN);
                 if from < 0.0 || to > whole {
                     continue;
                 }
@@ -293,14 +298,26 @@ impl Notes<'_> {
                     && drawing.centred(self.lettering, &text, centre, angle, self.style(centre, size, Weight::Regular, INK))
                 {
                     written.push((contour.level, centre));
+                    rests.extend(
+                        [(0.0, from), (to, whole)]
+                            .map(|(a, b)| Contour { level: contour.level, line: piece(&contour.line, &lengths, a, b) }),
+                    );
+                    contours[number].line.clear();
                     break;
                 }
             }
         }
-        if written.len() >= 4 {
-            return;
+        if written.len() < 4 {
+            self.beyond(drawing, order.iter().map(|&number| &contours[number]), step, &mut written);
         }
-        for contour in order {
+        contours.retain(|contour| !contour.line.is_empty());
+        contours.extend(rests);
+    }
+
+    /// Potentials off the metal, beyond the ends of lines that have no words yet.
+    fn beyond<'a>(&self, drawing: &mut Drawing, contours: impl Iterator<Item = &'a Contour>, step: f64, written: &mut Vec<(i64, Spot)>) {
+        let size = 13.0;
+        for contour in contours {
             if written.iter().any(|&(level, _)| level == contour.level) {
                 continue;
             }
@@ -409,9 +426,45 @@ fn at_length(line: &[Spot], lengths: &[f64], wanted: f64) -> Spot {
     [p[0] + t * (q[0] - p[0]), p[1] + t * (q[1] - p[1])]
 }
 
+/// The line between two running lengths.
+fn piece(line: &[Spot], lengths: &[f64], from: f64, to: f64) -> Vec<Spot> {
+    let between = line.iter().zip(lengths).filter(|&(_, &l)| l > from && l < to).map(|(&p, _)| p);
+    std::iter::once(at_length(line, lengths, from)).chain(between).chain([at_length(line, lengths, to)]).collect()
+}
+
 #[cfg(test)]
 mod tests {
+    use super::super::arrange::arrange;
+    use super::super::contour::contours;
+    use super::super::scale::Scale;
+    use super::super::{Panel, Point};
     use super::*;
+
+    #[test]
+    fn a_line_ends_well_before_its_number() {
+        let corners = [(0.0, 0.0), (40.0, 0.0), (40.0, 20.0), (0.0, 20.0)].map(|(x, y)| Point::new(x, y)).to_vec();
+        let panels = [Panel {
+            points: corners.clone(),
+            loops: vec![corners],
+            triangles: vec![[0, 1, 2], [0, 2, 3]],
+            values: vec![1.0; 2],
+            potential_mv: vec![-8.0, 8.0, 8.0, -8.0],
+            ..Panel::default()
+        }];
+        let frame = arrange(&panels, &[0.0], 0.0, |_, _| 100.0).frames[0];
+        let views = [View::new(&panels[0], frame, &Scale::new(&panels))];
+        let (lettering, ramp) = (Lettering::new().unwrap(), Ramp::new());
+        let mut drawing = Drawing::new(1600, 1200);
+        let mut lines = contours(&views[0].corners, &panels[0].triangles, &panels[0].potential_mv, 2.0, (-9, 9));
+        let before = lines.len();
+        Notes { views: &views, lettering: &lettering, ramp: &ramp }.potentials(&mut drawing, &views[0], &mut lines, 2.0);
+        assert!(drawing.labels.len() >= 5 && lines.len() == before + drawing.labels.len());
+        for label in &drawing.labels {
+            // The box reaches 2 px beyond the words.
+            let kept_free = label.area.widened(OPEN - 2.5);
+            assert!(!lines.iter().any(|c| c.line.windows(2).any(|w| kept_free.crossed_by(w[0], w[1]))), "{label:?}");
+        }
+    }
 
     #[test]
     fn words_never_stand_on_their_head() {
@@ -435,6 +488,7 @@ mod tests {
         assert_eq!(lengths, vec![0.0, 3.0, 8.0]);
         assert_eq!(at_length(&line, &lengths, 4.0), [3.0, 1.0]);
         assert_eq!(at_length(&line, &lengths, 99.0)[0], 3.0);
+        assert_eq!(piece(&line, &lengths, 1.0, 5.0), vec![[1.0, 0.0], [3.0, 0.0], [3.0, 2.0]]);
         assert!(cross([[0.0, 0.0], [2.0, 2.0]], [[0.0, 2.0], [2.0, 0.0]]));
         assert!(!cross([[0.0, 0.0], [2.0, 2.0]], [[3.0, 2.0], [5.0, 0.0]]));
     }
