@@ -1,7 +1,9 @@
 //! One integration binary: the themes are its modules.
 
+mod commands;
 mod convergence;
 mod demos;
+mod inventory;
 mod laws;
 mod published;
 mod refusals;
