@@ -2,6 +2,8 @@
 
 mod commands;
 mod convergence;
+mod demos;
+mod inventory;
 mod laws;
 mod pictures;
 mod published;

@@ -1,13 +1,14 @@
 //! `pinchbar check`: read, validate, print the inventory; solve nothing.
 
-use super::{Ending, files, map, terminal};
+use super::{Ending, files, late, map, terminal};
 use crate::diagnostic::Fault;
-use crate::reading;
+use crate::physics::connections;
+use crate::reading::{self, Reading};
 use crate::report::inventory::{Inventory, inventory, text};
 use crate::report::json::json;
 use serde::Serialize;
 use std::io;
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 
 /// One job as JSON.
 #[derive(Serialize)]
@@ -38,7 +39,14 @@ pub fn run(jobs: &[PathBuf], as_json: bool, quiet: bool) -> io::Result<Ending> {
     let mut list = Vec::new();
     for (number, job) in jobs.iter().enumerate() {
         let name = job.display().to_string();
-        match reading::read(job, &files::load) {
+        let checked = match read(job) {
+            Ok(checked) => checked,
+            Err(ours) => {
+                terminal::say(&format!("{name}: {ours}"));
+                return Ok(Ending::Failed);
+            }
+        };
+        match checked {
             Ok(reading) => {
                 let found = inventory(&reading.problem, reading.remarks);
                 if as_json {
@@ -58,6 +66,21 @@ pub fn run(jobs: &[PathBuf], as_json: bool, quiet: bool) -> io::Result<Ending> {
         terminal::print(&json(&list).map_err(io::Error::other)?)?;
     }
     Ok(ending)
+}
+
+/// A job with all that is wrong with it, also what only its mesh shows; the outer error is a failure of the tool.
+fn read(job: &Path) -> Result<Result<Reading, Vec<Fault>>, String> {
+    let reading = match reading::read(job, &files::load) {
+        Ok(reading) => reading,
+        Err(faults) => return Ok(Err(faults)),
+    };
+    match connections::check(&reading.problem) {
+        Ok(()) => Ok(Ok(reading)),
+        Err(faults) => match faults.iter().find(|f| late::is_ours(f)) {
+            Some(ours) => Err(ours.to_string()),
+            None => Ok(Err(faults.iter().map(|f| late::placed(f, &reading.problem, &reading.origins)).collect())),
+        },
+    }
 }
 
 fn told(fault: &Fault) -> Told {

@@ -102,7 +102,8 @@ pub fn refined_until_enclosed(problem: &Problem, plan: &Plan, mut mesh: Mesh, mu
     }
 }
 
-fn from_complex(fault: ComplexFault) -> Fault {
+/// The fault in terms of layers and electrodes.
+pub fn from_complex(fault: ComplexFault) -> Fault {
     match fault {
         ComplexFault::PolesMeet { poles, .. } => Fault::ElectrodesMeet(poles.map(ElectrodeId)),
         ComplexFault::NoPole { layers, at } => Fault::Loose { layer: LayerId(layers.trailing_zeros()), at },

@@ -3,6 +3,7 @@
 pub mod account;
 pub mod adapt;
 pub mod bar;
+pub mod connections;
 pub mod enclose;
 pub mod network;
 pub mod pieces;
