@@ -4,5 +4,6 @@ mod convergence;
 mod demos;
 mod laws;
 mod published;
+mod pictures;
 mod refusals;
 mod support;

@@ -26,13 +26,6 @@ pub fn read(sheet: &str, outlines: &BTreeMap<String, String>) -> Problem {
     }
 }
 
-/// Reads a sheet from the project's folder.
-pub fn read_file(job: &Path) -> Problem {
-    match reading::read(job, &|path| std::fs::read_to_string(path)) {
-        Ok(reading) => reading.problem,
-        Err(faults) => panic!("{} was refused: {faults:#?}", job.display()),
-    }
-}
 
 /// Solves a problem and looks for hotspots; faults are told to the caller.
 pub fn attempt(problem: &Problem) -> Result<Found, String> {
