@@ -3,7 +3,7 @@
 mod convergence;
 mod demos;
 mod laws;
-mod published;
 mod pictures;
+mod published;
 mod refusals;
 mod support;

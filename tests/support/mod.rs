@@ -26,12 +26,11 @@ pub fn read(sheet: &str, outlines: &BTreeMap<String, String>) -> Problem {
     }
 }
 
-
 /// Solves a problem to a bracket in per cent, without looking for hotspots.
 pub fn run(problem: &Problem, bracket_percent: f64) -> Solution {
     let mut problem = problem.clone();
     problem.accuracy.bracket = bracket_percent / 100.0;
-    physics::run(&problem).unwrap_or_else(|faults| panic!("not solved: {faults:?}"))
+    physics::run(&problem).unwrap_or_else(|faults| panic!("{} not solved: {faults:?}", problem.title))
 }
 
 /// Solves a problem and looks for hotspots; faults are told to the caller.
@@ -44,7 +43,7 @@ pub fn attempt(problem: &Problem) -> Result<Found, String> {
 pub fn solved(problem: &Problem, bracket_percent: f64) -> Findings {
     let mut problem = problem.clone();
     problem.accuracy.bracket = bracket_percent / 100.0;
-    attempt(&problem).unwrap_or_else(|faults| panic!("not solved: {faults}")).findings
+    attempt(&problem).unwrap_or_else(|faults| panic!("{} not solved: {faults}", problem.title)).findings
 }
 
 /// A figure of the findings: enclosed, or a plain number.
@@ -81,9 +80,7 @@ pub fn figure(findings: &Findings, name: &str) -> Option<Figure> {
         ["probes", who, "drop_mv"] => findings.probes.iter().find(|p| p.name == *who).map(|p| Figure::Enclosed(p.drop_mv)),
         ["contacts", who, "current_a"] => findings.contacts.iter().find(|c| c.name == *who)?.current_a.map(Figure::Plain),
         ["crossings", who, "total"] => findings.crossings.iter().find(|c| c.name == *who).map(|c| Figure::Plain(c.total_a)),
-        ["crossings", who, layer] => {
-            findings.crossings.iter().find(|c| c.name == *who)?.current_a.get(*layer).copied().map(Figure::Plain)
-        }
+        ["crossings", who, layer] => findings.crossings.iter().find(|c| c.name == *who)?.current_a.get(*layer).copied().map(Figure::Plain),
         _ => None,
     }
 }

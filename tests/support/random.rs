@@ -87,14 +87,7 @@ pub fn block(middle: Point, half_x: f64, half_y: f64) -> Footprint {
 
 /// An electrode of one spot on one sheet.
 pub fn electrode(name: String, layer: LayerId, footprint: Footprint, joint_ohm: f64, drive: Drive) -> Electrode {
-    Electrode {
-        name,
-        kind: ElectrodeKind::Terminal,
-        group: None,
-        through: vec![layer],
-        spots: vec![Spot { footprint, joint_ohm }],
-        drive,
-    }
+    Electrode { name, kind: ElectrodeKind::Terminal, group: None, through: vec![layer], spots: vec![Spot { footprint, joint_ohm }], drive }
 }
 
 /// A problem without electrodes.
