@@ -26,6 +26,14 @@ pub fn read(sheet: &str, outlines: &BTreeMap<String, String>) -> Problem {
     }
 }
 
+/// Reads a sheet from the project's folder.
+pub fn read_file(job: &Path) -> Problem {
+    match reading::read(job, &|path| std::fs::read_to_string(path)) {
+        Ok(reading) => reading.problem,
+        Err(faults) => panic!("{} was refused: {faults:#?}", job.display()),
+    }
+}
+
 /// Solves a problem to a bracket in per cent, without looking for hotspots.
 pub fn run(problem: &Problem, bracket_percent: f64) -> Solution {
     let mut problem = problem.clone();
