@@ -288,14 +288,15 @@ line_mm = [[24, 24], [18, 24]]
 voltage_mv = {three}
 "#
         );
-        let found = solved(&read(&sheet, &BTreeMap::new()), COARSE);
+        let found = solved(&read(&sheet, &BTreeMap::new()), 0.1);
         [0, 1, 2].map(|k| found.electrodes[k].current_a)
     };
     let matrix = [[1, 0, 0], [0, 1, 0], [0, 0, 1]].map(tee);
     for i in 0..3 {
         assert!(matrix[i].iter().sum::<f64>().abs() < 1e-10, "{matrix:?}");
         for j in 0..3 {
-            assert!((matrix[i][j] - matrix[j][i]).abs() < 1e-10, "{matrix:?}");
+            // Three runs on three meshes: equal to the accuracy asked.
+            assert!((matrix[i][j] - matrix[j][i]).abs() < 1e-3 * matrix[i][j].abs(), "{matrix:?}");
             assert!(i == j || matrix[i][j] < 0.0, "{matrix:?}");
         }
     }
