@@ -41,7 +41,8 @@ fn jobs(law: u64, count: u64) -> impl Iterator<Item = (u64, Rng, Problem)> {
     (0..count).map(move |k| {
         let seed = 1000 * law + k;
         let mut rng = Rng::with_seed(seed);
-        let problem = job(&mut rng, COARSE / 100.0);
+        let mut problem = job(&mut rng, COARSE / 100.0);
+        problem.title = format!("job {seed}");
         (seed, rng, problem)
     })
 }
@@ -53,9 +54,10 @@ fn report(wrong: &[String]) {
 #[test]
 fn a_fine_run_lies_in_the_coarse_intervals() {
     let mut wrong = Vec::new();
-    for seed in 0..100 {
+    for seed in 0..40 {
         let mut rng = Rng::with_seed(seed);
-        let problem = if seed % 3 == 0 { job_with_sources(&mut rng, 0.05) } else { job(&mut rng, 0.05) };
+        let mut problem = if seed % 3 == 0 { job_with_sources(&mut rng, 0.05) } else { job(&mut rng, 0.05) };
+        problem.title = format!("job {seed}");
         let (coarse, fine) = (solved(&problem, COARSE), solved(&problem, 0.5));
         let mut pairs = vec![("loss".to_string(), coarse.loss_w, fine.loss_w)];
         for (c, f) in coarse.electrodes.iter().zip(&fine.electrodes) {
@@ -84,7 +86,7 @@ fn a_fine_run_lies_in_the_coarse_intervals() {
 #[test]
 fn currents_close_and_losses_add_up() {
     let mut wrong = Vec::new();
-    for (seed, _, problem) in jobs(1, 60) {
+    for (seed, _, problem) in jobs(1, 30) {
         let found = solved(&problem, COARSE);
         let currents = || found.electrodes.iter().map(|e| e.current_a);
         let largest = currents().fold(0.0, |m: f64, i| m.max(i.abs()));
@@ -115,7 +117,7 @@ fn currents_close_and_losses_add_up() {
 #[test]
 fn what_drives_and_what_reads_may_change_places() {
     let mut wrong = Vec::new();
-    for (seed, _, problem) in jobs(2, 40).filter(|j| j.2.electrodes.len() >= 4) {
+    for (seed, _, problem) in jobs(2, 24).filter(|j| j.2.electrodes.len() >= 4) {
         let mut currents = vec![0.0; problem.electrodes.len()];
         (currents[0], currents[1]) = (1.0, -1.0);
         let there = solved(&with_currents(&problem, &currents), COARSE);
@@ -131,7 +133,7 @@ fn what_drives_and_what_reads_may_change_places() {
 #[test]
 fn loads_add_up() {
     let mut wrong = Vec::new();
-    for (seed, mut rng, problem) in jobs(3, 40) {
+    for (seed, mut rng, problem) in jobs(3, 16) {
         let n = problem.electrodes.len();
         let mut draw = || {
             let mut currents: Vec<f64> = (0..n).map(|_| 10.0 * rng.f64() - 5.0).collect();
@@ -155,7 +157,7 @@ fn loads_add_up() {
 #[test]
 fn turning_mirroring_and_the_order_of_sheets_change_nothing() {
     let mut wrong = Vec::new();
-    for (seed, mut rng, problem) in jobs(4, 50) {
+    for (seed, mut rng, problem) in jobs(4, 24) {
         let similarity = Similarity {
             turn_degrees: 360.0 * rng.f64(),
             mirror: rng.bool(),
@@ -192,7 +194,7 @@ fn reversed(problem: &Problem) -> Problem {
 #[test]
 fn more_metal_never_raises_the_loss() {
     let mut wrong = Vec::new();
-    for (seed, mut rng, problem) in jobs(5, 60) {
+    for (seed, mut rng, problem) in jobs(5, 30) {
         let less = solved(&problem, COARSE);
         let mut more = problem.clone();
         let layer = LayerId::new(rng.usize(0..problem.layers.len()));
@@ -250,7 +252,7 @@ fn more_metal_never_raises_the_loss() {
 #[test]
 fn random_jobs_are_not_refused() {
     let refused: Vec<String> =
-        jobs(6, 60).filter_map(|(seed, _, problem)| attempt(&problem).err().map(|e| format!("job {seed}: {e}"))).collect();
+        jobs(6, 40).filter_map(|(seed, _, problem)| attempt(&problem).err().map(|e| format!("job {seed}: {e}"))).collect();
     report(&refused);
 }
 
@@ -286,14 +288,15 @@ line_mm = [[24, 24], [18, 24]]
 voltage_mv = {three}
 "#
         );
-        let found = solved(&read(&sheet, &BTreeMap::new()), COARSE);
+        let found = solved(&read(&sheet, &BTreeMap::new()), 0.1);
         [0, 1, 2].map(|k| found.electrodes[k].current_a)
     };
     let matrix = [[1, 0, 0], [0, 1, 0], [0, 0, 1]].map(tee);
     for i in 0..3 {
         assert!(matrix[i].iter().sum::<f64>().abs() < 1e-10, "{matrix:?}");
         for j in 0..3 {
-            assert!((matrix[i][j] - matrix[j][i]).abs() < 1e-10, "{matrix:?}");
+            // Three runs on three meshes: equal to the accuracy asked.
+            assert!((matrix[i][j] - matrix[j][i]).abs() < 1e-3 * matrix[i][j].abs(), "{matrix:?}");
             assert!(i == j || matrix[i][j] < 0.0, "{matrix:?}");
         }
     }

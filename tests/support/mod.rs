@@ -4,7 +4,7 @@ pub mod random;
 pub mod transform;
 
 use pinchbar::findings::{self, Enclosure, Findings, Found};
-use pinchbar::physics;
+use pinchbar::physics::{self, Solution};
 use pinchbar::problem::Problem;
 use pinchbar::reading;
 use std::collections::BTreeMap;
@@ -34,6 +34,13 @@ pub fn read_file(job: &Path) -> Problem {
     }
 }
 
+/// Solves a problem to a bracket in per cent, without looking for hotspots.
+pub fn run(problem: &Problem, bracket_percent: f64) -> Solution {
+    let mut problem = problem.clone();
+    problem.accuracy.bracket = bracket_percent / 100.0;
+    physics::run(&problem).unwrap_or_else(|faults| panic!("{} not solved: {faults:?}", problem.title))
+}
+
 /// Solves a problem and looks for hotspots; faults are told to the caller.
 pub fn attempt(problem: &Problem) -> Result<Found, String> {
     let solution = physics::run(problem).map_err(|faults| format!("{faults:?}"))?;
@@ -44,12 +51,7 @@ pub fn attempt(problem: &Problem) -> Result<Found, String> {
 pub fn solved(problem: &Problem, bracket_percent: f64) -> Findings {
     let mut problem = problem.clone();
     problem.accuracy.bracket = bracket_percent / 100.0;
-    attempt(&problem).unwrap_or_else(|faults| panic!("not solved: {faults}")).findings
-}
-
-/// Solves a sheet held in memory to a bracket in per cent.
-pub fn solve_with(sheet: &str, bracket_percent: f64) -> Findings {
-    solved(&read(sheet, &BTreeMap::new()), bracket_percent)
+    attempt(&problem).unwrap_or_else(|faults| panic!("{} not solved: {faults}", problem.title)).findings
 }
 
 /// A figure of the findings: enclosed, or a plain number.

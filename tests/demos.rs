@@ -1,0 +1,75 @@
+//! Every sample of `shapes/` is solved and its headline compared with the hand value that stands in its comment.
+
+use crate::support::{Figure, attempt, figure, read_file};
+use std::path::{Path, PathBuf};
+
+/// What a comment `# headline: figure = value within percent %` promises.
+struct Headline {
+    of: String,
+    value: f64,
+    within: f64,
+}
+
+fn headline(text: &str) -> Option<Headline> {
+    let line = text.lines().find_map(|l| l.strip_prefix("# headline: "))?;
+    let (of, rest) = line.split_once(" = ")?;
+    let (value, percent) = rest.split_once(" within ")?;
+    let within = percent.trim().strip_suffix('%')?.trim().parse::<f64>().ok()? / 100.0;
+    Some(Headline { of: of.into(), value: value.parse().ok()?, within })
+}
+
+fn jobs() -> Vec<PathBuf> {
+    let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("shapes");
+    let entries = std::fs::read_dir(&folder).expect("the folder of samples");
+    let mut jobs: Vec<PathBuf> =
+        entries.map(|e| e.expect("an entry").path()).filter(|p| p.extension().is_some_and(|e| e == "toml")).collect();
+    jobs.sort();
+    jobs
+}
+
+#[test]
+fn every_sample_agrees_with_its_hand_value() {
+    let jobs = jobs();
+    assert!(jobs.len() >= 7, "only {} samples", jobs.len());
+    let mut wrong = Vec::new();
+    for job in &jobs {
+        let name = job.file_stem().map(|n| n.to_string_lossy().into_owned()).unwrap_or_default();
+        let text = std::fs::read_to_string(job).expect("a sample");
+        let Some(Headline { of, value, within }) = headline(&text) else {
+            wrong.push(format!("{name}: no headline"));
+            continue;
+        };
+        let found = match attempt(&read_file(job)) {
+            Ok(found) => found.findings,
+            Err(faults) => {
+                wrong.push(format!("{name}: {faults}"));
+                continue;
+            }
+        };
+        let figure = match figure(&found, &of) {
+            Some(Figure::Enclosed(e)) => e.value,
+            Some(Figure::Plain(v)) => v,
+            None => f64::NAN,
+        };
+        let agrees = (figure - value).abs() <= within * value.abs();
+        if !found.run.reached || found.hotspots.is_empty() || !agrees {
+            let run = &found.run;
+            wrong.push(format!("{name}: {of} {figure}, by hand {value}; reached {}, {} hotspots", run.reached, found.hotspots.len()));
+        }
+    }
+    assert!(wrong.is_empty(), "{}", wrong.join("\n"));
+}
+
+/// Cells between the same rows: the leads at opposite ends share better and lose more.
+#[test]
+fn sharing_and_loss_pull_apart() {
+    let solved = |name: &str| {
+        let job = Path::new(env!("CARGO_MANIFEST_DIR")).join("shapes").join(name);
+        let found = attempt(&read_file(&job)).expect("a sample").findings;
+        let largest = found.electrodes.iter().filter(|e| e.kind == "cell").map(|e| e.current_a).fold(0.0, f64::max);
+        (largest, found.loss_w)
+    };
+    let (same, opposite) = (solved("corner-lead-same-end.toml"), solved("corner-lead-opposite.toml"));
+    assert!(same.0 > 1.5 * opposite.0, "{} A and {} A", same.0, opposite.0);
+    assert!(same.1.high < opposite.1.low, "{:?} and {:?}", same.1, opposite.1);
+}
