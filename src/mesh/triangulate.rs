@@ -44,7 +44,13 @@ pub fn triangulated(drawing: &Arrangement, max_vertices: usize, kept: &dyn Fn(&[
 type Refined = (Vec<Point>, Vec<[u32; 3]>, Vec<[u32; 2]>, bool);
 
 fn refined(drawing: &Arrangement, max_vertices: usize) -> Result<Refined, MeshFault> {
-    let vertices: Vec<Point2<f64>> = drawing.points.iter().map(|p| Point2::new(p.x, p.y)).collect();
+    let mut vertices: Vec<Point2<f64>> = drawing.points.iter().map(|p| Point2::new(p.x, p.y)).collect();
+    // Four free points around the drawing: rim points that lie a hair inside their hull would otherwise leave slivers which no refinement ends.
+    let extent = BoundingBox::around(drawing.points.iter().copied());
+    let margin = 0.25 * extent.width().min(extent.height()) + 0.01 * extent.width().max(extent.height());
+    for (x, y) in [(extent.min.x - margin, extent.min.y - margin), (extent.max.x + margin, extent.max.y + margin)] {
+        vertices.extend([Point2::new(x, y), Point2::new(extent.min.x + extent.max.x - x, y)]);
+    }
     let count = vertices.len();
     let edges = drawing.segments.iter().map(|s| s.map(|v| v as usize)).collect();
     let mut conflicts = 0;
@@ -53,12 +59,11 @@ fn refined(drawing: &Arrangement, max_vertices: usize) -> Result<Refined, MeshFa
     if conflicts > 0 || cdt.num_vertices() != count {
         return Err(MeshFault::Triangulation(format!("{conflicts} conflicting edges, {} of {count} points", cdt.num_vertices())));
     }
-    let extent = BoundingBox::around(drawing.points.iter().copied());
     let parameters = RefinementParameters::<f64>::new()
         .with_angle_limit(AngleLimit::from_deg(LEAST_ANGLE_DEGREES))
         .exclude_outer_faces(false)
         .with_max_allowed_area(extent.width() * extent.height() / COARSEST)
-        .with_max_additional_vertices((max_vertices - count).min(20 * count + 10_000));
+        .with_max_additional_vertices(max_vertices.saturating_sub(count).min(20 * count + 10_000));
     let outcome = cdt.refine(parameters);
     let points = cdt.vertices().map(|v| Point::new(v.position().x, v.position().y)).collect();
     let triangles = cdt.inner_faces().map(|f| f.vertices().map(|v| v.fix().index() as u32)).collect();
