@@ -164,7 +164,14 @@ impl<'a> Disc<'a> {
         // Wider than the chords of a small hole: the corners of its polygon are no places of their own.
         let mut step = 1.6 * gauge;
         let mut moves = 0;
-        while step > 0.03 * gauge && moves < 40 {
+        let mut round_corners = true;
+        while moves < 40 {
+            if step <= 0.03 * gauge {
+                // A step never turns a corner of the metal's edge: what lies behind one is looked at once, at the end.
+                let behind = if round_corners { self.best_on_edge(best, allowed) } else { None };
+                let Some(better) = behind else { break };
+                (best, step, round_corners) = (better, 0.2 * gauge, false);
+            }
             let (at, inward) = (best.1, best.0.middle - best.1.point);
             let tried: Vec<Place> = if inward.norm() > 0.05 * gauge {
                 let inward = inward * (step / inward.norm());
@@ -194,6 +201,24 @@ impl<'a> Disc<'a> {
             }
         }
         (best.0.mean, best.1)
+    }
+
+    /// The best centre on the edges of the connected metal within a gauge, when it is better than the one given.
+    fn best_on_edge(&mut self, best: (Covered, Place), allowed: &dyn Fn(Point) -> bool) -> Option<(Covered, Place)> {
+        let (metal, gauge) = (self.metal, self.metal.gauge);
+        let mut centres = Vec::new();
+        self.flood(best.1, 2.0 * gauge, |t, _| {
+            let triangle = metal.at(t);
+            for k in (0..3).filter(|&k| triangle.neighbours[k] == NONE) {
+                let (a, b) = (triangle.corners[(k + 1) % 3], triangle.corners[(k + 2) % 3]);
+                let pieces = (a.distance(b) / (0.1 * gauge)).ceil().clamp(1.0, 20.0) as usize;
+                let point = |i: usize| a + (b - a) * ((i as f64 + 0.5) / pieces as f64);
+                centres.extend((0..pieces).map(|i| Place { triangle: t, point: point(i) }).filter(|c| allowed(c.point)));
+            }
+        });
+        let near = centres.into_iter().filter(|c| c.point.distance(best.1.point) <= gauge);
+        let top = near.map(|c| (self.mean(c, gauge), c)).reduce(|a, b| if b.0.mean > a.0.mean { b } else { a })?;
+        (top.0.mean > best.0.mean * (1.0 + 1e-7)).then_some(top)
     }
 }
 
