@@ -3,7 +3,6 @@
 use super::{Ending, explain, files, late, terminal};
 use crate::diagnostic::{Fault, Remark};
 use crate::findings::{self, Findings, Verdict};
-use crate::physics;
 use crate::problem::Problem;
 use crate::reading::{self, Reading};
 use crate::report;
@@ -60,9 +59,7 @@ pub fn run(request: &Request) -> io::Result<Ending> {
     if let Some(percent) = request.bracket_percent {
         problem.accuracy.bracket = percent / 100.0;
     }
-    let solved = physics::run(&problem);
-    clock.lap("solve");
-    let found = solved.and_then(|solution| findings::find(&problem, solution));
+    let found = findings::find(&problem);
     let mut found = match found {
         Ok(found) => found,
         Err(faults) if faults.iter().any(late::is_ours) => {
@@ -71,7 +68,7 @@ pub fn run(request: &Request) -> io::Result<Ending> {
         }
         Err(faults) => return Ok(refused(&faults.iter().map(|f| late::placed(f, &problem, &origins)).collect::<Vec<_>>())),
     };
-    clock.lap("find");
+    clock.lap("solve");
     found.findings.remarks.splice(0..0, remarks);
     let picture = if folder.is_some() { report::figure::heat_map(&problem, &found) } else { Ok(Vec::new()) };
     let picture = picture.map_err(|text| found.findings.remarks.push(Remark::new(format!("No picture: {text}.")))).ok();

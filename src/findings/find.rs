@@ -28,11 +28,15 @@ pub struct Found {
     pub solution: Solution,
 }
 
-/// Everything that is reported of a solved problem. Gauge discs are resolved before they are reported, whatever the bracket says.
+/// Solves a problem and finds everything that is reported. The first mesh shows where current crowds; the rounds after it resolve those places on
+/// the way to the accuracy asked for, so that gauge discs are resolved before they are reported, whatever the bracket says.
 ///
 /// # Errors
 /// As [`crate::physics::run`]; a crossing that runs inside a held patch.
-pub fn find(problem: &Problem, mut solution: Solution) -> Result<Found, Vec<Fault>> {
+pub fn find(problem: &Problem) -> Result<Found, Vec<Fault>> {
+    let started = physics::Started::new(problem)?;
+    let expected = survey(problem, &started.first, &DensityField::new(problem, &started.first)).unresolved;
+    let mut solution = started.finished(&expected)?;
     let mut density = DensityField::new(problem, &solution);
     let mut survey = survey(problem, &solution, &density);
     for _ in 0..SHARPENINGS {

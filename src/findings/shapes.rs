@@ -309,7 +309,8 @@ fn the_list_does_not_depend_on_the_mesh() {
         for survey in &lists {
             assert_eq!(survey.rows.len(), finest.rows.len());
             // Where the table is full, rows as high as its last one may or may not have found room.
-            let cut = if finest.rows.len() == super::hotspot::MOST_ROWS { 1.03 * finest.rows[finest.rows.len() - 1].peak_a_mm2 } else { 0.0 };
+            let cut =
+                if finest.rows.len() == super::hotspot::MOST_ROWS { 1.03 * finest.rows[finest.rows.len() - 1].peak_a_mm2 } else { 0.0 };
             for (row, other) in survey.rows.iter().zip(&finest.rows).filter(|(_, other)| other.peak_a_mm2 > cut) {
                 assert_eq!((row.rank, row.kind), (other.rank, other.kind));
                 near(row.peak_a_mm2, other.peak_a_mm2, 0.03);

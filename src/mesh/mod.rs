@@ -1,6 +1,6 @@
 //! The triangulation: an arrangement of labelled areas and lines, its conforming triangles, and their bisection.
 //!
-//! Labels are opaque numbers: an area's or a line's place in the lists handed to [`build`].
+//! Labels are opaque numbers: an area's or a line's place in the lists handed to [`arrange`].
 
 pub mod arrangement;
 pub mod bisect;

@@ -7,28 +7,91 @@ use super::network;
 use super::pieces::{check_attached, given_currents, layout};
 use super::plan::Plan;
 use super::solution::{Fault, Round, RunRecord, Solution};
-use crate::fem::{self, CellPlan, Complex, ComplexFault};
+use crate::fem::{self, CellPlan, Complex, ComplexFault, LinePlan};
 use crate::geometry::Point;
 use crate::index::{ElectrodeId, LayerId};
-use crate::mesh::{Mesh, bisected};
+use crate::mesh::{Mesh, bisected, triangulated};
 use crate::problem::Problem;
 
 /// Rounds after which the refinement gives up: each adds triangles, so the vertex limit comes first in practice.
 const MOST_ROUNDS: usize = 200;
 
-/// Refines until the loss and every voltage are enclosed as the problem asks, or the vertex limit is met.
-///
-/// `record` holds what is known of the mesh and the rounds so far.
-pub fn refined_until_enclosed(problem: &Problem, plan: &Plan, mut mesh: Mesh, mut record: RunRecord) -> Result<Solution, Vec<Fault>> {
-    let most = problem.accuracy.max_vertices;
-    let cells: Vec<CellPlan> = mesh.covers.iter().map(|cover| plan.cell(cover)).collect::<Result<_, _>>().map_err(|f| vec![f])?;
-    let lines = plan.line_plans();
-    // How much wider, in parts of what is asked, the voltages' intervals are than the loss's: learnt on the first mesh.
-    let mut strictness: f64 = 1.0;
-    let first = record.rounds.len();
-    loop {
-        let complex = Complex::new(&mesh, &cells, &lines, problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
-        if record.rounds.is_empty() {
+/// The rounds of one problem, from the first mesh on.
+pub struct Rounds<'a> {
+    problem: &'a Problem,
+    plan: Plan<'a>,
+    cells: Vec<CellPlan>,
+    lines: Vec<LinePlan>,
+    record: RunRecord,
+    /// How much wider, in parts of what is asked, the voltages' intervals are than the loss's: learnt on the first mesh.
+    strictness: f64,
+}
+
+/// The solution on the first mesh, and the way on from it.
+pub struct Started<'a> {
+    rounds: Rounds<'a>,
+    /// Everything is enclosed in it, but not yet as tightly as asked.
+    pub first: Solution,
+    finer: Option<Mesh>,
+}
+
+impl<'a> Started<'a> {
+    /// Draws, meshes and solves the first round.
+    ///
+    /// # Errors
+    /// Faults of the statement that only the mesh can show (metal that hangs on nothing, currents that do not balance on a piece, electrodes that
+    /// meet), or a numerical failure.
+    pub fn new(problem: &'a Problem) -> Result<Self, Vec<Fault>> {
+        let plan = Plan::new(problem)?;
+        let drawing = plan.drawing()?;
+        let (mesh, quality) =
+            triangulated(&drawing, problem.accuracy.max_vertices, &|cover| plan.is_metal(cover)).map_err(|f| vec![Fault::Mesh(f)])?;
+        let cells = cells(&plan, &mesh)?;
+        let lines = plan.line_plans();
+        let record = RunRecord { moves: drawing.moves, angles_reached: quality.angles_reached, ..RunRecord::default() };
+        let mut rounds = Rounds { problem, plan, cells, lines, record, strictness: 1.0 };
+        match rounds.round(mesh)? {
+            (Some(first), finer) => Ok(Self { rounds, first, finer }),
+            (None, _) => Err(without_answer()),
+        }
+    }
+
+    /// Refines until the loss and every voltage are enclosed as the problem asks and the triangles under some discs (layer, middle, diameter in mm)
+    /// are no longer than a quarter of the diameter, or the vertex limit is met.
+    ///
+    /// # Errors
+    /// A numerical failure.
+    pub fn finished(self, discs: &[(LayerId, Point, f64)]) -> Result<Solution, Vec<Fault>> {
+        let Self { mut rounds, first, finer } = self;
+        let Some(finer) = finer else {
+            return if discs.is_empty() { Ok(first) } else { sharpened(rounds.problem, first, discs) };
+        };
+        let mut mesh = resolved_under(finer, discs, rounds.problem.accuracy.max_vertices);
+        loop {
+            match rounds.round(mesh)? {
+                (_, Some(finer)) => mesh = finer,
+                (Some(solution), None) => return Ok(solution),
+                (None, None) => return Err(without_answer()),
+            }
+        }
+    }
+}
+
+fn without_answer() -> Vec<Fault> {
+    vec![Fault::Numerical("a round ended without an answer: this is a bug in pinchbar".into())]
+}
+
+fn cells(plan: &Plan, mesh: &Mesh) -> Result<Vec<CellPlan>, Vec<Fault>> {
+    mesh.covers.iter().map(|cover| plan.cell(cover)).collect::<Result<_, _>>().map_err(|f| vec![f])
+}
+
+impl Rounds<'_> {
+    /// One round on a mesh: the solution where everything was enclosed (always the first and the last time), and the next mesh, if there is one.
+    fn round(&mut self, mesh: Mesh) -> Result<(Option<Solution>, Option<Mesh>), Vec<Fault>> {
+        let (problem, plan) = (self.problem, &self.plan);
+        let complex = Complex::new(&mesh, &self.cells, &self.lines, problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
+        let is_first = self.record.rounds.is_empty();
+        if is_first {
             check_attached(problem, &complex, plan)?;
         }
         let layout = layout(problem, plan, &mesh, &complex)?;
@@ -49,16 +112,16 @@ pub fn refined_until_enclosed(problem: &Problem, plan: &Plan, mut mesh: Mesh, mu
         let flux = fem::equilibrated(&mesh, &complex, &potential);
         let low: f64 = currents.iter().take(problem.electrodes.len()).enumerate().map(|(k, b)| b * potential.values[k]).sum();
         let gap = if low > 0.0 { flux.indicator.iter().sum::<f64>() / low } else { 0.0 };
-        record.rounds.push(Round { vertices: mesh.points.len(), triangles: mesh.triangles.len(), gap });
+        self.record.rounds.push(Round { vertices: mesh.points.len(), triangles: mesh.triangles.len(), gap });
 
         let loss_enclosed = gap <= problem.accuracy.bracket;
         let mut answer = None;
         let mut finer = None;
-        if loss_enclosed || record.rounds.len() == first + 1 {
+        if loss_enclosed || is_first {
             let ports = ports.take().map_or_else(|| bar.ports(), Ok)?;
             let enclosed = enclose(problem, &mesh, &complex, &layout, &bar, &ports)?;
             if gap > 0.0 {
-                strictness = strictness.max(enclosed.excess * problem.accuracy.bracket / gap);
+                self.strictness = self.strictness.max(enclosed.excess * problem.accuracy.bracket / gap);
             }
             if loss_enclosed && !enclosed.failing.is_empty() {
                 let indicator = fem::weighted_indicators(&mesh, &complex, &ports.field, &bar.loads, &enclosed.failing);
@@ -67,38 +130,34 @@ pub fn refined_until_enclosed(problem: &Problem, plan: &Plan, mut mesh: Mesh, mu
             answer = Some(enclosed);
         }
         if !loss_enclosed {
-            finer = Some(refined(&mesh, flux.indicator.clone(), GOAL * problem.accuracy.bracket / (gap * strictness)));
+            finer = Some(refined(&mesh, flux.indicator.clone(), GOAL * problem.accuracy.bracket / (gap * self.strictness)));
         }
-        match finer {
-            Some(finer) if finer.points.len() <= most && record.rounds.len() < MOST_ROUNDS => mesh = finer,
-            _ => {
-                let answer = match answer {
-                    Some(answer) => answer,
-                    None => {
-                        let ports = ports.take().map_or_else(|| bar.ports(), Ok)?;
-                        enclose(problem, &mesh, &complex, &layout, &bar, &ports)?
-                    }
-                };
-                let (passed, layer_loss) = account(problem, plan, &mesh, &complex, &potential, &flux);
-                record.unknowns = complex.order();
-                record.reached = loss_enclosed && answer.failing.is_empty();
-                record.voltage_spread = answer.voltage_spread;
-                record.residual = answer.residual;
-                return Ok(Solution {
-                    potential: levelled(potential, &complex, &answer.levels),
-                    flux,
-                    loss: answer.loss,
-                    resistance: answer.resistance,
-                    electrodes: answer.electrodes,
-                    probes: answer.probes,
-                    passed,
-                    layer_loss,
-                    run: record,
-                    complex,
-                    mesh,
-                });
-            }
+        let room = |finer: &Mesh| finer.points.len() <= problem.accuracy.max_vertices;
+        let finer = finer.filter(|f| room(f) && self.record.rounds.len() < MOST_ROUNDS);
+        if finer.is_none() && answer.is_none() {
+            let ports = ports.take().map_or_else(|| bar.ports(), Ok)?;
+            answer = Some(enclose(problem, &mesh, &complex, &layout, &bar, &ports)?);
         }
+        let Some(answer) = answer else { return Ok((None, finer)) };
+        let (passed, layer_loss) = account(problem, plan, &mesh, &complex, &potential, &flux);
+        self.record.unknowns = complex.order();
+        self.record.reached = loss_enclosed && answer.failing.is_empty();
+        self.record.voltage_spread = answer.voltage_spread;
+        self.record.residual = answer.residual;
+        let solution = Solution {
+            potential: levelled(potential, &complex, &answer.levels),
+            flux,
+            loss: answer.loss,
+            resistance: answer.resistance,
+            electrodes: answer.electrodes,
+            probes: answer.probes,
+            passed,
+            layer_loss,
+            run: self.record.clone(),
+            complex,
+            mesh,
+        };
+        Ok((Some(solution), finer))
     }
 }
 
@@ -157,10 +216,11 @@ fn marked(indicator: &[f64], share: f64) -> Vec<bool> {
 }
 
 /// The solution on a mesh refined under some discs. Its intervals stay as they are: they hold for the problem, not for a mesh.
-pub fn sharpened(problem: &Problem, plan: &Plan, old: Solution, discs: &[(LayerId, Point, f64)]) -> Result<Solution, Vec<Fault>> {
-    let mesh = resolved_under(&old.mesh, discs, problem.accuracy.max_vertices);
-    let cells: Vec<CellPlan> = mesh.covers.iter().map(|cover| plan.cell(cover)).collect::<Result<_, _>>().map_err(|f| vec![f])?;
-    let complex = Complex::new(&mesh, &cells, &plan.line_plans(), problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
+pub fn sharpened(problem: &Problem, old: Solution, discs: &[(LayerId, Point, f64)]) -> Result<Solution, Vec<Fault>> {
+    let plan = &Plan::new(problem)?;
+    let mesh = resolved_under(old.mesh, discs, problem.accuracy.max_vertices);
+    let complex =
+        Complex::new(&mesh, &cells(plan, &mesh)?, &plan.line_plans(), problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
     let layout = layout(problem, plan, &mesh, &complex)?;
     let bar = Bar::new(problem, plan, &mesh, &complex, &layout)?;
     let mut currents: Vec<f64> = old.electrodes.iter().map(|e| e.current).collect();
@@ -174,8 +234,7 @@ pub fn sharpened(problem: &Problem, plan: &Plan, old: Solution, discs: &[(LayerI
 }
 
 /// The mesh refined until no triangle that meets one of the discs is longer than a quarter of its diameter, or the vertex limit is met.
-fn resolved_under(mesh: &Mesh, discs: &[(LayerId, Point, f64)], most: usize) -> Mesh {
-    let mut mesh = mesh.clone();
+fn resolved_under(mut mesh: Mesh, discs: &[(LayerId, Point, f64)], most: usize) -> Mesh {
     loop {
         let coarse: Vec<bool> = (0..mesh.triangles.len())
             .map(|t| {

@@ -10,35 +10,17 @@ pub mod pieces;
 pub mod plan;
 pub mod solution;
 
+pub use adapt::{Started, sharpened};
 pub use solution::{Fault, Solution};
 
-use crate::geometry::Point;
-use crate::index::LayerId;
-use crate::mesh::triangulated;
 use crate::problem::Problem;
-use solution::RunRecord;
 
 /// Solves a problem to the accuracy it asks for.
 ///
 /// # Errors
-/// Faults of the statement that only the mesh can show (metal that hangs on nothing, currents that do not balance on a piece, electrodes that
-/// meet), or a numerical failure.
+/// As [`Started::new`].
 pub fn run(problem: &Problem) -> Result<Solution, Vec<Fault>> {
-    let plan = plan::Plan::new(problem)?;
-    let drawing = plan.drawing()?;
-    let (mesh, quality) =
-        triangulated(&drawing, problem.accuracy.max_vertices, &|cover| plan.is_metal(cover)).map_err(|f| vec![Fault::Mesh(f)])?;
-    let record = RunRecord { moves: drawing.moves, angles_reached: quality.angles_reached, ..RunRecord::default() };
-    adapt::refined_until_enclosed(problem, &plan, mesh, record)
-}
-
-/// Solves once more with the triangles under some discs (layer, middle, diameter in mm) no longer than a quarter of the diameter. The intervals stay.
-///
-/// # Errors
-/// As [`run`].
-pub fn sharpened(problem: &Problem, solution: Solution, discs: &[(LayerId, Point, f64)]) -> Result<Solution, Vec<Fault>> {
-    let plan = plan::Plan::new(problem)?;
-    adapt::sharpened(problem, &plan, solution, discs)
+    Started::new(problem)?.finished(&[])
 }
 
 #[cfg(test)]

@@ -43,8 +43,7 @@ pub fn run(problem: &Problem, bracket_percent: f64) -> Solution {
 
 /// Solves a problem and looks for hotspots; faults are told to the caller.
 pub fn attempt(problem: &Problem) -> Result<Found, String> {
-    let solution = physics::run(problem).map_err(|faults| format!("{faults:?}"))?;
-    findings::find(problem, solution).map_err(|faults| format!("{faults:?}"))
+    findings::find(problem).map_err(|faults| format!("{faults:?}"))
 }
 
 /// Solves a problem to a bracket in per cent.
