@@ -1,5 +1,6 @@
 //! One integration binary: the themes are its modules.
 
+mod bound;
 mod commands;
 mod convergence;
 mod demos;

@@ -193,3 +193,53 @@ pub fn job_with_sources(rng: &mut Rng, bracket: f64) -> Problem {
     }
     problem
 }
+
+/// A job with everything a sheet can say: meters, held potentials, nuggets through several sheets, spots over an edge, terminals on a part of an
+/// edge, sheets cut to one outline.
+pub fn job_of_all_kinds(rng: &mut Rng, bracket: f64) -> Problem {
+    let mut problem = if rng.u8(0..3) == 0 { job_with_sources(rng, bracket) } else { job(rng, bracket) };
+    let count = problem.layers.len();
+    if rng.bool() {
+        let first = problem.layers[0].clone();
+        for layer in &mut problem.layers {
+            (layer.rings, layer.region) = (first.rings.clone(), first.region.clone());
+        }
+    }
+    if problem.sources.is_empty() {
+        for k in 0..rng.usize(0..3) {
+            problem.electrodes[k].drive = Drive::Held(between(rng, -0.01, 0.01));
+        }
+    }
+    let any = |rng: &mut Rng| LayerId::new(rng.usize(0..count));
+    let current = |rng: &mut Rng| Drive::Current(between(rng, -20.0, 20.0));
+    if rng.bool() {
+        let mut through: Vec<LayerId> = (0..count).map(LayerId::new).collect();
+        if rng.bool() {
+            through.reverse();
+        }
+        let joint_ohm = joint(rng);
+        let spots = (0..rng.usize(1..3)).map(|i| Spot { footprint: disc(1.1 * i as f64, -3.4, 0.9), joint_ohm }).collect();
+        let drive = current(rng);
+        problem.electrodes.push(Electrode { name: "nugget".into(), kind: ElectrodeKind::Cell, group: None, through, spots, drive });
+    }
+    if rng.bool() {
+        let layer = any(rng);
+        let corners = &problem.layers[layer.index()].rings[0].vertices;
+        let (a, b) = (corners[0].point, corners[1].point);
+        let part = if rng.bool() { 1.0 } else { between(rng, 0.3, 0.7) };
+        let line = Footprint::Line { points: vec![a, a + (b - a) * part] };
+        problem.electrodes.push(electrode("edge".into(), layer, line, joint(rng), current(rng)));
+    }
+    if rng.bool() {
+        let layer = any(rng);
+        let corners = &problem.layers[layer.index()].rings[0].vertices;
+        let half = corners.len() / 2;
+        let at = corners[half].point.midpoint(corners[half + 1].point);
+        problem.electrodes.push(electrode("over the edge".into(), layer, disc(at.x, at.y, 0.8), joint(rng), current(rng)));
+    }
+    for (k, places) in [[(3.4, 0.0), (-3.4, 0.0)], [(0.0, 4.4), (3.4, 0.2)]].into_iter().enumerate().take(rng.usize(0..3)) {
+        let tips = places.map(|(x, y)| (any(rng), Point::new(x, y)));
+        problem.probes.push(Probe { name: format!("M{k}"), tips, tip_mm: 0.3 });
+    }
+    problem
+}
