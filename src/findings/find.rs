@@ -14,7 +14,7 @@ use crate::physics::{self, Fault, Solution};
 use crate::problem::{Crossing, Electrode, ElectrodeKind, Footprint, Interface, Problem};
 
 /// Times that the mesh is refined under the hotspots: the first places may move a little when they are resolved.
-const SHARPENINGS: usize = 3;
+const SHARPENINGS: usize = 1;
 
 /// All that was found of a solved problem.
 pub struct Found {
