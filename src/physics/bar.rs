@@ -74,7 +74,13 @@ impl Bar {
                 }
             }
         }
-        let sum = |columns: &[f64]| (0..order).map(|i| columns.iter().skip(i).step_by(order).sum::<f64>()).collect::<Vec<f64>>();
+        let sum = |columns: &[f64]| {
+            let mut total = vec![0.0; order];
+            for column in columns.chunks_exact(order.max(1)) {
+                total.iter_mut().zip(column).for_each(|(t, v)| *t += v);
+            }
+            total
+        };
         let wanted = sum(&right);
         self.factor.solve(&mut right).map_err(|e| vec![Fault::Numerical(e.to_string())])?;
         let got = self.matrix.times(&sum(&right));
