@@ -73,3 +73,45 @@ fn sharing_and_loss_pull_apart() {
     assert!(same.0 > 1.5 * opposite.0, "{} A and {} A", same.0, opposite.0);
     assert!(same.1.high < opposite.1.low, "{:?} and {:?}", same.1, opposite.1);
 }
+
+/// `outputs-demo/` shows what the tool prints for the samples. `PINCHBAR_RENEW=1 cargo test --release demos` makes it anew.
+#[test]
+fn the_outputs_shown_are_those_of_today() {
+    let shown = Path::new(env!("CARGO_MANIFEST_DIR")).join("outputs-demo");
+    let renew = std::env::var_os("PINCHBAR_RENEW").is_some();
+    let fresh = std::env::temp_dir().join(format!("pinchbar-demos-{}", std::process::id()));
+    let mut stale = Vec::new();
+    for job in jobs() {
+        let name = job.file_stem().map(|n| n.to_string_lossy().into_owned()).unwrap_or_default();
+        let out = if renew { shown.join(&name) } else { fresh.join(&name) };
+        let run =
+            std::process::Command::new(env!("CARGO_BIN_EXE_pinchbar")).arg("map").arg(&job).arg("--quiet").arg("--out").arg(&out).output();
+        assert!(run.expect("the tool runs").status.code().is_some_and(|c| c < 2), "{name}");
+        if !renew {
+            let read = |folder: &Path, file: &str| std::fs::read(folder.join(&name).join(file)).unwrap_or_default();
+            if ["heatmap.png", "report.md", "welds.csv", "hotspots.csv"].iter().any(|f| read(&shown, f).is_empty())
+                || !alike(&read(&shown, "result.json"), &read(&fresh, "result.json"))
+            {
+                stale.push(name);
+            }
+        }
+    }
+    let _ = std::fs::remove_dir_all(&fresh);
+    assert!(stale.is_empty(), "renew with PINCHBAR_RENEW=1 and look at the pictures: {stale:?}");
+}
+
+/// Not byte by byte: another processor may round a last digit and refine one triangle more.
+fn alike(shown: &[u8], fresh: &[u8]) -> bool {
+    let parsed = |bytes: &[u8]| serde_json::from_slice::<serde_json::Value>(bytes).unwrap_or_default();
+    let (a, b) = (parsed(shown), parsed(fresh));
+    let near = |x: &serde_json::Value, y: &serde_json::Value, part: f64| match (x.as_f64(), y.as_f64()) {
+        (Some(x), Some(y)) => (x - y).abs() <= part * x.abs().max(y.abs()),
+        _ => false,
+    };
+    let rows = |v: &serde_json::Value| v["hotspots"].as_array().cloned().unwrap_or_default();
+    a["title"] == b["title"]
+        && near(&a["loss_w"]["value"], &b["loss_w"]["value"], 1e-3)
+        && a["electrodes"].as_array().map(Vec::len) == b["electrodes"].as_array().map(Vec::len)
+        && rows(&a).len() == rows(&b).len()
+        && rows(&a).iter().zip(&rows(&b)).all(|(x, y)| x["kind"] == y["kind"] && near(&x["peak_a_mm2"], &y["peak_a_mm2"], 0.03))
+}
