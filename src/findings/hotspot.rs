@@ -126,13 +126,6 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
     // Rows with a limit come first: peaks and parts of a limit cannot be compared.
     let score = |(l, c): &(LayerId, Candidate)| limit(*l).map_or((1, c.peak), |limit| (0, c.peak / limit));
     found.sort_by(|a, b| score(a).0.cmp(&score(b).0).then(score(b).1.total_cmp(&score(a).1)));
-    let mut from = 0;
-    while from < found.len() {
-        let (class, top) = score(&found[from]);
-        let to = from + found[from..].iter().take_while(|c| score(c).0 == class && score(c).1 >= top * (1.0 - EQUAL)).count();
-        found[from..to].sort_by_key(|(l, c)| (*l, c.by_place(&density.layers[l.index()])));
-        from = to.max(from + 1);
-    }
     found.truncate(MOST_ROWS);
     let rows: Vec<Hotspot> = found.par_iter().enumerate().map(|(i, (l, c))| row(&setting, &density.layers[l.index()], c, i + 1)).collect();
     survey.rows = rows;

@@ -34,6 +34,8 @@ pub struct Sheet {
     pub panels: Vec<Panel>,
     /// What the colour means, with its unit.
     pub scale_label: String,
+    /// What stands at the clipped end of the scale: a gauge peak, since the largest triangle's value depends on the mesh. `None`: that value.
+    pub peak: Option<f64>,
     /// Lines of the title block: loss, drop, bracket.
     pub footer: Vec<String>,
     /// A caution, in its own line at the foot; empty for none.

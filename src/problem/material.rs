@@ -1,9 +1,12 @@
 //! Metals: resistivity over temperature, density, and the built-in table with its sources.
 
+/// Name of a metal whose figures stand in the sheet itself.
+pub const OWN_FIGURES: &str = "own figures";
+
 /// A metal as the solver needs it.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Material {
-    /// Name of the table's row, or "own figures".
+    /// Name of the table's row, or [`OWN_FIGURES`].
     pub name: String,
     /// Resistivity and its law.
     pub resistivity: Resistivity,

@@ -6,6 +6,7 @@ use crate::findings::{Found, HotspotKind};
 use crate::geometry::Point;
 use crate::mesh::NONE;
 use crate::picture::{self, HotspotMark, Panel, Sheet, SpotMark};
+use crate::problem::material::OWN_FIGURES;
 use crate::problem::{Drive, Electrode, ElectrodeKind, Footprint, Problem};
 use crate::quantity::three;
 
@@ -29,18 +30,42 @@ pub fn sheet(problem: &Problem, found: &Found) -> Sheet {
     }
     let run = &findings.run;
     footer.push(format!("enclosed to {} %{}", three(run.bracket_percent), if run.reached { "" } else { ", not as tight as asked" }));
+    let mut panels: Vec<Panel> = (0..problem.layers.len()).map(|l| panel(problem, found, l)).collect();
+    refer_to_lowest(&mut panels);
     Sheet {
         title: problem.title.clone(),
         subtitle: subtitle(problem, found),
-        panels: (0..problem.layers.len()).map(|l| panel(problem, found, l)).collect(),
+        panels,
         scale_label: "current density, A/mm²".into(),
+        peak: findings.layers.iter().map(|l| l.peak_a_mm2).reduce(f64::max),
         footer,
         caution: CAUTION.into(),
     }
 }
 
+/// Rows at levels volts apart would share no useful spacing of equipotentials: each panel then counts from its own lowest point.
+fn refer_to_lowest(panels: &mut [Panel]) {
+    let span = |values: &mut dyn Iterator<Item = f64>| {
+        let (low, high) = values.fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), v| (l.min(v), h.max(v)));
+        (low, high - low)
+    };
+    let own: Vec<(f64, f64)> = panels.iter().map(|p| span(&mut p.potential_mv.iter().copied())).collect();
+    let (_, all) = span(&mut panels.iter().flat_map(|p| p.potential_mv.iter().copied()));
+    if all > 3.0 * own.iter().fold(0.0, |m: f64, o| m.max(o.1)) {
+        for (panel, (low, _)) in panels.iter_mut().zip(own) {
+            panel.potential_mv.iter_mut().for_each(|v| *v -= low);
+            panel.details += " · mV above its lowest point";
+        }
+    }
+}
+
 fn subtitle(problem: &Problem, found: &Found) -> String {
-    let inward: f64 = found.findings.electrodes.iter().map(|e| e.current_a.max(0.0)).sum();
+    // What enters one connected piece; both bars of a group carry the same current.
+    let mut inward = vec![0.0; found.solution.complex.pieces];
+    for (e, &piece) in found.findings.electrodes.iter().zip(&found.solution.complex.piece_of) {
+        inward[piece as usize] += e.current_a.max(0.0);
+    }
+    let inward = inward.into_iter().fold(0.0, f64::max);
     let count = |kind: ElectrodeKind| problem.electrodes.iter().filter(|e| e.kind == kind && !matches!(e.drive, Drive::Return(_))).count();
     let plural = |n: usize, one: &str| if n == 1 { format!("1 {one}") } else { format!("{n} {one}s") };
     let mut parts = Vec::new();
@@ -49,7 +74,7 @@ fn subtitle(problem: &Problem, found: &Found) -> String {
             parts.push(plural(n, one));
         }
     }
-    format!("{} A through {} · metal at {} °C · seen from above", three(inward), parts.join(" and "), problem.temperature_c)
+    format!("{} A through {} · metal at {} °C", three(inward), parts.join(" and "), problem.temperature_c)
 }
 
 fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
@@ -58,7 +83,11 @@ fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
     let (points, triangles, potential_mv) = nodes(found, metal);
     let mut panel = Panel {
         name: layer.name.clone(),
-        details: format!("{} {} mm", layer.material.name, layer.thickness_mm),
+        details: if layer.material.name == OWN_FIGURES {
+            format!("{} µΩ cm, {} mm", three(layer.resistivity * 1e5), layer.thickness_mm)
+        } else {
+            format!("{}, {} mm", layer.material.name, layer.thickness_mm)
+        },
         loops: layer.region.loops.clone(),
         points,
         triangles,

@@ -5,6 +5,7 @@ use super::shape::rings_of;
 use crate::geometry::corner::{Sharp, round_inside_corners};
 use crate::geometry::{IndexedRegion, Point, Region, Ring};
 use crate::index::LayerId;
+use crate::problem::material::OWN_FIGURES;
 use crate::problem::material::metal;
 use crate::problem::{Layer, Material, Resistivity};
 use crate::reading::drawn::{DrawnRing, faults_of_rings};
@@ -126,7 +127,7 @@ fn material(fields: &Fields, celsius: f64) -> Option<(Material, f64)> {
         (None, true) => {
             // 1 uohm cm is 1e-5 ohm mm.
             let resistivity = Resistivity::Linear { at_20: own? * 1e-5, alpha: alpha.map_or(0.0, |a| a.value) };
-            Material { name: "own figures".into(), resistivity, density_g_cm3: density }
+            Material { name: OWN_FIGURES.into(), resistivity, density_g_cm3: density }
         }
         (None, false) => {
             fields.missing("metal", "a row of the metals table, or `resistivity_uohm_cm`");
