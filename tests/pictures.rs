@@ -55,6 +55,7 @@ fn sheet(title: &str, panels: Vec<Panel>) -> Sheet {
         title: title.to_string(),
         subtitle: "60 A in through six cells, out at the lug · metal at 20 °C".to_string(),
         panels,
+        peak: None,
         scale_label: "current density, A/mm²".to_string(),
         footer: vec![
             "loss 1.283 … 1.285 W".to_string(),

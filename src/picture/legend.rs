@@ -115,10 +115,7 @@ impl Legend<'_> {
             let tip = [right + 16.0, 0.5 * (top + bottom)];
             drawing.marks.push(Mark::Fill(vec![vec![[right - 0.5, top], tip, [right - 0.5, bottom]]], Ink::full(ramp.at(1.0))));
             rim.push(tip);
-            let words = self
-                .sheet
-                .peak
-                .map_or_else(|| format!("peak {}", three_digits(scale.peak)), |peak| format!("gauge peak {}", three_digits(peak)));
+            let words = format!("peak {}", three_digits(self.sheet.peak.unwrap_or(scale.peak)));
             drawing.left_aligned(self.lettering, &words, [right + 21.0, tip[1] + 5.0], plain(14.0, INK));
         }
         rim.extend([[right, bottom], [left, bottom]]);
