@@ -82,8 +82,6 @@ mod tests {
         let solution = run(problem).unwrap();
         solution.mesh.check().unwrap();
         let r = solution.resistance.unwrap();
-        let rounds: Vec<String> = solution.run.rounds.iter().map(|r| format!("{}:{:.2e}", r.triangles, r.gap)).collect();
-        eprintln!("{} .. {} (expected {expected}) {} residual {:.1e}", r.low, r.high, rounds.join(" "), solution.run.residual);
         assert!(r.low <= expected * (1.0 + 1e-9) && expected <= r.high * (1.0 + 1e-9), "{r:?} {expected}");
         assert!(solution.run.reached && r.high / r.low - 1.0 <= problem.accuracy.bracket + 1e-9);
     }
@@ -165,74 +163,5 @@ mod tests {
         let solution = run(&job).unwrap();
         let total: f64 = solution.electrodes.iter().map(|e| e.current).sum();
         assert!(total.abs() < 1e-9, "no load: nothing flows: {total}");
-    }
-}
-
-#[cfg(test)]
-mod speed_probe {
-    use super::*;
-    use crate::geometry::{Point, Region, Ring};
-    use crate::index::LayerId;
-    use crate::problem::*;
-    #[test]
-    fn plate() {
-        let poly = |p: &[(f64, f64)]| Ring::polygon(p.iter().map(|&(x, y)| Point::new(x, y)));
-        let rings = vec![
-            poly(&[(0., 0.), (240., 0.), (240., 80.), (0., 80.)]),
-            poly(&[(90., 28.), (150., 28.), (150., 32.), (90., 32.)]),
-            poly(&[(90., 48.), (150., 48.), (150., 52.), (90., 52.)]),
-        ];
-        let material =
-            Material { name: "test".into(), resistivity: Resistivity::Linear { at_20: 1.7241e-5, alpha: 0.0 }, density_g_cm3: None };
-        let region = Region::from_rings(&rings);
-        let layer = Layer { name: "p".into(), material, resistivity: 1.7241e-5, thickness_mm: 0.2, rings, region };
-        let mut electrodes = vec![];
-        for y in [15.0, 65.0] {
-            for i in 0..10 {
-                let c = Point::new(12.0 + 24.0 * i as f64, y);
-                let region = Region::from_rings(&[Ring::circle(c, 4.0)]);
-                electrodes.push(Electrode {
-                    name: "e".into(),
-                    kind: ElectrodeKind::Cell,
-                    group: None,
-                    through: vec![LayerId(0)],
-                    spots: vec![Spot {
-                        footprint: Footprint::Area { region, area_mm2: std::f64::consts::PI * 4.0, centre: c, diameter_mm: Some(4.0) },
-                        joint_ohm: 5e-5,
-                    }],
-                    drive: Drive::Current(1.0),
-                });
-            }
-        }
-        electrodes.push(Electrode {
-            name: "t".into(),
-            kind: ElectrodeKind::Terminal,
-            group: None,
-            through: vec![LayerId(0)],
-            spots: vec![Spot { footprint: Footprint::Line { points: vec![Point::new(240., 0.), Point::new(240., 80.)] }, joint_ohm: 0.0 }],
-            drive: Drive::Balance,
-        });
-        for b in [1e-3, 1e-4] {
-            let problem = Problem {
-                title: "t".into(),
-                temperature_c: 20.0,
-                accuracy: Accuracy { bracket: b, max_vertices: 400_000, gauge_mm: None },
-                layers: vec![layer.clone()],
-                contacts: vec![],
-                joins: vec![],
-                electrodes: electrodes.clone(),
-                sources: vec![],
-                probes: vec![],
-                crossings: vec![],
-                limits: Limits::default(),
-            };
-            let t = std::time::Instant::now();
-            let s = run(&problem).unwrap();
-            eprintln!("{:?} spread {:.2e} loss {} {}", t.elapsed(), s.run.voltage_spread, s.loss.low, s.loss.high);
-            for r in &s.run.rounds {
-                eprint!("{}:{:.2e} ", r.triangles, r.gap);
-            }
-            eprintln!();
-        }
     }
 }
