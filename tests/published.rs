@@ -119,10 +119,8 @@ fn every_published_figure_survives_turning_mirroring_shifting_and_scaling() {
     for (name, case) in &cases() {
         let problem = read(&case.sheet, &case.outlines);
         for (change, similarity) in &changes {
-            // Points are rounded to a grid of 1e-6 mm and merged within 1e-4 mm: felt by a drawing of less than a millimetre.
-            let rounding = if similarity.scale < 1.0 { 5e-4 } else { 2e-6 };
             let findings = solved(&similarity.of(&problem), 0.1);
-            wrong.extend(complaints(&format!("{name} {change}"), case, &findings, 0.1, rounding));
+            wrong.extend(complaints(&format!("{name} {change}"), case, &findings, 0.1, 1e-9));
         }
     }
     assert!(wrong.is_empty(), "{}", wrong.join("\n"));

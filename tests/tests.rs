@@ -6,6 +6,7 @@ mod convergence;
 mod demos;
 mod inventory;
 mod laws;
+mod network;
 mod pictures;
 mod published;
 mod refusals;

@@ -1,6 +1,6 @@
 //! The overlay of labelled areas and lines: one planar straight-line graph on a fixed grid, with every move counted.
 //!
-//! Points are rounded to a grid of 2^-20 mm, so that all decisions are exact integer arithmetic. A point closer than
+//! Points are rounded to a grid of 2^-20 mm, so that all decisions are exact integer arithmetic; a drawn point then keeps its own coordinates. A point closer than
 //! [`MERGE_MM`] to another becomes that other; a segment that passes a point closer than that is led through it. This is repeated
 //! until no two segments cross and no point lies on a segment (iterated snap rounding; Hobby 1999, with a wider pixel).
 
@@ -61,14 +61,14 @@ pub fn arrange(areas: &[&[Vec<Point>]], lines: &[&[Point]]) -> Result<Arrangemen
     let mut owners = Vec::new();
     for (label, loops) in areas.iter().enumerate() {
         for points in loops.iter() {
-            let nodes: Vec<u32> = points.iter().map(|&p| work.node(work.on_grid(p))).collect();
+            let nodes: Vec<u32> = points.iter().map(|&p| work.drawn(p)).collect();
             for i in 0..nodes.len() {
                 owners.push((work.segment(nodes[i], nodes[(i + 1) % nodes.len()]), label as u32, true));
             }
         }
     }
     for (label, points) in lines.iter().enumerate() {
-        let nodes: Vec<u32> = points.iter().map(|&p| work.node(work.on_grid(p))).collect();
+        let nodes: Vec<u32> = points.iter().map(|&p| work.drawn(p)).collect();
         for pair in nodes.windows(2) {
             owners.push((work.segment(pair[0], pair[1]), label as u32, false));
         }
@@ -89,6 +89,8 @@ struct Segment {
 struct Work {
     origin: Point,
     nodes: Vec<Node>,
+    /// Where each node lies without the rounding to the grid.
+    exact: Vec<Point>,
     /// Nodes by squares of the merging distance.
     near: HashMap<Node, Vec<u32>>,
     segments: Vec<Segment>,
@@ -123,6 +125,16 @@ impl Work {
         }
     }
 
+    /// The node of a drawn point. A new one keeps the point's own coordinates: all others are further away than the rounding by far.
+    fn drawn(&mut self, p: Point) -> u32 {
+        let known = self.nodes.len();
+        let n = self.node(self.on_grid(p));
+        if n as usize == known {
+            self.exact[known] = p;
+        }
+        n
+    }
+
     /// The nearest node within the merging distance, or a new one.
     fn node(&mut self, p: Node) -> u32 {
         let square = |p: Node| (p.0.div_euclid(MERGE), p.1.div_euclid(MERGE));
@@ -144,6 +156,7 @@ impl Work {
         }
         let n = self.nodes.len() as u32;
         self.nodes.push(p);
+        self.exact.push(self.position(p) + self.origin);
         self.near.entry((sx, sy)).or_default().push(n);
         n
     }
@@ -328,9 +341,8 @@ impl Work {
         }
         // A segment that bounds nothing any more (the two sides of a closed slit) is dropped.
         let kept: Vec<usize> = (0..segments.len()).filter(|&s| !areas[s].is_empty() || !lines[s].is_empty()).collect();
-        let points = self.nodes.iter().map(|&n| self.position(n) + self.origin).collect();
         Arrangement {
-            points,
+            points: self.exact,
             segments: kept.iter().map(|&s| segments[s]).collect(),
             areas: kept.iter().map(|&s| std::mem::take(&mut areas[s])).collect(),
             lines: kept.iter().map(|&s| std::mem::take(&mut lines[s])).collect(),

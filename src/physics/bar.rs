@@ -114,3 +114,64 @@ impl Bar {
         Ok(Ports { field, matrix, residual })
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::pieces::layout;
+    use super::*;
+    use crate::fem::CellPlan;
+    use crate::mesh::triangulated;
+    use crate::reading::read;
+    use std::path::Path;
+
+    /// Two sheets in contact, a tee of ports and a meter: the port matrix from the sparse factor is that of a dense inverse, symmetric, with
+    /// rows of the full (ungrounded) conductance matrix that add up to zero.
+    #[test]
+    fn ports_agree_with_a_dense_inverse() {
+        let sheet = "[[layer]]\nname = \"a\"\nresistivity_uohm_cm = 9\nthickness_mm = 0.2\npoints_mm = [[0, 0], [30, 0], [30, 6], [0, 6]]\n\
+             [[layer]]\nname = \"b\"\nresistivity_uohm_cm = 2\nthickness_mm = 0.1\npoints_mm = [[8, 1], [22, 1], [22, 5], [8, 5]]\n\
+             [[contact]]\nbetween = [\"a\", \"b\"]\ncontact_mohm_mm2 = 20\n\
+             [[cell]]\nname = \"c\"\nlayer = \"a\"\nspots_mm = [[4, 3]]\ndiameter_mm = 1.5\njoint_mohm = 0.1\ncurrent_a = 3\n\
+             [[terminal]]\nname = \"edge\"\nlayer = \"a\"\nline_mm = [[30, 0], [30, 6]]\ncurrent_a = -4\n\
+             [[terminal]]\nname = \"pad\"\nlayer = \"b\"\ndisc_mm = [18, 3, 2]\njoint_mohm = 0.02\ncurrent_a = 1\n\
+             [[probe]]\nname = \"m\"\nlayer = \"a\"\nlayer_b = \"b\"\ntips_mm = [[2, 1], [20, 4]]\ntip_mm = 0.5\n";
+        let problem = read(Path::new("job.toml"), &|_| Ok(sheet.into())).expect("a good sheet").problem;
+        let plan = Plan::new(&problem).unwrap();
+        let (mesh, _) = triangulated(&plan.drawing().unwrap(), 10_000, &|cover| plan.is_metal(cover)).unwrap();
+        let cells: Vec<CellPlan> = mesh.covers.iter().map(|cover| plan.cell(cover).unwrap()).collect();
+        let complex = Complex::new(&mesh, &cells, &plan.line_plans(), problem.electrodes.len()).unwrap();
+        let layout = layout(&problem, &plan, &mesh, &complex).unwrap();
+        let bar = Bar::new(&problem, &plan, &mesh, &complex, &layout).unwrap();
+        let ports = bar.ports().unwrap();
+
+        let everything: Vec<Option<u32>> = (0..complex.order() as u32).map(Some).collect();
+        let full = fem::assembled(&mesh, &complex, &everything);
+        let rows = full.times(&vec![1.0; complex.order()]);
+        let largest = full.lower().2.iter().fold(0.0, |m: f64, v| m.max(v.abs()));
+        assert!(rows.iter().all(|r| r.abs() < 1e-10 * largest), "rows add up to zero");
+
+        let order = bar.matrix.order();
+        let mut dense = Dense::zeros(order, order);
+        let (starts, numbers, values) = bar.matrix.lower();
+        for j in 0..order {
+            for k in starts[j]..starts[j + 1] {
+                dense.set(numbers[k], j, values[k]);
+                dense.set(j, numbers[k], values[k]);
+            }
+        }
+        let width = bar.port_loads.len();
+        let mut right = Dense::zeros(order, width);
+        for (c, load) in bar.port_loads.iter().enumerate() {
+            load.iter().filter_map(|&(u, w)| bar.free[u].map(|row| (row as usize, w))).for_each(|(row, w)| right.add(row, c, w));
+        }
+        let solution = dense.solve(&right).expect("not singular");
+        let scale = (0..width).map(|i| ports.matrix.at(i, i)).fold(0.0, f64::max);
+        for i in 0..width {
+            for j in 0..width {
+                let value: f64 = bar.port_loads[i].iter().filter_map(|&(u, w)| bar.free[u].map(|r| w * solution.at(r as usize, j))).sum();
+                assert!((value - ports.matrix.at(i, j)).abs() < 1e-10 * scale, "({i}, {j})");
+                assert!((ports.matrix.at(i, j) - ports.matrix.at(j, i)).abs() < 1e-12 * scale);
+            }
+        }
+    }
+}
