@@ -16,24 +16,32 @@ pub fn conduction(corners: [Point; 3], conductance: f64) -> [f64; 3] {
 /// The matrix over the unknowns that are `free`: `free[u]` is the row of unknown u, or `None` where it is zero by definition.
 pub fn assembled(mesh: &Mesh, complex: &Complex, free: &[Option<u32>]) -> SymmetricMatrix {
     let mut triplets = Triplets::new(free.iter().flatten().count());
+    // All members of a link have the same two unknowns at its ends: added up first, the triplets are a third as many.
+    let mut between = vec![(0, 0, 0.0); complex.links.len()];
     for (x, element) in complex.elements.iter().enumerate() {
         if element.leaf.held.is_none() {
             let u = complex.unknowns[x];
             let pairs = conduction(mesh.corners(element.triangle as usize), element.leaf.conductance);
             for k in 0..3 {
-                let (i, j) = (u[(k + 1) % 3] as usize, u[(k + 2) % 3] as usize);
-                // A corner whose neighbour is the same pole has no difference to it.
-                let own =
-                    if u[k] as usize == i { 0.0 } else { -pairs[(k + 2) % 3] } + if u[k] as usize == j { 0.0 } else { -pairs[(k + 1) % 3] };
-                if let Some(r) = free[u[k] as usize] {
-                    triplets.add(r as usize, r as usize, own);
-                }
-                if i != j
-                    && let (Some(r), Some(s)) = (free[i], free[j])
-                {
-                    triplets.add(r as usize, s as usize, pairs[k]);
-                }
+                let link = &mut between[complex.link_of[x][k] as usize];
+                *link = (u[(k + 1) % 3] as usize, u[(k + 2) % 3] as usize, link.2 + pairs[k]);
             }
+        }
+    }
+    let mut own = vec![0.0; free.len()];
+    for (i, j, weight) in between {
+        // Two ends on one pole have no difference.
+        if i != j {
+            own[i] -= weight;
+            own[j] -= weight;
+            if let (Some(r), Some(s)) = (free[i], free[j]) {
+                triplets.add(r as usize, s as usize, weight);
+            }
+        }
+    }
+    for (row, value) in free.iter().zip(own) {
+        if let Some(r) = row {
+            triplets.add(*r as usize, *r as usize, value);
         }
     }
     // Adds weight * (linear form)^2; the form names each unknown once.
