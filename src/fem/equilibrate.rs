@@ -361,7 +361,9 @@ struct Work {
     through: Vec<f64>,
     /// Per spoke: what its members must give together.
     given: Vec<f64>,
-    matrix: Vec<f64>,
+    /// Weights between spokes, and from spokes to where current may leave.
+    weights: Vec<f64>,
+    ground: Vec<f64>,
     right: Vec<f64>,
 }
 
@@ -391,8 +393,10 @@ impl Work {
     /// Changes what passes each corner, at least cost, so that the members of every spoke agree.
     fn balance(&mut self, width: usize) {
         let n = self.links.len();
-        self.matrix.clear();
-        self.matrix.resize(n * n, 0.0);
+        self.weights.clear();
+        self.weights.resize(n * n, 0.0);
+        self.ground.clear();
+        self.ground.resize(n, 0.0);
         self.right.clear();
         self.right.resize(n * width, 0.0);
         self.right.iter_mut().zip(&self.given).for_each(|(r, g)| *r = -g);
@@ -402,27 +406,27 @@ impl Work {
             grounded |= far == NONE || near == NONE;
             if far != NONE {
                 let p = far as usize;
-                self.matrix[p * n + p] += weight;
                 self.right[p * width..(p + 1) * width].iter_mut().zip(&self.through[row.clone()]).for_each(|(r, t)| *r += t);
             }
             if near != NONE {
                 let q = near as usize;
-                self.matrix[q * n + q] += weight;
                 let passed = self.demand[row.clone()].iter().zip(&self.through[row]);
                 self.right[q * width..(q + 1) * width].iter_mut().zip(passed).for_each(|(r, (d, t))| *r += d - t);
-                if far != NONE {
-                    let p = far as usize;
-                    self.matrix[p * n + q] -= weight;
-                    self.matrix[q * n + p] -= weight;
+            }
+            match (far, near) {
+                (NONE, NONE) => {}
+                (p, NONE) | (NONE, p) => self.ground[p as usize] += weight,
+                (p, q) => {
+                    self.weights[p as usize * n + q as usize] += weight;
+                    self.weights[q as usize * n + p as usize] += weight;
                 }
             }
         }
-        // With no way out, the balance of the last spoke follows from the others'.
-        let n_free = if grounded { n } else { n.saturating_sub(1) };
-        self.solve(n, n_free, width);
+        // With no way out, the balance of the last spoke follows from the others'; its multiplier is zero.
+        self.solve(n, if grounded { n } else { n.saturating_sub(1) }, width);
         for (i, &[far, near]) in self.spokes.iter().enumerate() {
             for (spoke, sign) in [(far, -self.inverse[i]), (near, self.inverse[i])] {
-                if spoke != NONE && (spoke as usize) < n_free {
+                if spoke != NONE {
                     let from = spoke as usize * width;
                     let rows = self.through[i * width..(i + 1) * width].iter_mut().zip(&self.right[from..from + width]);
                     rows.for_each(|(t, r)| *t += sign * r);
@@ -431,46 +435,41 @@ impl Work {
         }
     }
 
-    /// Cholesky on the leading `m` rows of the `n` x `n` matrix; the right-hand sides become the solution.
+    /// Eliminates the first `m` of `n` spokes of the Laplacian; the right-hand sides become the solution, zero for the others.
+    ///
+    /// Only weights between spokes and to ground are kept, never diagonals: all are positive and nothing is subtracted, so that needles beside fat
+    /// triangles (weights twelve powers of ten apart) lose no digits (Grassmann, Taksar and Heyman 1985).
     fn solve(&mut self, n: usize, m: usize, width: usize) {
-        let a = &mut self.matrix;
+        let w = &mut self.weights;
         for j in 0..m {
-            for k in 0..j {
-                let ljk = a[j * n + k];
-                if ljk != 0.0 {
-                    for i in j..m {
-                        a[i * n + j] -= a[i * n + k] * ljk;
+            let sum = self.ground[j] + w[j * n + j + 1..(j + 1) * n].iter().sum::<f64>();
+            let inverse = if sum > 0.0 { 1.0 / sum } else { 0.0 };
+            for i in j + 1..n {
+                let share = w[j * n + i] * inverse;
+                if share > 0.0 {
+                    for k in (j + 1..n).filter(|&k| k != i) {
+                        w[i * n + k] += share * w[j * n + k];
                     }
+                    self.ground[i] += share * self.ground[j];
+                    let (done, rest) = self.right.split_at_mut(i * width);
+                    rest[..width].iter_mut().zip(&done[j * width..(j + 1) * width]).for_each(|(r, d)| *r += share * d);
                 }
             }
-            let pivot = a[j * n + j].max(f64::MIN_POSITIVE).sqrt();
-            for i in j..m {
-                a[i * n + j] /= pivot;
-            }
-            a[j * n + j] = pivot;
+            self.ground[j] = inverse;
         }
-        for j in 0..m {
-            let (done, rest) = self.right.split_at_mut(j * width);
-            let row = &mut rest[..width];
-            for k in 0..j {
-                let l = a[j * n + k];
-                if l != 0.0 {
-                    row.iter_mut().zip(&done[k * width..(k + 1) * width]).for_each(|(r, d)| *r -= l * d);
-                }
-            }
-            row.iter_mut().for_each(|r| *r /= a[j * n + j]);
-        }
+        self.right[m * width..].fill(0.0);
         for j in (0..m).rev() {
             let (head, done) = self.right.split_at_mut((j + 1) * width);
             let row = &mut head[j * width..];
-            for i in j + 1..m {
-                let l = a[i * n + j];
-                if l != 0.0 {
+            for i in j + 1..n {
+                let weight = w[j * n + i];
+                if weight > 0.0 {
                     let from = (i - j - 1) * width;
-                    row.iter_mut().zip(&done[from..from + width]).for_each(|(r, d)| *r -= l * d);
+                    row.iter_mut().zip(&done[from..from + width]).for_each(|(r, d)| *r += weight * d);
                 }
             }
-            row.iter_mut().for_each(|r| *r /= a[j * n + j]);
+            let inverse = self.ground[j];
+            row.iter_mut().for_each(|r| *r *= inverse);
         }
     }
 }

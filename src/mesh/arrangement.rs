@@ -1,20 +1,24 @@
 //! The overlay of labelled areas and lines: one planar straight-line graph on a fixed grid, with every move counted.
 //!
 //! Points are rounded to a grid of 2^-20 mm, so that all decisions are exact integer arithmetic; a drawn point then keeps its own coordinates. A point closer than
-//! [`MERGE_MM`] to another becomes that other; a segment that passes a point closer than that is led through it. This is repeated
+//! a small part of the drawing ([`MERGE_PART`]) to another becomes that other; a segment that passes a point closer than that is led through it. This is repeated
 //! until no two segments cross and no point lies on a segment (iterated snap rounding; Hobby 1999, with a wider pixel).
 
 use super::MeshFault;
 use crate::geometry::{BoundingBox, Point, SegmentIndex};
 use std::collections::HashMap;
 
-/// Points closer than this become one, segments that pass closer are led through the point.
-pub const MERGE_MM: f64 = 1e-4;
+/// Points closer than this part of the drawing's larger extent, between [`MERGE_LEAST_MM`] and [`MERGE_MOST_MM`], become one; segments that pass
+/// closer are led through the point. A shop cannot cut such a step, but a mesh would have to resolve it.
+pub const MERGE_PART: f64 = 1e-5;
+/// Least merging distance, mm.
+pub const MERGE_LEAST_MM: f64 = 1e-5;
+/// Largest merging distance, mm.
+pub const MERGE_MOST_MM: f64 = 1e-3;
 /// Half the largest extent of a drawing.
 pub const FARTHEST_MM: f64 = 1e6;
 
 const GRID_PER_MM: f64 = (1u64 << 20) as f64;
-const MERGE: i64 = (MERGE_MM * GRID_PER_MM) as i64;
 const PASSES: usize = 40;
 
 /// What was moved while the shapes were brought together.
@@ -57,7 +61,8 @@ pub fn arrange(areas: &[&[Vec<Point>]], lines: &[&[Point]]) -> Result<Arrangemen
     if extent.width().max(extent.height()) > 2.0 * FARTHEST_MM || origin.norm() > 1e9 {
         return Err(MeshFault::TooFar);
     }
-    let mut work = Work { origin, ..Work::default() };
+    let merge = (MERGE_PART * extent.width().max(extent.height())).clamp(MERGE_LEAST_MM, MERGE_MOST_MM);
+    let mut work = Work { origin, merge: (merge * GRID_PER_MM) as i64, ..Work::default() };
     let mut owners = Vec::new();
     for (label, loops) in areas.iter().enumerate() {
         for points in loops.iter() {
@@ -88,6 +93,8 @@ struct Segment {
 #[derive(Default)]
 struct Work {
     origin: Point,
+    /// Merging distance, grid steps.
+    merge: i64,
     nodes: Vec<Node>,
     /// Where each node lies without the rounding to the grid.
     exact: Vec<Point>,
@@ -137,14 +144,14 @@ impl Work {
 
     /// The nearest node within the merging distance, or a new one.
     fn node(&mut self, p: Node) -> u32 {
-        let square = |p: Node| (p.0.div_euclid(MERGE), p.1.div_euclid(MERGE));
+        let square = |p: Node| (p.0.div_euclid(self.merge), p.1.div_euclid(self.merge));
         let (sx, sy) = square(p);
         let mut best: Option<(f64, u32)> = None;
         for dx in -1..=1 {
             for dy in -1..=1 {
                 for &n in self.near.get(&(sx + dx, sy + dy)).into_iter().flatten() {
                     let d = distance(p, self.nodes[n as usize]);
-                    if d <= MERGE as f64 && best.is_none_or(|(b, m)| (d, n) < (b, m)) {
+                    if d <= self.merge as f64 && best.is_none_or(|(b, m)| (d, n) < (b, m)) {
                         best = Some((d, n));
                     }
                 }
@@ -197,7 +204,7 @@ impl Work {
             return None;
         }
         let off = turn(a, b, p).unsigned_abs() as f64 / length;
-        (off <= MERGE as f64).then_some((along, off))
+        (off <= self.merge as f64).then_some((along, off))
     }
 
     /// Where two segments cross in their insides, rounded to the grid.
@@ -215,7 +222,8 @@ impl Work {
     }
 
     fn settle(&mut self) -> Result<(), MeshFault> {
-        let margin = Point::new(2.0 * MERGE_MM, 2.0 * MERGE_MM);
+        let margin = 2.0 * self.merge as f64 / GRID_PER_MM;
+        let margin = Point::new(margin, margin);
         let mut fresh_nodes = 0;
         let mut fresh_segments = 0;
         for _ in 0..PASSES {
