@@ -37,7 +37,7 @@ pub enum Command {
         /// Stop when the loss is enclosed this tightly, in per cent (in place of the sheet's figure)
         #[arg(long, value_name = "P", value_parser = percent, allow_negative_numbers = true)]
         bracket_percent: Option<f64>,
-        /// Folder for the results [default: ./pinchbar-out/<job name>]
+        /// Folder for the results [default: ./pinchbar-out/JOB]
         #[arg(long, value_name = "DIR")]
         out: Option<PathBuf>,
         /// Put the wall time of every stage into the JSON

@@ -4,7 +4,7 @@ use crate::diagnostic::{Fault, Label, Span};
 use crate::index::{CrossingId, ElectrodeId, ProbeId};
 use crate::mesh::MeshFault;
 use crate::physics::Fault as Late;
-use crate::problem::Problem;
+use crate::problem::{Drive, Problem};
 use crate::reading::Origins;
 
 /// True when the tool failed, not the input.
@@ -45,7 +45,11 @@ pub fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
             first(electrodes),
             format!("the currents of {} add up to {sum} A", list(electrodes)),
             "a sum of zero on every connected piece",
-            "correct a current, or leave `current_a` out of one terminal: it then takes the balance",
+            if electrodes.iter().all(|k| matches!(problem.electrodes[k.index()].drive, Drive::Current(_))) {
+                "correct a current, or leave `current_a` out of one terminal: it then takes the balance"
+            } else {
+                "correct one of the currents given"
+            },
         ),
         Late::BalanceUnclear(electrodes) => at(
             first(electrodes),

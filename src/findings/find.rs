@@ -7,7 +7,7 @@ use super::verdict::{largest_drop_mv, verdicts};
 use super::*;
 use crate::geometry::{Point, nested_area};
 use crate::index::{ContactId, ElectrodeId, JoinId};
-use crate::physics::network::Interval;
+use crate::physics::network::{Interval, LARGEST_RESIDUAL};
 use crate::physics::plan::Mark;
 use crate::physics::solution::Passed;
 use crate::physics::{self, Fault, Solution};
@@ -158,7 +158,7 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
     if !solution.run.reached {
         let gap = last.map_or(0.0, |r| 100.0 * r.gap);
         findings.remarks.push(Remark::new(format!(
-            "Accuracy not reached: at the vertex limit of {} the loss is enclosed to {gap:.3} % and the voltages to {:.3} % of the largest difference; {} % was asked for. All intervals hold.",
+            "Accuracy not reached: near the vertex limit of {} the loss is enclosed to {gap:.3} % and the voltages to {:.3} % of the largest difference; {} % was asked for. All intervals hold.",
             problem.accuracy.max_vertices,
             100.0 * solution.run.voltage_spread,
             100.0 * problem.accuracy.bracket
@@ -176,9 +176,9 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
             "The first mesh kept some thin triangles for want of vertices: more rounds were needed, the intervals hold.",
         ));
     }
-    if solution.run.residual > 1e-9 {
+    if solution.run.residual > LARGEST_RESIDUAL {
         findings.remarks.push(Remark::new(format!(
-            "The linear solve left a residual of {:.1e}: figures may be off by that part.",
+            "The linear solve left a residual of {:.1e}: the intervals are NOT guaranteed. Look for resistances or thicknesses many powers of ten apart.",
             solution.run.residual
         )));
     }

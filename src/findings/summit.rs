@@ -93,7 +93,7 @@ impl Nodes {
     }
 }
 
-/// The places of a sheet to look at closely; `None` where |J| is nowhere above its mean (given) by more than [`PROMINENCE`]: a strip.
+/// The places of a sheet to look at closely; `None` where |J| is nowhere above its mean (given) by more than the prominence asked of a place: a strip.
 /// Places below a part (`floor`) of the highest are left out.
 pub fn starts(setting: &Setting, metal: &LayerMetal, mean: f64, floor: f64) -> Option<Vec<Place>> {
     let mesh = &setting.solution.mesh;

@@ -17,10 +17,12 @@ pub fn verdicts(problem: &Problem, solution: &Solution, findings: &Findings) -> 
         list.push(verdict(format!("density_a_mm2.{}", layer.name), Some(layer.peak_a_mm2), limit));
     }
     for (group, ratio) in sharing(problem, solution) {
-        let mut row = verdict(format!("sharing.{group}"), Some(ratio), limits.sharing);
-        if let Some(limit) = limits.sharing {
+        let mut row = verdict(format!("sharing.{group}"), ratio, limits.sharing);
+        match (ratio, limits.sharing) {
             // One is perfect: what counts is how much of the allowed excess is used.
-            judge(&mut row, (ratio - 1.0) / (limit - 1.0));
+            (Some(ratio), Some(limit)) => judge(&mut row, (ratio - 1.0) / (limit - 1.0)),
+            (None, Some(_)) => row.source = "job sheet; no net current or a single cell in the group".into(),
+            _ => {}
         }
         list.push(row);
     }
@@ -71,20 +73,18 @@ pub fn largest_drop_mv(solution: &Solution) -> Option<Enclosure> {
     worst.map(|(low, high)| Enclosure { low, value: 0.5 * (low + high), high })
 }
 
-/// Per group of two cells or more: largest over mean current, unfavourable end.
-fn sharing(problem: &Problem, solution: &Solution) -> BTreeMap<String, f64> {
+/// Per group of cells: largest over mean current, unfavourable end; `None` for a single cell or no net current.
+fn sharing(problem: &Problem, solution: &Solution) -> BTreeMap<String, Option<f64>> {
     let mut groups: BTreeMap<String, Vec<usize>> = BTreeMap::new();
     for (k, electrode) in problem.electrodes.iter().enumerate().filter(|(_, e)| e.kind == ElectrodeKind::Cell) {
         groups.entry(electrode.group.clone().unwrap_or_default()).or_default().push(k);
     }
-    groups
-        .into_iter()
-        .filter(|(_, members)| members.len() > 1)
-        .filter_map(|(group, members)| {
-            let mean = members.iter().map(|&k| solution.electrodes[k].current).sum::<f64>().abs() / members.len() as f64;
-            let range = |k: usize| solution.electrodes[k].current_range;
-            let largest = members.iter().map(|&k| range(k).high.abs().max(range(k).low.abs())).fold(0.0, f64::max);
-            (mean > 0.0).then_some((group, largest / mean))
-        })
-        .collect()
+    let ratio = |members: &[usize]| {
+        let mean = members.iter().map(|&k| solution.electrodes[k].current).sum::<f64>().abs() / members.len() as f64;
+        let range = |k: usize| solution.electrodes[k].current_range;
+        let largest = members.iter().map(|&k| range(k).high.abs().max(range(k).low.abs())).fold(0.0, f64::max);
+        // Currents that cancel to rounding have no mean to speak of.
+        (members.len() > 1 && mean > 1e-9 * largest).then(|| largest / mean)
+    };
+    groups.into_iter().map(|(group, members)| (group, ratio(&members))).collect()
 }

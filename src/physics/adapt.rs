@@ -115,6 +115,7 @@ impl Rounds<'_> {
         self.record.rounds.push(Round { vertices: mesh.points.len(), triangles: mesh.triangles.len(), gap });
 
         let loss_enclosed = gap <= problem.accuracy.bracket;
+        let room = problem.accuracy.max_vertices;
         let mut answer = None;
         let mut finer = None;
         if loss_enclosed || is_first {
@@ -125,15 +126,16 @@ impl Rounds<'_> {
             }
             if loss_enclosed && !enclosed.failing.is_empty() {
                 let indicator = fem::weighted_indicators(&mesh, &complex, &ports.field, &bar.loads, &probed(&enclosed.failing));
-                finer = Some(refined(&mesh, indicator, GOAL / enclosed.excess));
+                finer = refined(&mesh, indicator, GOAL / enclosed.excess, room);
             }
             answer = Some(enclosed);
         }
         if !loss_enclosed {
-            finer = Some(refined(&mesh, flux.indicator.clone(), GOAL * problem.accuracy.bracket / (gap * self.strictness)));
+            finer = refined(&mesh, flux.indicator.clone(), GOAL * problem.accuracy.bracket / (gap * self.strictness), room);
         }
-        let room = |finer: &Mesh| finer.points.len() <= problem.accuracy.max_vertices;
-        let finer = finer.filter(|f| room(f) && self.record.rounds.len() < MOST_ROUNDS);
+        // Close to the limit, a step that adds next to nothing is not worth a round.
+        let worth = |f: &Mesh| f.points.len() * 2 < room || f.points.len() * 50 > mesh.points.len() * 51;
+        let finer = finer.filter(|f| worth(f) && self.record.rounds.len() < MOST_ROUNDS);
         if finer.is_none() && answer.is_none() {
             let ports = ports.take().map_or_else(|| bar.ports(), Ok)?;
             answer = Some(enclose(problem, &mesh, &complex, &layout, &bar, &ports)?);
@@ -141,7 +143,7 @@ impl Rounds<'_> {
         let Some(answer) = answer else { return Ok((None, finer)) };
         let (passed, layer_loss) = account(problem, plan, &mesh, &complex, &potential, &flux);
         self.record.unknowns = complex.order();
-        self.record.reached = loss_enclosed && answer.failing.is_empty();
+        self.record.reached = loss_enclosed && answer.failing.is_empty() && answer.residual <= network::LARGEST_RESIDUAL;
         self.record.voltage_spread = answer.voltage_spread;
         self.record.residual = answer.residual;
         let solution = Solution {
@@ -176,8 +178,9 @@ const GROWTH: f64 = 3.0;
 /// Part of the predicted gap that is marked at a time (Doerfler 1996).
 const SHARE: f64 = 0.3;
 
-/// Refines where the indicators are largest, again and again by what they are predicted to become, until they have fallen to a part `goal` of their sum.
-fn refined(mesh: &Mesh, mut indicator: Vec<f64>, goal: f64) -> Mesh {
+/// Refines where the indicators are largest, again and again by what they are predicted to become, until they have fallen to a part `goal` of their sum
+/// or the next step would not find room for its vertices; `None` where not even one step does.
+fn refined(mesh: &Mesh, mut indicator: Vec<f64>, goal: f64, room: usize) -> Option<Mesh> {
     let goal = goal * indicator.iter().sum::<f64>();
     let most = (GROWTH * mesh.triangles.len() as f64) as usize;
     let mut finer: Option<Mesh> = None;
@@ -190,9 +193,12 @@ fn refined(mesh: &Mesh, mut indicator: Vec<f64>, goal: f64) -> Mesh {
         // Between a smooth field (a quarter of the gap is left when all edges are halved) and a right-angled inside corner (0.4).
         indicator =
             parents.iter().enumerate().map(|(t, &p)| indicator[p as usize] * (next.area(t) / from.area(p as usize)).powf(1.8)).collect();
+        if next.points.len() > room {
+            return finer;
+        }
         let enough = indicator.iter().sum::<f64>() <= goal || next.triangles.len() >= most;
         finer = Some(next);
-        if enough && let Some(finer) = finer {
+        if enough {
             return finer;
         }
     }

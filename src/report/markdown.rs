@@ -14,7 +14,7 @@ pub fn report(problem: &Problem, findings: &Findings) -> String {
         out.line(format!("> {caution}"));
     }
     out.line("![Where current crowds](heatmap.png)");
-    out.line(in_short(problem, findings));
+    out.line(in_short(problem));
     headline(&mut out, findings);
     crowding(&mut out, findings);
     electrodes(&mut out, findings);
@@ -40,18 +40,16 @@ pub fn report(problem: &Problem, findings: &Findings) -> String {
 }
 
 /// What was solved, in one sentence.
-fn in_short(problem: &Problem, findings: &Findings) -> String {
+fn in_short(problem: &Problem) -> String {
     let sheets: Vec<String> =
         problem.layers.iter().map(|l| format!("{} ({}, {} mm)", plain(&l.name), plain(&l.material.name), l.thickness_mm)).collect();
     let cells = problem.electrodes.iter().filter(|e| e.kind == ElectrodeKind::Cell).count();
-    let into: f64 = findings.electrodes.iter().map(|e| e.current_a.max(0.0)).sum();
     format!(
-        "Solved: {}, at {} °C, with {} and {}; {} A go in and out.",
+        "Solved: {}, at {} °C, with {} and {}.",
         if sheets.len() == 1 { sheets.join("") } else { format!("{} sheets, bottom first: {}", sheets.len(), sheets.join(", ")) },
         problem.temperature_c,
         counted(cells, "cell end"),
-        counted(problem.electrodes.len() - cells, "terminal"),
-        three(into)
+        counted(problem.electrodes.len() - cells, "terminal")
     )
 }
 
@@ -110,7 +108,7 @@ fn headline(out: &mut Page, findings: &Findings) {
     let run = &findings.run;
     out.line(format!(
         "An interval encloses the exact value of the model for certain; it is no estimate of scatter. The loss is enclosed to {} %{}. \
-         Mesh: {} triangles, {} unknowns, {} rounds.",
+         Mesh: {} triangles, {} unknowns, {} round(s).",
         three(run.bracket_percent),
         if run.reached { "" } else { ", which is NOT as tight as asked" },
         run.triangles,

@@ -25,7 +25,7 @@ pub fn summary(findings: &Findings) -> String {
     }
     let run = &findings.run;
     line(format!(
-        "  enclosed to    {} %{}, {} triangles, {} rounds",
+        "  enclosed to    {} %{}, {} triangles, {} round(s)",
         three(run.bracket_percent),
         if run.reached { "" } else { " (NOT as asked)" },
         run.triangles,

@@ -5,7 +5,7 @@ use crate::problem::Problem;
 use crate::quantity::{outward, three};
 
 /// The caution that stands in every report.
-pub const CAUTION: &str = "Estimate only. Live cells: burn, arc and fire danger. Test before use; see the cautions in the manual.";
+pub const CAUTION: &str = "Estimate only. Live cells: burn, arc and fire danger. Test before use; `pinchbar --help` has the cautions.";
 
 /// The long caution, for `--help` and the manual.
 pub const LONG_CAUTION: &str = "\
@@ -48,6 +48,10 @@ pub fn one_line(text: &str) -> String {
 
 /// "low ... high", rounded outward.
 pub fn interval(enclosure: Enclosure) -> String {
+    // The rounding that every interval is widened by is no figure of its own around zero.
+    if enclosure.low <= 0.0 && enclosure.high >= 0.0 && enclosure.high - enclosure.low < 1e-5 {
+        return "0".into();
+    }
     let (low, high) = outward(enclosure.low, enclosure.high);
     if low == high { low } else { format!("{low} ... {high}") }
 }

@@ -87,7 +87,7 @@ fn read_terminal(block: &Value, layers: &Names, names: &mut Names, notes: &Notes
     fields.missing("layer", "the name of a layer");
     let layer = fields.text("layer").and_then(|l| layer_id(&l, layers, notes));
     let places = drawn_places(&fields, &["line_mm", "edge_mm", "disc_mm", "points_mm"]);
-    let joint = if fields.has("joint_mohm") { fields.not_negative("joint_mohm") } else { Some(0.0) };
+    let joint = if fields.has("joint_mohm") { fields.joint("joint_mohm") } else { Some(0.0) };
     let current = current(&fields);
     let voltage = fields.number_where("voltage_mv", "within a million volts", |v| v.abs() <= 1e9);
     let drive = match (fields.has("current_a"), fields.has("voltage_mv")) {
@@ -132,7 +132,7 @@ fn read_end(fields: &Fields, layers: &Names, notes: &Notes) -> Option<End> {
     };
     let places = drawn_places(fields, &CELL_PLACES);
     fields.missing("joint_mohm", "the resistance of one spot's interface in milliohm; 0 is solid");
-    let joint = fields.not_negative("joint_mohm");
+    let joint = fields.joint("joint_mohm");
     Some(End { through: through?, places: places?, joint_ohm: joint? * 1e-3 })
 }
 

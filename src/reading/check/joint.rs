@@ -40,7 +40,7 @@ fn read_contact(block: &Value, stack: &Stack, names: &mut Names, files: &Files, 
             if !has_state(block) {
                 fields.missing("contact_mohm_mm2", "the contact's resistance times area in milliohm mm2; 0 is bonded");
             }
-            fields.not_negative("contact_mohm_mm2").map(|value| match value {
+            fields.joint("contact_mohm_mm2").map(|value| match value {
                 0.0 => Interface::Bonded,
                 // 1 mohm mm2 is 1e-3 ohm mm2.
                 value => Interface::Conductance(1.0 / (value * 1e-3)),
@@ -52,11 +52,6 @@ fn read_contact(block: &Value, stack: &Stack, names: &mut Names, files: &Files, 
     let default_name = format!("{} on {}", stack.name(a), stack.name(b));
     overlaps(between, area.as_ref(), stack, fields.place("between"), notes)?;
     let interface = interface?;
-    if matches!(interface, Interface::Conductance(g) if !g.is_finite()) {
-        let remedy = "write 0 for a bond";
-        notes.fault("`contact_mohm_mm2` is too small to count", fields.place("contact_mohm_mm2"), "0, or a value above 1e-300", remedy);
-        return None;
-    }
     let span = name.as_ref().map_or_else(|| fields.span.clone(), |n| n.span.clone());
     Some((Contact { name: name.map_or(default_name, |n| n.value), between, area, interface }, span))
 }
@@ -156,7 +151,7 @@ fn read_join(block: &Value, stack: &Stack, files: &Files, notes: &Notes) -> Opti
     let between = read_between(&fields, stack, notes);
     let places = drawn_places(&fields, &["spots_mm", "seams_mm", "areas_mm"]);
     fields.missing("joint_mohm", "the resistance of one spot's interface in milliohm; 0 is a bond");
-    let joint = fields.not_negative("joint_mohm");
+    let joint = fields.joint("joint_mohm");
     let (between, places) = (between?, places?);
     let limit = files.budget.borrow_mut().spend_spots(places.len(), fields.span);
     notes.keep(limit)?;
