@@ -267,26 +267,31 @@ pub fn sharpened(problem: &Problem, old: Solution, discs: &[(LayerId, Point, f64
 
 /// The mesh refined until no triangle that meets one of the discs is longer than a quarter of its diameter, or the vertex limit is met.
 fn resolved_under(mut mesh: Mesh, discs: &[(LayerId, Point, f64)], most: usize) -> Mesh {
+    // Only triangles that are new need a look: the others were fine the time before.
+    let mut fresh = vec![true; mesh.triangles.len()];
     loop {
-        let coarse: Vec<bool> = (0..mesh.triangles.len())
-            .map(|t| {
-                let corners = mesh.corners(t);
-                let longest = (0..3).map(|k| corners[k].distance(corners[(k + 1) % 3])).fold(0.0, f64::max);
-                discs.iter().any(|&(layer, middle, diameter)| {
-                    longest > 0.25 * diameter
-                        && corners[0].distance(middle) < 0.5 * diameter + longest
-                        && mesh.cover(t).contains(&layer.0)
-                        && distance_to_triangle(corners, middle) <= 0.5 * diameter
-                })
+        let is_coarse = |t: usize| {
+            let corners = mesh.corners(t);
+            let longest = (0..3).map(|k| corners[k].distance(corners[(k + 1) % 3])).fold(0.0, f64::max);
+            discs.iter().any(|&(layer, middle, diameter)| {
+                let (way, reach) = (corners[0] - middle, 0.5 * diameter + longest);
+                longest > 0.25 * diameter
+                    && way.dot(way) < reach * reach
+                    && mesh.cover(t).contains(&layer.0)
+                    && distance_to_triangle(corners, middle) <= 0.5 * diameter
             })
-            .collect();
+        };
+        let coarse: Vec<bool> = fresh.iter().enumerate().map(|(t, &fresh)| fresh && is_coarse(t)).collect();
         if !coarse.contains(&true) {
             return mesh;
         }
-        let (finer, _) = bisected(&mesh, &coarse);
+        let (finer, parents) = bisected(&mesh, &coarse);
         if finer.points.len() > most {
             return mesh;
         }
+        let mut children = vec![0u8; mesh.triangles.len()];
+        parents.iter().for_each(|&p| children[p as usize] += 1);
+        fresh = parents.iter().map(|&p| children[p as usize] > 1).collect();
         mesh = finer;
     }
 }
