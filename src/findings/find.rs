@@ -12,6 +12,7 @@ use crate::physics::plan::Mark;
 use crate::physics::solution::Passed;
 use crate::physics::{self, Fault, Solution};
 use crate::problem::{Crossing, Electrode, ElectrodeKind, Footprint, Interface, Problem};
+use rayon::prelude::*;
 
 /// Times that the mesh is refined under the hotspots: the first places may move a little when they are resolved.
 const SHARPENINGS: usize = 1;
@@ -51,14 +52,14 @@ pub fn find(problem: &Problem) -> Result<Found, Vec<Fault>> {
     for (layer, peak) in findings.layers.iter_mut().zip(&survey.layer_peaks) {
         layer.peak_a_mm2 = *peak;
     }
-    for (k, electrode) in problem.electrodes.iter().enumerate() {
-        let Some(&layer) = electrode.through.last() else { continue };
-        for (spot, out) in electrode.spots.iter().zip(&mut findings.electrodes[k].spots) {
+    findings.electrodes.par_iter_mut().zip(&problem.electrodes).for_each(|(finding, electrode)| {
+        let Some(&layer) = electrode.through.last() else { return };
+        for (spot, out) in electrode.spots.iter().zip(&mut finding.spots) {
             if let Footprint::Area { region, .. } = &spot.footprint {
                 out.rim_a_mm2 = density.rim_peak(layer, &region.loops);
             }
         }
-    }
+    });
     findings.crossings = crossings(problem, &density)?;
     findings.hotspots = survey.rows;
     findings.verdicts = verdicts(problem, &solution, &findings);
