@@ -33,7 +33,7 @@ pub fn summary(findings: &Findings) -> String {
     ));
     if !findings.hotspots.is_empty() {
         line(String::new());
-        line("  Where current crowds (gauge peaks, worst first)".into());
+        line("  Where current crowds (gauge peaks; worst first, by part of a limit if given)".into());
         line(format!(
             "  {:>2} {:13} {:12} {:>8} {:>8} {:>8} {:>6} {:>7} {:>5}",
             "no", "kind", "layer", "x mm", "y mm", "A/mm2", "width", "A", "crowd"
