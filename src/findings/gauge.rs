@@ -141,7 +141,7 @@ impl<'a> Disc<'a> {
             sum.direction = sum.direction + triangle.density * part;
             sum.middle = sum.middle + triangle.middle() * part;
             // A triangle that the disc only just touches does not spoil the mean.
-            if part > 0.02 * whole {
+            if part > 0.05 * whole {
                 sum.longest = sum.longest.max(triangle.longest());
             }
         });

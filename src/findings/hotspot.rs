@@ -9,6 +9,7 @@ use super::{Hotspot, HotspotKind};
 use crate::geometry::Point;
 use crate::index::LayerId;
 use crate::physics::Solution;
+use crate::physics::adapt::{FineDisc, RESOLVED};
 use crate::physics::plan::Plan;
 use crate::problem::Problem;
 use rayon::prelude::*;
@@ -51,9 +52,8 @@ pub struct Survey {
     pub places: Vec<HotspotPlace>,
     /// Per sheet: the largest gauge mean, A/mm².
     pub layer_peaks: Vec<f64>,
-    /// Discs (sheet, centre, diameter) at rows and sheets' peaks with a triangle under them longer than a quarter of their diameter: gauge discs
-    /// and wider ones around them.
-    pub unresolved: Vec<(LayerId, Point, f64)>,
+    /// Discs at rows and sheets' peaks under which the mesh is too coarse: gauge discs and wider ones around them.
+    pub unresolved: Vec<FineDisc>,
 }
 
 /// What the search looks at.
@@ -88,13 +88,21 @@ struct Candidate {
 
 impl Candidate {
     /// Discs under which the mesh is too coarse: the gauge disc, and a wider one, from which a coarse mesh would spoil the field within.
-    fn unresolved(&self, metal: &LayerMetal) -> Vec<(LayerId, Point, f64)> {
+    fn unresolved(&self, metal: &LayerMetal, outline: &Outline) -> Vec<FineDisc> {
         if self.character.kind == HotspotKind::Strip {
             return Vec::new();
         }
-        let discs = [(&self.covered, metal.gauge), (&self.around, AROUND * metal.gauge)];
-        let coarse = discs.into_iter().filter(|(covered, diameter)| covered.longest > 0.25 * diameter);
-        coarse.map(|(_, diameter)| (metal.layer, self.place.point, diameter)).collect()
+        let mut fine = Vec::new();
+        for (covered, diameter) in [(&self.covered, metal.gauge), (&self.around, AROUND * metal.gauge)] {
+            let longest = RESOLVED * diameter;
+            if covered.longest > longest {
+                // On a finer mesh the peak may be found in a corner nearby.
+                let corners = outline.corners_near(self.place.point, covered.longest);
+                let centres = std::iter::once(self.place.point).chain(corners);
+                fine.extend(centres.map(|centre| FineDisc { layer: metal.layer, centre, diameter, longest }));
+            }
+        }
+        fine
     }
 
     /// Order of equals: from left to right, then upwards, in steps of the gauge.
@@ -115,10 +123,11 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
     let mut found: Vec<(LayerId, Candidate)> = Vec::new();
     for metal in &density.layers {
         let candidates = candidates_of(&setting, metal);
+        let outline = &setting.outlines[metal.layer.index()];
         let highest = candidates.iter().max_by(|a, b| a.peak.total_cmp(&b.peak));
         if let Some(highest) = highest {
             survey.layer_peaks[metal.layer.index()] = highest.peak;
-            survey.unresolved.extend(highest.unresolved(metal));
+            survey.unresolved.extend(highest.unresolved(metal, outline));
         }
         found.extend(candidates.into_iter().filter(|c| c.exceeds).map(|c| (metal.layer, c)));
     }
@@ -132,7 +141,7 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
     for (layer, c) in &found {
         let metal = &density.layers[layer.index()];
         survey.places.push(HotspotPlace { layer: *layer, centre: c.place.point, section_ends: c.section.map(|s| s.ends) });
-        for coarse in c.twins.iter().chain([c]).flat_map(|each| each.unresolved(metal)) {
+        for coarse in c.twins.iter().chain([c]).flat_map(|each| each.unresolved(metal, &setting.outlines[layer.index()])) {
             if !survey.unresolved.contains(&coarse) {
                 survey.unresolved.push(coarse);
             }
@@ -254,6 +263,7 @@ fn same(metal: &LayerMetal, a: &Candidate, b: &Candidate) -> bool {
     }
     match a.character.kind {
         HotspotKind::Neck => one_neck(metal, s, t),
+        _ if a.character.fillet.is_some() && a.character.fillet == b.character.fillet => true,
         _ => a.character.ring.is_some() && a.character.ring == b.character.ring && distance < s.width.max(t.width).min(10.0 * metal.gauge),
     }
 }

@@ -50,6 +50,8 @@ pub struct Character {
     pub spot: Option<Area>,
     /// The ring whose corner or edge it is at.
     pub ring: Option<usize>,
+    /// The fillet it is on.
+    pub fillet: Option<usize>,
     /// True when the exact density is infinite there.
     pub singular: bool,
     /// True when something is as small as the sheet is thick.
@@ -147,6 +149,12 @@ impl Outline {
             }
         }
         outline
+    }
+
+    /// Re-entrant corners and ends of line joints within reach of a point.
+    pub fn corners_near(&self, point: Point, reach: f64) -> impl Iterator<Item = Point> {
+        let all = self.corners.iter().map(|c| c.point).chain(self.line_ends.iter().map(|e| e.0));
+        all.filter(move |c| c.distance(point) <= reach)
     }
 }
 
@@ -251,19 +259,21 @@ pub fn character(setting: &Setting, metal: &LayerMetal, touched: &Touched, place
     let (problem, outline) = (setting.problem, &setting.outlines[metal.layer.index()]);
     let reach = REACH * metal.gauge;
     let p = place.point;
-    let mut character = Character { kind: HotspotKind::Other, spot: None, ring: None, singular: false, coarse: false };
+    let mut character = Character { kind: HotspotKind::Other, spot: None, ring: None, fillet: None, singular: false, coarse: false };
     let small = |length: f64| length < THIN * metal.thickness;
     let line_end = outline.line_ends.iter().find(|e| e.0.distance(p) <= reach);
     let corner =
         outline.corners.iter().filter(|c| c.point.distance(p) <= reach).min_by(|a, b| a.point.distance(p).total_cmp(&b.point.distance(p)));
-    let fillet = outline.fillets.iter().find(|f| {
+    let on_fillet = |f: &Fillet| {
         let from = p - f.arc.centre;
         let turned = (from.y.atan2(from.x) - f.arc.start) * f.arc.sweep.signum();
         let turned = turned.rem_euclid(std::f64::consts::TAU);
         (from.norm() - f.arc.radius).abs() <= reach
             && (turned <= f.arc.sweep.abs() || [0.0, 1.0].iter().any(|&s| f.arc.point(s).distance(p) <= reach))
             && section.is_none_or(|s| f.arc.radius <= FILLET * s.width)
-    });
+    };
+    character.fillet = outline.fillets.iter().position(on_fillet);
+    let fillet = character.fillet.map(|f| &outline.fillets[f]);
     let on_ring = |point: Point, within: f64| {
         outline.rings.iter().enumerate().filter(|(_, r)| r.hole).find(|(_, r)| {
             (0..r.points.len())

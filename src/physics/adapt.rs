@@ -23,8 +23,8 @@ pub struct Rounds<'a> {
     cells: Vec<CellPlan>,
     lines: Vec<LinePlan>,
     record: RunRecord,
-    /// How much wider, in parts of what is asked, the voltages' intervals are than the loss's: learnt on the first mesh.
-    strictness: f64,
+    /// Whether the voltages' intervals are so much wider than the loss's that every round has to look at them.
+    voltages_lead: bool,
 }
 
 /// The solution on the first mesh, and the way on from it.
@@ -32,6 +32,24 @@ pub struct Started<'a> {
     rounds: Rounds<'a>,
     /// Everything is enclosed in it, but not yet as tightly as asked.
     pub first: Solution,
+    wanted: Option<Wanted>,
+}
+
+/// What a round leaves to the next: where the gap lies, and how much of it may be left.
+struct Wanted {
+    /// Per triangle.
+    indicator: Vec<f64>,
+    /// What the indicators may still add up to.
+    goal: f64,
+}
+
+/// How a round ended.
+struct Outcome {
+    /// Where everything was enclosed: always the first and the last time.
+    solution: Option<Solution>,
+    /// What is left to do.
+    wanted: Option<Wanted>,
+    /// The mesh that does it; in the first round it is not made yet.
     finer: Option<Mesh>,
 }
 
@@ -49,29 +67,34 @@ impl<'a> Started<'a> {
         let cells = cells(&plan, &mesh)?;
         let lines = plan.line_plans();
         let record = RunRecord { moves: drawing.moves, angles_reached: quality.angles_reached, ..RunRecord::default() };
-        let mut rounds = Rounds { problem, plan, cells, lines, record, strictness: 1.0 };
+        let mut rounds = Rounds { problem, plan, cells, lines, record, voltages_lead: false };
         match rounds.round(mesh)? {
-            (Some(first), finer) => Ok(Self { rounds, first, finer }),
-            (None, _) => Err(without_answer()),
+            Outcome { solution: Some(first), wanted, .. } => Ok(Self { rounds, first, wanted }),
+            _ => Err(without_answer()),
         }
     }
 
-    /// Refines until the loss and every voltage are enclosed as the problem asks and the triangles under some discs (layer, middle, diameter in mm)
-    /// are no longer than a quarter of the diameter, or the vertex limit is met.
+    /// Refines until the loss and every voltage are enclosed as the problem asks and the mesh is fine under some discs, or the vertex limit is met.
     ///
     /// # Errors
     /// A numerical failure.
-    pub fn finished(self, discs: &[(LayerId, Point, f64)]) -> Result<Solution, Vec<Fault>> {
-        let Self { mut rounds, first, finer } = self;
-        let Some(finer) = finer else {
+    pub fn finished(self, discs: &[FineDisc]) -> Result<Solution, Vec<Fault>> {
+        let Self { mut rounds, first, wanted } = self;
+        let Some(wanted) = wanted else {
             return if discs.is_empty() { Ok(first) } else { sharpened(rounds.problem, first, discs) };
         };
-        let mut mesh = resolved_under(finer, discs, rounds.problem.accuracy.max_vertices);
+        let room = rounds.problem.accuracy.max_vertices;
+        // The discs first: what they take from the gap need not be taken elsewhere.
+        let (resolved, indicator) = resolved_under(first.mesh.clone(), wanted.indicator, discs, room);
+        let Some(mut mesh) = refined(&resolved, indicator, wanted.goal, room).or((!discs.is_empty()).then_some(resolved)) else {
+            return Ok(first);
+        };
+        drop(first);
         loop {
             match rounds.round(mesh)? {
-                (_, Some(finer)) => mesh = finer,
-                (Some(solution), None) => return Ok(solution),
-                (None, None) => return Err(without_answer()),
+                Outcome { finer: Some(finer), .. } => mesh = finer,
+                Outcome { solution: Some(solution), .. } => return Ok(solution),
+                _ => return Err(without_answer()),
             }
         }
     }
@@ -86,8 +109,8 @@ fn cells(plan: &Plan, mesh: &Mesh) -> Result<Vec<CellPlan>, Vec<Fault>> {
 }
 
 impl Rounds<'_> {
-    /// One round on a mesh: the solution where everything was enclosed (always the first and the last time), and the next mesh, if there is one.
-    fn round(&mut self, mesh: Mesh) -> Result<(Option<Solution>, Option<Mesh>), Vec<Fault>> {
+    /// One round on a mesh.
+    fn round(&mut self, mesh: Mesh) -> Result<Outcome, Vec<Fault>> {
         let (problem, plan) = (self.problem, &self.plan);
         let complex = Complex::new(&mesh, &self.cells, &self.lines, problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
         let is_first = self.record.rounds.is_empty();
@@ -117,33 +140,36 @@ impl Rounds<'_> {
         let loss_enclosed = gap <= problem.accuracy.bracket;
         let room = problem.accuracy.max_vertices;
         let mut answer = None;
-        let mut finer = None;
-        if loss_enclosed || is_first {
+        let mut wanted = None;
+        if loss_enclosed || is_first || self.voltages_lead {
             let ports = ports.take().map_or_else(|| bar.ports(), Ok)?;
             let enclosed = enclose(problem, &mesh, &complex, &layout, &bar, &ports)?;
-            if gap > 0.0 {
-                self.strictness = self.strictness.max(enclosed.excess * problem.accuracy.bracket / gap);
-            }
-            if loss_enclosed && !enclosed.failing.is_empty() {
-                let indicator = fem::weighted_indicators(&mesh, &complex, &ports.field, &bar.loads, &probed(&enclosed.failing));
-                finer = refined(&mesh, indicator, GOAL / enclosed.excess, room);
+            if enclosed.excess > 1.0 {
+                self.voltages_lead = !enclosed.wide.is_empty() && enclosed.excess > LEAD * gap / problem.accuracy.bracket;
+                let indicator = if self.voltages_lead || loss_enclosed && !enclosed.wide.is_empty() {
+                    fem::weighted_indicators(&mesh, &complex, &ports.field, &bar.loads, &probed(&enclosed.wide))
+                } else {
+                    flux.indicator.clone()
+                };
+                let goal = GOAL / enclosed.excess * indicator.iter().sum::<f64>();
+                wanted = Some(Wanted { indicator, goal });
             }
             answer = Some(enclosed);
-        }
-        if !loss_enclosed {
-            finer = refined(&mesh, flux.indicator.clone(), GOAL * problem.accuracy.bracket / (gap * self.strictness), room);
+        } else {
+            wanted = Some(Wanted { indicator: flux.indicator.clone(), goal: GOAL * problem.accuracy.bracket * low });
         }
         // Close to the limit, a step that adds next to nothing is not worth a round.
         let worth = |f: &Mesh| f.points.len() * 2 < room || f.points.len() * 50 > mesh.points.len() * 51;
-        let finer = finer.filter(|f| worth(f) && self.record.rounds.len() < MOST_ROUNDS);
+        let go_on = wanted.take_if(|_| !is_first && self.record.rounds.len() < MOST_ROUNDS);
+        let finer = go_on.and_then(|w| refined(&mesh, w.indicator, w.goal, room)).filter(worth);
         if finer.is_none() && answer.is_none() {
             let ports = ports.take().map_or_else(|| bar.ports(), Ok)?;
             answer = Some(enclose(problem, &mesh, &complex, &layout, &bar, &ports)?);
         }
-        let Some(answer) = answer else { return Ok((None, finer)) };
+        let Some(answer) = answer.filter(|_| finer.is_none()) else { return Ok(Outcome { solution: None, wanted, finer }) };
         let (passed, layer_loss) = account(problem, plan, &mesh, &complex, &potential, &flux);
         self.record.unknowns = complex.order();
-        self.record.reached = loss_enclosed && answer.failing.is_empty() && answer.residual <= network::LARGEST_RESIDUAL;
+        self.record.reached = loss_enclosed && answer.excess <= 1.0 && answer.residual <= network::LARGEST_RESIDUAL;
         self.record.voltage_spread = answer.voltage_spread;
         self.record.residual = answer.residual;
         let solution = Solution {
@@ -159,7 +185,7 @@ impl Rounds<'_> {
             complex,
             mesh,
         };
-        Ok((Some(solution), finer))
+        Ok(Outcome { solution: Some(solution), wanted, finer })
     }
 }
 
@@ -171,17 +197,31 @@ pub fn from_complex(fault: ComplexFault) -> Fault {
     }
 }
 
+/// The voltages lead when their widest interval exceeds what is asked this many times more than the loss's.
+const LEAD: f64 = 1.1;
 /// The gap that a round aims at, as a part of the one asked for.
-const GOAL: f64 = 0.8;
+const GOAL: f64 = 0.85;
 /// Largest growth of the number of triangles in one round: predictions are not trusted further.
 const GROWTH: f64 = 3.0;
 /// Part of the predicted gap that is marked at a time (Doerfler 1996).
 const SHARE: f64 = 0.3;
 
-/// Refines where the indicators are largest, again and again by what they are predicted to become, until they have fallen to a part `goal` of their sum
-/// or the next step would not find room for its vertices; `None` where not even one step does.
+/// What the indicators of a refined mesh are predicted to be, between a smooth field (a quarter of the gap is left when all edges are halved) and a
+/// right-angled inside corner (0.4).
+fn inherited(indicator: &[f64], from: &Mesh, next: &Mesh, parents: &[u32]) -> Vec<f64> {
+    let one = |(t, &p): (usize, &u32)| {
+        let part = next.area(t) / from.area(p as usize);
+        if part == 1.0 { indicator[p as usize] } else { indicator[p as usize] * part.powf(2.0) }
+    };
+    parents.iter().enumerate().map(one).collect()
+}
+
+/// Refines where the indicators are largest, again and again by what they are predicted to become, until they add up to the goal
+/// or the next step would not find room for its vertices; `None` where not even one step is needed or finds room.
 fn refined(mesh: &Mesh, mut indicator: Vec<f64>, goal: f64, room: usize) -> Option<Mesh> {
-    let goal = goal * indicator.iter().sum::<f64>();
+    if indicator.iter().sum::<f64>() <= goal {
+        return None;
+    }
     let most = (GROWTH * mesh.triangles.len() as f64) as usize;
     let mut finer: Option<Mesh> = None;
     loop {
@@ -190,9 +230,7 @@ fn refined(mesh: &Mesh, mut indicator: Vec<f64>, goal: f64, room: usize) -> Opti
         // No more is marked than the goal needs: halving all edges takes 0.6 of a triangle's part away.
         let share = ((1.0 - goal / sum) / 0.6).clamp(0.05, SHARE);
         let (next, parents) = bisected(from, &marked(&indicator, share));
-        // Between a smooth field (a quarter of the gap is left when all edges are halved) and a right-angled inside corner (0.4).
-        indicator =
-            parents.iter().enumerate().map(|(t, &p)| indicator[p as usize] * (next.area(t) / from.area(p as usize)).powf(1.8)).collect();
+        indicator = inherited(&indicator, from, &next, &parents);
         if next.points.len() > room {
             return finer;
         }
@@ -248,9 +286,10 @@ fn marked(indicator: &[f64], share: f64) -> Vec<bool> {
 }
 
 /// The solution on a mesh refined under some discs. Its intervals stay as they are: they hold for the problem, not for a mesh.
-pub fn sharpened(problem: &Problem, old: Solution, discs: &[(LayerId, Point, f64)]) -> Result<Solution, Vec<Fault>> {
+pub fn sharpened(problem: &Problem, old: Solution, discs: &[FineDisc]) -> Result<Solution, Vec<Fault>> {
     let plan = &Plan::new(problem)?;
-    let mesh = resolved_under(old.mesh, discs, problem.accuracy.max_vertices);
+    let blank = vec![0.0; old.mesh.triangles.len()];
+    let (mesh, _) = resolved_under(old.mesh, blank, discs, problem.accuracy.max_vertices);
     let complex =
         Complex::new(&mesh, &cells(plan, &mesh)?, &plan.line_plans(), problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
     let layout = layout(problem, plan, &mesh, &complex)?;
@@ -265,30 +304,48 @@ pub fn sharpened(problem: &Problem, old: Solution, discs: &[(LayerId, Point, f64
     Ok(Solution { potential: levelled(potential, &complex, &levels), flux, passed, layer_loss, run, complex, mesh, ..old })
 }
 
-/// The mesh refined until no triangle that meets one of the discs is longer than a quarter of its diameter, or the vertex limit is met.
-fn resolved_under(mut mesh: Mesh, discs: &[(LayerId, Point, f64)], most: usize) -> Mesh {
+/// Longest edge of the triangles under a disc that is resolved, in diameters: what is longer is halved, so that most are near a quarter.
+pub const RESOLVED: f64 = 0.36;
+
+/// A disc on a sheet under which the mesh shall be fine.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct FineDisc {
+    /// The sheet.
+    pub layer: LayerId,
+    /// Its centre.
+    pub centre: Point,
+    /// Its diameter, mm.
+    pub diameter: f64,
+    /// The longest edge there may be, mm.
+    pub longest: f64,
+}
+
+/// The mesh refined until no triangle that meets one of the discs is longer than it allows, or the vertex limit is met,
+/// and its predicted indicators.
+fn resolved_under(mut mesh: Mesh, mut indicator: Vec<f64>, discs: &[FineDisc], most: usize) -> (Mesh, Vec<f64>) {
     // Only triangles that are new need a look: the others were fine the time before.
     let mut fresh = vec![true; mesh.triangles.len()];
     loop {
         let is_coarse = |t: usize| {
             let corners = mesh.corners(t);
             let longest = (0..3).map(|k| corners[k].distance(corners[(k + 1) % 3])).fold(0.0, f64::max);
-            discs.iter().any(|&(layer, middle, diameter)| {
-                let (way, reach) = (corners[0] - middle, 0.5 * diameter + longest);
-                longest > 0.25 * diameter
+            discs.iter().any(|disc| {
+                let (way, reach) = (corners[0] - disc.centre, 0.5 * disc.diameter + longest);
+                longest > disc.longest
                     && way.dot(way) < reach * reach
-                    && mesh.cover(t).contains(&layer.0)
-                    && distance_to_triangle(corners, middle) <= 0.5 * diameter
+                    && mesh.cover(t).contains(&disc.layer.0)
+                    && distance_to_triangle(corners, disc.centre) <= 0.5 * disc.diameter
             })
         };
         let coarse: Vec<bool> = fresh.iter().enumerate().map(|(t, &fresh)| fresh && is_coarse(t)).collect();
         if !coarse.contains(&true) {
-            return mesh;
+            return (mesh, indicator);
         }
         let (finer, parents) = bisected(&mesh, &coarse);
         if finer.points.len() > most {
-            return mesh;
+            return (mesh, indicator);
         }
+        indicator = inherited(&indicator, &mesh, &finer, &parents);
         let mut children = vec![0u8; mesh.triangles.len()];
         parents.iter().for_each(|&p| children[p as usize] += 1);
         fresh = parents.iter().map(|&p| children[p as usize] > 1).collect();

@@ -17,10 +17,11 @@ pub struct Enclosed {
     pub electrodes: Vec<ElectrodeSolution>,
     /// Per probe, V.
     pub probes: Vec<Interval>,
-    /// Port currents whose field must be enclosed more tightly, and the weight of their indicators.
-    pub failing: Vec<(Vec<f64>, f64)>,
-    /// How many times too wide the worst of them is.
+    /// How many times wider than asked the widest interval is.
     pub excess: f64,
+    /// Port currents whose fields make the voltages and found currents too wide, and the weight of their indicators;
+    /// empty where the loss alone is.
+    pub wide: Vec<(Vec<f64>, f64)>,
     /// Largest half-width of a voltage over the largest difference.
     pub voltage_spread: f64,
     /// Level of every piece, V.
@@ -28,6 +29,17 @@ pub struct Enclosed {
     /// Residual of the port solve.
     pub residual: f64,
 }
+
+/// What makes an interval too wide.
+struct Wide {
+    unit: Vec<f64>,
+    /// Square of its field's defect.
+    own: f64,
+    excess: f64,
+}
+
+/// Intervals are mended together with the widest when they are more than this part as wide.
+const TOGETHER: f64 = 0.5;
 
 /// Encloses everything.
 pub fn enclose(
@@ -45,7 +57,7 @@ pub fn enclose(
     let (lowest, highest) = volts.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), &v| (l.min(v), h.max(v)));
     let difference = (highest - lowest).max(0.0);
     let tolerance = problem.accuracy.bracket;
-    let mut failing = Vec::new();
+    let mut wide: Vec<Wide> = Vec::new();
     let mut spread: f64 = 0.0;
     let mut voltage = |unit: &[f64], value: f64| {
         let interval = network::enclosed(&defect, currents, unit, value, 1.0, difference);
@@ -53,7 +65,7 @@ pub fn enclose(
             spread = spread.max(interval.half() / difference);
             let own = defect.form(unit, unit);
             if interval.half() > tolerance * difference && own > 0.0 {
-                failing.push((unit.to_vec(), 1.0 / own));
+                wide.push(Wide { unit: unit.to_vec(), own, excess: interval.half() / (tolerance * difference) });
             }
         }
         interval
@@ -77,26 +89,36 @@ pub fn enclose(
         .unwrap_or(Interval { low: currents[k], high: currents[k] })
     };
     let ranges: Vec<Interval> = (0..count).map(range).collect();
-    let low = ports.matrix.form(currents, currents).max(0.0);
-    let high = low + defect.form(currents, currents).max(0.0);
-    // Currents that were found may differ from the true ones: the loss then moves by no more than the norm of that difference.
-    let slack: f64 = ranges
-        .iter()
-        .enumerate()
-        .map(|(k, r)| (r.high - currents[k]).max(currents[k] - r.low) * (ports.matrix.at(k, k) + defect.at(k, k)).max(0.0).sqrt())
-        .sum();
-    let loss =
-        Interval { low: (low.sqrt() - slack).max(0.0).powi(2) * (1.0 - ROUNDING), high: (high.sqrt() + slack).powi(2) * (1.0 + ROUNDING) };
-    if slack > 0.0 && loss.low < loss.high / (1.0 + tolerance) {
-        let units = (0..count).filter_map(|k| response.of_emf[k].clone());
-        failing
-            .extend(units.map(|unit| (defect.form(&unit, &unit), unit)).filter(|(own, _)| *own > 0.0).map(|(own, unit)| (unit, 1.0 / own)));
+    // With sources: loss = sum of J V + sum of b (E - R b). Up to the square of the found currents' errors, that is linear in voltages and found
+    // currents, so it is enclosed as each of them is, by the port currents of its own unit.
+    let mut own_unit = currents.clone();
+    let mut squares = 0.0;
+    for (k, of_emf) in response.of_emf.iter().enumerate() {
+        let Some(of_emf) = of_emf else { continue };
+        let (emf, resistance) = match problem.electrodes[k].drive {
+            Drive::Source(s) => (problem.sources[s.index()].emf_v, problem.sources[s.index()].resistance_ohm),
+            Drive::Held(volts) => (volts, 0.0),
+            _ => continue,
+        };
+        let terminal = emf - resistance * currents[k];
+        own_unit.iter_mut().zip(of_emf).for_each(|(u, x)| *u -= 2.0 * terminal * x);
+        squares += resistance * (ranges[k].high - currents[k]).max(currents[k] - ranges[k].low).powi(2);
     }
-    if !failing.is_empty() {
-        let own = defect.form(currents, currents);
-        if own > 0.0 {
-            failing.push((currents.clone(), 1.0 / own));
-        }
+    let low = ports.matrix.form(currents, currents).max(0.0);
+    let own = defect.form(&own_unit, &own_unit).max(0.0);
+    let drive = defect.form(currents, currents).max(0.0);
+    let middle = low + 0.5 * defect.form(&own_unit, currents);
+    let half = 0.5 * (own * drive).sqrt() + ROUNDING * middle.abs();
+    let loss = Interval { low: (middle - half - squares).max(0.0), high: middle + half };
+    // The bound keeps the comparison below finite where the lower end is zero.
+    let of_loss = if loss.high > 0.0 { ((loss.high / loss.low - 1.0) / tolerance).min(1e6) } else { 0.0 };
+    if of_loss > 1.0 && own_unit != *currents && own > 0.0 {
+        wide.push(Wide { unit: own_unit, own, excess: of_loss });
+    }
+    let excess = wide.iter().fold(of_loss, |m, w| m.max(w.excess));
+    wide.retain(|w| w.excess > TOGETHER * excess);
+    if !wide.is_empty() {
+        wide.extend(Some(Wide { unit: currents.clone(), own: drive, excess }).filter(|w| w.own > 0.0));
     }
     let resistance = (count == 2 && layout.piece_of[0] == layout.piece_of[1]).then(|| {
         let mut unit = vec![0.0; currents.len()];
@@ -105,11 +127,13 @@ pub fn enclose(
         let high = low + defect.form(&unit, &unit).max(0.0);
         Interval { low: low * (1.0 - ROUNDING), high: high * (1.0 + ROUNDING) }
     });
-    let excess = (spread / tolerance).max((loss.high / loss.low - 1.0) / tolerance);
+    // Every interval's width is the product of its own field's defect and that of the currents, which so counts as often as all of them.
+    let last = wide.len().saturating_sub(1);
+    let wide = wide.into_iter().enumerate().map(|(i, w)| (w.unit, if i == last { last as f64 } else { 1.0 } / w.own)).collect();
     let levels = (0..layout.pieces).map(|p| response.voltages[layout.reference_of[p]]).collect();
     let electrodes =
         (0..count).map(|k| ElectrodeSolution { current: currents[k], current_range: ranges[k], voltage: voltages[k] }).collect();
-    Ok(Enclosed { loss, resistance, electrodes, probes, failing, excess, voltage_spread: spread, levels, residual: ports.residual })
+    Ok(Enclosed { loss, resistance, electrodes, probes, excess, wide, voltage_spread: spread, levels, residual: ports.residual })
 }
 
 /// The potential with every piece at its level.
