@@ -97,7 +97,7 @@ fn explained(fault: &RingFault, rings: &[DrawnRing]) -> Fault {
         ),
         RingFaultKind::MeetsOther => (
             format!("{} crosses or touches {} at {at}", title(ring), title(fault.other.map_or(0, |o| o.0))),
-            "rings with a gap between them (circles count as polygons of equal area, up to 0.003 mm larger)",
+            "rings with a gap between them; beside an arc at least 0.003 mm (it is cut into chords), between two arcs 0.006 mm",
             "merge the two rings into one, or move them apart",
         ),
     };
