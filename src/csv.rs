@@ -63,8 +63,8 @@ mod tests {
     #[test]
     fn every_cell_knows_its_place() {
         for (text, separator) in [
-            ("x,y,note\n\n# said,here\n1, 2.5 ,\"a, \"\"b\"\"\"\n3,4,end", b','),
-            ("x;y;note\r\n\r\n1;2,5;\"a, \"\"b\"\"\"\r\n\r\n3;4;end\r\n", b';'),
+            ("note,x,y\n\n# said,here\n\"a, \"\"b\"\"\",1, 2.5 \n3,4,end", b','),
+            ("x;note;y\r\n\r\n1;\"a, \"\"b\"\"\";2,5\r\n\r\n3;4;end\r\n", b';'),
             ("x\ty\tnote\r1\t2.5\ta, b\r3\t4\tend\r", b'\t'),
         ] {
             let read: Vec<Vec<Cell>> = rows(text, separator).collect();

@@ -212,8 +212,8 @@ mod tests {
         let ring = |corners: &[(f64, f64, f64)]| Ring {
             vertices: corners.iter().map(|&(x, y, bulge)| super::super::Vertex { point: Point::new(x, y), bulge }).collect(),
         };
-        // The upper edge sags to the lower one, 5 mm under its ends.
-        let sagging = |bulge: f64| ring(&[(0.0, 0.0, 0.0), (10.0, 0.0, 0.0), (10.0, 5.0, bulge), (0.0, 5.0, 0.0)]);
+        // The upper edge sags to the lower one; the middle of a chord lies there.
+        let sagging = |bulge: f64| ring(&[(0.0, 0.0, 0.0), (9.6, 0.0, 0.0), (9.6, 4.8, bulge), (0.0, 4.8, 0.0)]);
         assert_eq!(kinds(&[sagging(-1.0)]), [RingFaultKind::MeetsItself]);
         assert_eq!(kinds(&[sagging(-0.999)]), []);
         // Tiny and cusped, but sound: a fillet's straight piece of a micrometre, a corner of two degrees, a slot with full round ends.
@@ -231,6 +231,24 @@ mod tests {
         );
         assert_eq!(kinds(&[ring(&[(0.0, 0.0, 0.01), (10.0, 0.0, -0.03)])]), []);
         assert_eq!(kinds(&[ring(&[(0.0, 0.0, 0.0), (3.0, 0.0, 1.0), (3.0, 0.004, 0.0), (0.0, 0.004, 1.0)])]), []);
+    }
+
+    #[test]
+    fn stars_stay_sound_whatever_rounds_their_inside_corners() {
+        for spikes in [3, 5, 12, 40] {
+            for scale in [0.01, 1.0, 30.0] {
+                for part in [1e-4, 1e-3, 0.01, 0.1, 0.3, 0.6, 0.9] {
+                    let star = Ring::polygon((0..2 * spikes).map(|i| {
+                        let (sin, cos) = (std::f64::consts::PI * f64::from(i) / f64::from(spikes)).sin_cos();
+                        Point::new(cos, sin) * (scale * if i % 2 == 0 { 2.0 } else { 1.0 })
+                    }));
+                    let mut rings = [star];
+                    let region = crate::geometry::IndexedRegion::new(&crate::geometry::Region::from_rings(&rings));
+                    crate::geometry::corner::round_inside_corners(&mut rings, &region, scale * part, &[]);
+                    assert_eq!(ring_faults(&rings), [], "{spikes} {scale} {part}");
+                }
+            }
+        }
     }
 
     #[test]

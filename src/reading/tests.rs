@@ -25,6 +25,7 @@ fn read_job(text: &str) -> Result<Reading, Vec<Fault>> {
         Some("pack/job.toml") => Ok(text.to_string()),
         Some("pack/carrier.outline") => Ok(OUTLINE.to_string()),
         Some("pack/welds.csv") => Ok(WELDS.to_string()),
+        Some("pack/pipe.outline") => Err(Error::from(ErrorKind::Unsupported)),
         Some("pack/binary.outline") => Err(Error::from(ErrorKind::InvalidData)),
         _ => Err(Error::from(ErrorKind::NotFound)),
     })
@@ -244,6 +245,8 @@ fn lists_are_read_as_spreadsheets_write_them() {
     }
     let one = read_list("x,y\n9,7\n11,7\n", "name = \"C1\"\ndiameter_mm = 1\ncurrent_a = 2\npattern = { step_mm = [10, 0], count = 2 }\n");
     assert_eq!(one.iter().map(|c| (c.0.as_str(), c.2.len())).collect::<Vec<_>>(), [("C1", 2), ("C2", 2)]);
+    let mixed = read_list("x,y,cell\n9,7,A\n20,7,\n11,7,A\n", "name = \"C1\"\ndiameter_mm = 1\ncurrent_a = 2\n");
+    assert_eq!(mixed.iter().map(|c| (c.0.as_str(), c.2.len())).collect::<Vec<_>>(), [("A", 2), ("C1", 1)]);
     // The currents of our own table of welds do not stand in the way of the block's.
     let again = read_list("electrode,x_mm,y_mm,current_a\nC1,9,7,1.1\nC1,11,7,0.9\n", "name = \"C1\"\ndiameter_mm = 1\ncurrent_a = 2\n");
     assert_eq!((again.len(), again[0].1), (1, Drive::Current(2.0)));
@@ -300,9 +303,11 @@ resistance_mohm = 16
 
 #[test]
 fn unreadable_files_are_told_at_their_key() {
-    let faults = read_job(&STRIP.replace("carrier.outline", "binary.outline")).expect_err("not text");
-    let fault = faults.iter().find(|f| f.message.contains("not text in UTF-8")).expect("told");
-    assert_eq!(fault.span.as_ref().map(|s| s.line_column()), Some((6, 11)));
+    for (file, reason) in [("binary.outline", "it is not text in UTF-8"), ("pipe.outline", "it is a pipe or a device")] {
+        let faults = read_job(&STRIP.replace("carrier.outline", file)).expect_err("no outline");
+        let fault = faults.iter().find(|f| f.message.contains(reason)).expect("told");
+        assert_eq!(fault.span.as_ref().map(|s| s.line_column()), Some((6, 11)));
+    }
     assert_eq!(read(Path::new("gone.toml"), &|_| Err(Error::from(ErrorKind::NotFound))).expect_err("gone").len(), 1);
 }
 
@@ -325,17 +330,24 @@ fn broken_sheets_and_outlines_never_panic() {
         }
         String::from_utf8_lossy(&bytes).into_owned()
     };
+    let listed = "[[cell]]\nlayer = \"carrier\"\nspots_csv = \"welds.csv\"\ndiameter_mm = 0.8\njoint_mohm = 0.05\ncurrent_a = 5\n";
+    let whole = format!("{whole}{listed}").replace("C1", "D1");
     let mut refused = 0;
     for _ in 0..3000 {
-        let (job, outline) = (spoil(&whole, &mut random), spoil(OUTLINE, &mut random));
-        let spoilt = random.bool();
+        let (job, outline, welds) = (spoil(&whole, &mut random), spoil(OUTLINE, &mut random), spoil(WELDS, &mut random));
+        let spoilt = random.u8(0..3);
         let result = read(Path::new("job.toml"), &|path: &Path| {
-            let outline = if spoilt { outline.clone() } else { OUTLINE.to_string() };
-            Ok(if path.ends_with("job.toml") { job.clone() } else { outline })
+            let text = match path.extension().and_then(|e| e.to_str()) {
+                Some("csv") => (if spoilt == 0 { &welds } else { WELDS }).to_string(),
+                _ if path.ends_with("job.toml") => (if spoilt == 1 { &job } else { &whole }).clone(),
+                _ => (if spoilt == 2 { &outline } else { OUTLINE }).to_string(),
+            };
+            Ok(text)
         });
         if let Err(faults) = result {
             refused += 1;
             assert!(!faults.is_empty());
+            assert!(faults.iter().filter_map(|f| f.span.as_ref()).all(|s| s.line_column().0 > 0 && s.end <= s.source.text.len().max(1)));
         }
     }
     assert!(refused > 1000, "{refused}");
