@@ -10,6 +10,8 @@ pub const LARGEST_TEXT: usize = 64 << 20;
 pub const MOST_NUMBERS: usize = 2_000_000;
 /// Most copies that one pattern makes.
 pub const MOST_COPIES: usize = 20_000;
+/// Most faults that are told of one text.
+pub const MOST_FAULTS: usize = 1000;
 /// Most spots of a whole job, patterns expanded.
 pub const MOST_SPOTS: usize = 100_000;
 
@@ -57,6 +59,20 @@ pub fn within(count: usize, most: usize, what: &str, place: &Span) -> Result<(),
         span: Some(place.clone()),
         expected: Some(format!("at most {most} {what}")),
         remedy: Some("solve a part of it, or simplify the drawing".into()),
+        labels: Vec::new(),
+    })
+}
+
+/// A fault that ends the reading of a text once it has [`MOST_FAULTS`]: so many are one slip, repeated.
+pub fn few_enough(faults: usize, place: &Span) -> Result<(), Fault> {
+    if faults < MOST_FAULTS {
+        return Ok(());
+    }
+    Err(Fault {
+        message: format!("reading stops here: there are {MOST_FAULTS} faults before"),
+        span: Some(place.clone()),
+        expected: Some("a file without faults".into()),
+        remedy: Some("correct the first ones: so many are often one slip, repeated".into()),
         labels: Vec::new(),
     })
 }

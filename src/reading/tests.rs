@@ -253,6 +253,25 @@ fn lists_are_read_as_spreadsheets_write_them() {
 }
 
 #[test]
+fn endless_lists_and_endless_slips_come_to_an_end() {
+    let block = "[[cell]]\nname = \"C\"\nlayer = \"carrier\"\nspots_csv = \"list.csv\"\ndiameter_mm = 1\njoint_mohm = 0\ncurrent_a = 1\n";
+    for (row, count, told) in
+        [("1,1\n", 1, "more than 100000 spots"), ("a,b\n", 1002, "reading stops here"), (",x", 1, "more than 1000 columns")]
+    {
+        let list = format!("x,y{}{}", if row.starts_with(',') { "" } else { "\n" }, row.repeat(200_000));
+        let faults = read(Path::new("job.toml"), &|path: &Path| {
+            Ok(match path.to_str() {
+                Some("job.toml") => format!("{STRIP}{LUG}{block}"),
+                Some("list.csv") => list.clone(),
+                _ => OUTLINE.to_string(),
+            })
+        });
+        let faults = faults.expect_err("too much");
+        assert!(faults.len() <= count && faults.last().is_some_and(|f| f.message.contains(told)), "{}: {:?}", faults.len(), faults.last());
+    }
+}
+
+#[test]
 fn crossings_that_end_beside_the_outline_end_on_it() {
     let crossing = "[[crossing]]\nname = \"waist\"\nfrom_mm = [100, 0.015]\nto_mm = [100, 30.01]\n";
     let cell = "[[cell]]\nname = \"C\"\nlayer = \"carrier\"\nspots_mm = [[9, 7]]\ndiameter_mm = 1\njoint_mohm = 0\ncurrent_a = 1\n";

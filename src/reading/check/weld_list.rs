@@ -5,7 +5,7 @@ use crate::csv::{Cell, rows};
 use crate::diagnostic::{SourceText, Span};
 use crate::geometry::Point;
 use crate::geometry::validity::LARGEST_COORDINATE;
-use crate::reading::drawn::{MOST_SPOTS, within};
+use crate::reading::drawn::{MOST_SPOTS, few_enough, within};
 use crate::reading::fields::{Fields, Notes, Placed};
 use crate::reading::files::Files;
 use crate::reading::hint;
@@ -23,6 +23,12 @@ pub struct Weld {
 
 /// The columns that have a meaning; the unit may be left out of the title.
 const COLUMNS: [&str; 7] = ["x_mm", "y_mm", "diameter_mm", "length_mm", "angle_deg", "cell", "current_a"];
+
+/// Most columns of a list.
+const MOST_COLUMNS: usize = 1000;
+
+/// Most unused columns that are named.
+const MOST_NAMED: usize = 20;
 
 /// Shorter titles of other columns are near to too many words.
 const SHORTEST_MISSPELT: usize = 4;
@@ -47,6 +53,9 @@ pub fn read_welds(fields: &Fields, idle: &[&str], files: &Files) -> Option<Vec<W
         fields.notes.fault("the list is empty", &start, HEADER, "export the list again, with its header row");
         return None;
     };
+    if let (Some(first), Some(last)) = (header.first(), header.last()) {
+        fields.notes.keep(within(header.len(), MOST_COLUMNS, "columns in one list", &span(first, last)))?;
+    }
     let columns = Columns::read(&header, &source, skipped, idle, fields.notes)?;
     if columns.number("diameter_mm").is_none() && whole_diameter.is_none() {
         fields.missing("diameter_mm", "a diameter for all spots, or a column `diameter_mm` in the list");
@@ -57,7 +66,9 @@ pub fn read_welds(fields: &Fields, idle: &[&str], files: &Files) -> Option<Vec<W
         let (Some(first), Some(last)) = (row.first(), row.last()) else { continue };
         let here = span(first, last);
         let budget = files.budget.borrow_mut().spend(row.len(), &here);
-        fields.notes.keep(budget.and_then(|()| within(welds.len() + 1, MOST_SPOTS, "spots", &here)))?;
+        let faults = fields.notes.faults.borrow().len() - faults_before;
+        let size = within(welds.len() + 1, MOST_SPOTS, "spots", &here);
+        fields.notes.keep(budget.and(size).and_then(|()| few_enough(faults, &here)))?;
         if let Some(extra) = row.iter().skip(header.len()).find(|cell| !cell.text.is_empty()) {
             let message = format!("the row has {} cells, the header {}", row.len(), header.len());
             let remedy = match separator {
@@ -145,12 +156,13 @@ impl Columns {
             return;
         }
         let missing = || COLUMNS.into_iter().zip(self.numbers).filter(|c| c.1.is_none()).map(|c| c.0);
-        let named = self.unused.iter().map(|title| {
+        let named = self.unused.iter().take(MOST_NAMED).map(|title| {
             let near = hint::nearest(&plain(title), missing()).filter(|_| title.chars().count() >= SHORTEST_MISSPELT);
             near.map_or_else(|| format!("`{title}`"), |near| format!("`{title}` (did you mean `{near}`?)"))
         });
+        let rest = (self.unused.len() > MOST_NAMED).then(|| format!("and {} more", self.unused.len() - MOST_NAMED));
         let columns = if self.unused.len() == 1 { "column" } else { "columns" };
-        notes.remark(format!("{}: {columns} not used: {}", source.path.display(), named.collect::<Vec<_>>().join(", ")));
+        notes.remark(format!("{}: {columns} not used: {}", source.path.display(), named.chain(rest).collect::<Vec<_>>().join(", ")));
     }
 }
 
