@@ -4,7 +4,7 @@
 //!
 //! | floor | holds |
 //! |---|---|
-//! | [`index`], [`diagnostic`], [`quantity`] | words: ids, faults with places, units |
+//! | [`index`], [`diagnostic`], [`quantity`], [`mod@csv`] | words: ids, faults with places, units; rows of cells |
 //! | [`geometry`] | points, rings with arcs, regions |
 //! | [`problem`], [`mesh`] | the checked statement; the triangulation (they do not know each other) |
 //! | [`reading`] | texts to a `Problem`, or all faults at once |
@@ -17,6 +17,7 @@
 #![forbid(unsafe_code)]
 #![warn(missing_docs)]
 
+pub mod csv;
 pub mod diagnostic;
 pub mod index;
 pub mod quantity;

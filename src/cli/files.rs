@@ -6,14 +6,19 @@ use std::path::{Path, PathBuf};
 /// Largest text that is read, in bytes.
 const LARGEST: u64 = 64 << 20;
 
-/// Reads a text; a folder, a file above 64 MiB or one that is not UTF-8 is an error.
+/// Reads a text; a folder, a pipe or device, a file above 64 MiB or one that is not UTF-8 is an error.
 pub fn load(path: &Path) -> io::Result<String> {
-    let file = std::fs::File::open(path)?;
-    if file.metadata()?.is_dir() {
+    // Asked before the file is opened: opening a pipe waits for its other end.
+    let kind = std::fs::metadata(path)?;
+    if kind.is_dir() {
         return Err(io::Error::new(io::ErrorKind::IsADirectory, "it is a folder"));
     }
+    if !kind.is_file() {
+        return Err(io::Error::new(io::ErrorKind::Unsupported, "it is a pipe or a device"));
+    }
+    let file = std::fs::File::open(path)?;
     let mut bytes = Vec::new();
-    // A device or pipe has no length to ask for: the guard is on what arrives.
+    // A file may grow while it is read: the guard is on what arrives.
     file.take(LARGEST + 1).read_to_end(&mut bytes)?;
     if bytes.len() as u64 > LARGEST {
         return Err(io::Error::new(io::ErrorKind::FileTooLarge, "it is larger than 64 MiB"));
@@ -117,6 +122,14 @@ mod tests {
     fn only_texts_are_read() {
         let base = tempfile::tempdir().unwrap();
         assert_eq!(load(base.path()).unwrap_err().kind(), io::ErrorKind::IsADirectory);
+        #[cfg(unix)]
+        {
+            let pipe = base.path().join("pipe");
+            assert!(std::process::Command::new("mkfifo").arg(&pipe).status().unwrap().success());
+            for device in [Path::new("/dev/zero"), &pipe] {
+                assert_eq!(load(device).unwrap_err().kind(), io::ErrorKind::Unsupported);
+            }
+        }
         std::fs::write(base.path().join("bytes"), [0xff, 0xfe]).unwrap();
         assert_eq!(load(&base.path().join("bytes")).unwrap_err().kind(), io::ErrorKind::InvalidData);
         // Sparse: it takes no room on the disk.

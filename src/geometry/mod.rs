@@ -11,6 +11,7 @@ pub mod predicate;
 pub mod region;
 pub mod ring;
 pub mod segment_index;
+mod touch;
 pub mod validity;
 
 pub use indexed_region::{IndexedRegion, RimPoint};

@@ -149,6 +149,13 @@ impl Arc {
         ((self.sweep.abs() / largest - 1e-9).ceil() as usize).clamp(2, 100_000)
     }
 
+    /// No chord leaves the arc by more than this, mm: inward by less than the sagitta, outward by at most four thirds of it, where there are two chords.
+    pub fn deviation(&self) -> f64 {
+        let quarter = 0.25 * self.sweep.abs() / self.chords() as f64;
+        // A hundredth more covers the higher powers of the largest step.
+        1.01 * 4.0 / 3.0 * 2.0 * self.radius * quarter.sin().powi(2)
+    }
+
     /// The points between start and end of the polygon of equal area: they lie a little outside the arc.
     fn push_inner_points(&self, points: &mut Vec<Point>) {
         let n = self.chords();
@@ -189,6 +196,23 @@ mod tests {
         assert!((seam.signed_area() - (4.0 + std::f64::consts::PI * 0.16)).abs() < 1e-12);
         for ring in [bent, disc, seam] {
             assert!((area(&ring.flattened()) / ring.signed_area() - 1.0).abs() < 1e-12, "{ring:?}");
+        }
+    }
+
+    #[test]
+    fn chords_leave_an_arc_by_no_more_than_its_deviation() {
+        for sweep in [0.1f64, 0.35, 1.0, 3.0, 6.0] {
+            for radius in [0.01, 0.5, 3.0, 400.0] {
+                let (a, b) = (Point::new(radius, 0.0), Point::new(radius * sweep.cos(), radius * sweep.sin()));
+                let bulge = (0.25 * sweep).tan();
+                let arc = Arc::new(a, bulge, b).expect("an arc");
+                let points = Ring { vertices: vec![Vertex { point: a, bulge }, Vertex { point: b, bulge: 0.0 }] }.flattened();
+                let chords = points.windows(2).take(arc.chords());
+                let most = chords.flat_map(|w| [w[0], w[0].midpoint(w[1])]).map(|p| (p.norm() - radius).abs()).fold(0.0, f64::max);
+                let allowed = arc.deviation();
+                assert!(most <= allowed && most > 0.4 * allowed, "{sweep} {radius}: {most} {allowed}");
+                assert!(allowed <= 1.01 * 4.0 / 3.0 * SAGITTA);
+            }
         }
     }
 

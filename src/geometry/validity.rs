@@ -1,6 +1,7 @@
 //! What can be wrong with a set of rings: too few points, wild coordinates, rings that cross or touch.
 
 use super::ring::Arc;
+use super::touch::DrawnEdges;
 use super::{BoundingBox, Point, Ring, SegmentIndex, predicate};
 
 /// Largest coordinate that is accepted, mm.
@@ -40,12 +41,13 @@ pub struct RingFault {
     pub at: Point,
 }
 
-/// All rings that are at fault, in the order of the rings: of every ring its first meeting with itself and with each other ring,
-/// decided exactly on the flattened rings. Empty means that even-odd containment defines a region.
+/// All rings that are at fault, in the order of the rings: of every ring its first meeting with itself or with another ring. Straight edges are
+/// compared exactly; an arc meets what its chords meet and what is no farther from the arc itself than its chords may leave it (0.003 mm at the
+/// most). Empty means that even-odd containment defines a region, for the drawn rings as for the flattened ones.
 pub fn ring_faults(rings: &[Ring]) -> Vec<RingFault> {
     let mut faults = Vec::new();
     let mut edges = Vec::new();
-    let mut owners: Vec<(u32, u32)> = Vec::new();
+    let mut drawn = DrawnEdges::new(rings);
     let mut starts = Vec::new();
     for (number, ring) in rings.iter().enumerate() {
         let start = edges.len();
@@ -54,16 +56,13 @@ pub fn ring_faults(rings: &[Ring]) -> Vec<RingFault> {
             Some((kind, vertex, at)) => faults.push(RingFault { kind, place: (number, vertex), other: None, at }),
             None => {
                 let points = ring.flattened();
-                for (vertex, (a, bulge, b)) in ring.edges().enumerate() {
-                    let pieces = Arc::new(a, bulge, b).map_or(1, |arc| arc.chords());
-                    owners.extend(std::iter::repeat_n((number as u32, vertex as u32), pieces));
-                }
+                drawn.add(number, &points);
                 edges.extend((0..points.len()).map(|i| (points[i], points[(i + 1) % points.len()])));
                 starts[number].1 = edges.len();
             }
         }
     }
-    faults.extend(meetings(SegmentIndex::new(edges), &owners, &starts));
+    faults.extend(meetings(SegmentIndex::new(edges), &drawn, &starts));
     faults.sort_by_key(|f| f.place);
     faults
 }
@@ -96,7 +95,7 @@ fn shape_fault(ring: &Ring, edges_so_far: usize) -> Option<(RingFaultKind, usize
 }
 
 /// Where edges meet that should not. `starts` holds the first and one past the last edge of every ring.
-fn meetings(index: SegmentIndex, owners: &[(u32, u32)], starts: &[(usize, usize)]) -> Vec<RingFault> {
+fn meetings(index: SegmentIndex, drawn: &DrawnEdges, starts: &[(usize, usize)]) -> Vec<RingFault> {
     let mut faults: Vec<RingFault> = Vec::new();
     let edges = index.segments();
     for (ring, &(first, last)) in starts.iter().enumerate() {
@@ -104,12 +103,14 @@ fn meetings(index: SegmentIndex, owners: &[(u32, u32)], starts: &[(usize, usize)
         // One meeting per ring is enough: a ring gone wild meets itself everywhere.
         'ring: for i in first..last {
             let (a, b) = edges[i];
-            let mut found: Option<usize> = None;
-            for j in index.near(BoundingBox::around([a, b])) {
+            let reach = Point::new(drawn.reach(i), drawn.reach(i));
+            let chord = BoundingBox::around([a, b]);
+            let mut found: Option<(usize, Point)> = None;
+            for j in index.near(BoundingBox { min: chord.min - reach, max: chord.max + reach }) {
                 let (c, d) = edges[j];
                 let meet = if j == i {
                     a == b
-                } else if owners[j].0 as usize != ring {
+                } else if drawn.owner(j).0 != ring {
                     predicate::segments_meet(a, b, c, d)
                 } else {
                     let (p, q) = (i - first, j - first);
@@ -120,18 +121,14 @@ fn meetings(index: SegmentIndex, owners: &[(u32, u32)], starts: &[(usize, usize)
                         _ => predicate::segments_meet(a, b, c, d),
                     }
                 };
-                if meet {
-                    found = Some(found.map_or(j, |other| other.min(j)));
-                }
+                let at = if meet { Some(predicate::meeting_point(a, b, c, d)) } else { drawn.touch(i, j, [(a, b), (c, d)]) };
+                found = at.map(|at| (j, at)).into_iter().chain(found).min_by_key(|f| f.0);
             }
-            let Some(j) = found else { continue };
-            let (other_ring, other_vertex) = owners[j];
-            let other = (other_ring as usize, other_vertex as usize);
-            let place = (ring, owners[i].1 as usize);
+            let Some((j, at)) = found else { continue };
+            let (place, other) = (drawn.owner(i), drawn.owner(j));
             let told = faults.iter().any(|f| f.place.0 == other.0 && f.other.map(|o| o.0) == Some(ring));
             if other.0 == ring || !told {
                 let kind = if other.0 == ring { RingFaultKind::MeetsItself } else { RingFaultKind::MeetsOther };
-                let at = predicate::meeting_point(a, b, edges[j].0, edges[j].1);
                 faults.push(RingFault { kind, place, other: Some(other), at });
             }
             break 'ring;
@@ -182,6 +179,85 @@ mod tests {
         let beside = |x: f64| polygon(&[(x, 2.0), (20.0, 2.0), (20.0, 8.0), (x, 8.0)]);
         assert_eq!(kinds(&[plate.clone(), beside(10.0)]), [RingFaultKind::MeetsOther]);
         assert_eq!(kinds(&[plate, beside(10.0 + 2e-15)]), []);
+    }
+
+    #[test]
+    fn a_circle_that_touches_is_refused_wherever_its_chords_fall() {
+        for degrees in [0, 7, 30, 45, 61] {
+            let (sin, cos) = f64::to_radians(f64::from(degrees)).sin_cos();
+            let turned = |x: f64, y: f64| Point::new(x * cos - y * sin, x * sin + y * cos);
+            let plate = Ring::polygon([(0.0, 0.0), (100.0, 0.0), (100.0, 30.0), (0.0, 30.0)].map(|(x, y)| turned(x, y)));
+            // The drawing alone is turned: a circle's chords begin at its right in any case.
+            let circle = |y: f64| Ring::circle(turned(50.0, y), 2.0);
+            for (gap, met) in [(0.0, true), (-1e-4, true), (1e-4, true), (0.002, true), (0.0028, false), (0.01, false)] {
+                let faults = ring_faults(&[plate.clone(), circle(1.0 + gap)]);
+                assert_eq!(!faults.is_empty(), met, "{degrees} {gap}: {faults:?}");
+                if gap == 0.0 {
+                    assert_eq!(faults[0].kind, RingFaultKind::MeetsOther);
+                    assert!(faults[0].at.distance(turned(50.0, 0.0)) < 0.1, "{faults:?}");
+                }
+            }
+            let small = |d: f64| [circle(1.0 + d), Ring::circle(turned(52.0, 1.0 + d), 2.0)];
+            assert_eq!(kinds(&small(5.0)), [RingFaultKind::MeetsOther], "two circles side by side");
+            assert_eq!(kinds(&[Ring::circle(turned(5.0, 0.0), 8.0), Ring::circle(turned(4.0, 0.0), 6.0)]), [RingFaultKind::MeetsOther]);
+            assert_eq!(kinds(&[Ring::circle(turned(5.0, 0.0), 8.0), Ring::circle(turned(4.0, 0.0), 5.98)]), [], "one inside the other");
+        }
+        let faults =
+            ring_faults(&[polygon(&[(0.0, 0.0), (100.0, 0.0), (100.0, 30.0), (0.0, 30.0)]), Ring::circle(Point::new(50.0, 1.0), 2.0)]);
+        assert!(faults[0].at.distance(Point::new(50.0, 0.0)) < 1e-9, "{faults:?}");
+    }
+
+    #[test]
+    fn an_arc_that_touches_its_own_ring_is_refused_and_neighbours_are_not() {
+        let ring = |corners: &[(f64, f64, f64)]| Ring {
+            vertices: corners.iter().map(|&(x, y, bulge)| super::super::Vertex { point: Point::new(x, y), bulge }).collect(),
+        };
+        // The upper edge sags to the lower one; the middle of a chord lies there.
+        let sagging = |bulge: f64| ring(&[(0.0, 0.0, 0.0), (9.6, 0.0, 0.0), (9.6, 4.8, bulge), (0.0, 4.8, 0.0)]);
+        assert_eq!(kinds(&[sagging(-1.0)]), [RingFaultKind::MeetsItself]);
+        assert_eq!(kinds(&[sagging(-0.999)]), []);
+        // Tiny and cusped, but sound: a fillet's straight piece of a micrometre, a corner of two degrees, a slot with full round ends.
+        let quarter = (std::f64::consts::PI / 8.0).tan();
+        assert_eq!(
+            kinds(&[ring(&[
+                (0.0, 0.0, 0.0),
+                (9.0, 0.0, quarter),
+                (10.0, 1.0, 0.0),
+                (10.0, 1.001, quarter),
+                (9.0, 2.001, 0.0),
+                (0.0, 2.001, 0.0)
+            ])]),
+            []
+        );
+        assert_eq!(kinds(&[ring(&[(0.0, 0.0, 0.01), (10.0, 0.0, -0.03)])]), []);
+        assert_eq!(kinds(&[ring(&[(0.0, 0.0, 0.0), (3.0, 0.0, 1.0), (3.0, 0.004, 0.0), (0.0, 0.004, 1.0)])]), []);
+    }
+
+    #[test]
+    fn stars_stay_sound_whatever_rounds_their_inside_corners() {
+        for spikes in [3, 5, 12, 40] {
+            for scale in [0.01, 1.0, 30.0] {
+                for part in [1e-4, 1e-3, 0.01, 0.1, 0.3, 0.6, 0.9] {
+                    let star = Ring::polygon((0..2 * spikes).map(|i| {
+                        let (sin, cos) = (std::f64::consts::PI * f64::from(i) / f64::from(spikes)).sin_cos();
+                        Point::new(cos, sin) * (scale * if i % 2 == 0 { 2.0 } else { 1.0 })
+                    }));
+                    let mut rings = [star];
+                    let region = crate::geometry::IndexedRegion::new(&crate::geometry::Region::from_rings(&rings));
+                    crate::geometry::corner::round_inside_corners(&mut rings, &region, scale * part, &[]);
+                    assert_eq!(ring_faults(&rings), [], "{spikes} {scale} {part}");
+                }
+            }
+        }
+    }
+
+    #[test]
+    fn ten_thousand_circles_a_hair_apart_end_quickly() {
+        let begun = std::time::Instant::now();
+        let mut rings: Vec<Ring> = (0..10_000).map(|i| Ring::circle(Point::new((i % 100) as f64, (i / 100) as f64), 0.99)).collect();
+        rings.extend((0..500).map(|i| Ring::circle(Point::new(500.0, 0.0), 10.0 + 0.02 * f64::from(i))));
+        assert_eq!(kinds(&rings), []);
+        assert!(begun.elapsed().as_secs_f64() < 10.0, "{:?}", begun.elapsed());
     }
 
     #[test]

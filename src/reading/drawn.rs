@@ -10,6 +10,8 @@ pub const LARGEST_TEXT: usize = 64 << 20;
 pub const MOST_NUMBERS: usize = 2_000_000;
 /// Most copies that one pattern makes.
 pub const MOST_COPIES: usize = 20_000;
+/// Most faults that are told of one text.
+pub const MOST_FAULTS: usize = 1000;
 /// Most spots of a whole job, patterns expanded.
 pub const MOST_SPOTS: usize = 100_000;
 
@@ -61,6 +63,20 @@ pub fn within(count: usize, most: usize, what: &str, place: &Span) -> Result<(),
     })
 }
 
+/// A fault that ends the reading of a text once it has [`MOST_FAULTS`]: so many are one slip, repeated.
+pub fn few_enough(faults: usize, place: &Span) -> Result<(), Fault> {
+    if faults < MOST_FAULTS {
+        return Ok(());
+    }
+    Err(Fault {
+        message: format!("reading stops here: there are {MOST_FAULTS} faults before"),
+        span: Some(place.clone()),
+        expected: Some("a file without faults".into()),
+        remedy: Some("correct the first ones: so many are often one slip, repeated".into()),
+        labels: Vec::new(),
+    })
+}
+
 /// What is wrong with the rings of one outline, told by role, number and coordinates.
 pub fn faults_of_rings(rings: &[DrawnRing]) -> Vec<Fault> {
     let plain: Vec<Ring> = rings.iter().map(|r| r.ring.clone()).collect();
@@ -97,7 +113,7 @@ fn explained(fault: &RingFault, rings: &[DrawnRing]) -> Fault {
         ),
         RingFaultKind::MeetsOther => (
             format!("{} crosses or touches {} at {at}", title(ring), title(fault.other.map_or(0, |o| o.0))),
-            "rings with a gap between them (circles count as polygons of equal area, up to 0.003 mm larger)",
+            "rings with a gap between them; beside an arc at least 0.003 mm (it is cut into chords), between two arcs 0.006 mm",
             "merge the two rings into one, or move them apart",
         ),
     };

@@ -1,4 +1,4 @@
-//! The outline files of a job: each loaded and read once, found beside the sheet.
+//! The files of a job, found beside the sheet; each outline is loaded and read once.
 
 use super::drawn::{Budget, DrawnRing, LARGEST_TEXT, faults_of_rings, within};
 use super::fields::{Notes, Placed};
@@ -42,15 +42,7 @@ impl<'a> Files<'a> {
     }
 
     fn read(&self, path: &Path, asked_at: &Span) -> Option<Vec<DrawnRing>> {
-        let text = match (self.load)(path) {
-            Ok(text) => text,
-            Err(error) => {
-                self.notes.faults.borrow_mut().push(load_fault(path, &error, Some(asked_at.clone())));
-                return None;
-            }
-        };
-        self.notes.keep(within(text.len(), LARGEST_TEXT, "bytes in one file", asked_at))?;
-        let source = Arc::new(SourceText { path: path.to_path_buf(), text });
+        let source = self.load(path, asked_at)?;
         let mut faults = Vec::new();
         let remarks = &mut *self.notes.remarks.borrow_mut();
         let rings = read_outline(&source, &mut self.budget.borrow_mut(), &mut faults, remarks);
@@ -61,6 +53,17 @@ impl<'a> Files<'a> {
         self.notes.faults.borrow_mut().extend(faults);
         good.then_some(rings)
     }
+
+    /// The text of another file; `None` when it cannot be read, which is told.
+    pub fn text(&self, name: &Placed<String>) -> Option<Arc<SourceText>> {
+        self.load(&self.folder.join(&name.value), &name.span)
+    }
+
+    fn load(&self, path: &Path, asked_at: &Span) -> Option<Arc<SourceText>> {
+        let text = self.notes.keep((self.load)(path).map_err(|error| load_fault(path, &error, Some(asked_at.clone()))))?;
+        self.notes.keep(within(text.len(), LARGEST_TEXT, "bytes in one file", asked_at))?;
+        Some(Arc::new(SourceText { path: path.to_path_buf(), text }))
+    }
 }
 
 /// A file that could not be loaded, told at the key that asks for it.
@@ -69,6 +72,7 @@ pub fn load_fault(path: &Path, error: &Error, span: Option<Span>) -> Fault {
         ErrorKind::NotFound if span.is_none() => ("there is no such file", "correct the path of the job sheet"),
         ErrorKind::NotFound => ("there is no such file", "correct the path; it is relative to the sheet"),
         ErrorKind::IsADirectory => ("it is a folder", "name a file in it"),
+        ErrorKind::Unsupported => ("it is a pipe or a device", "save the text as a file and name that"),
         ErrorKind::InvalidData => ("it is not text in UTF-8", "export it again as plain text (UTF-8)"),
         ErrorKind::PermissionDenied => ("it may not be read", "give yourself the right to read it"),
         _ => ("it cannot be read", "check the path and the disk"),

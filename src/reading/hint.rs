@@ -19,6 +19,24 @@ pub fn nearest<'a>(word: &str, known: impl IntoIterator<Item = &'a str>) -> Opti
     known.iter().min_by_key(distance).filter(|key| distance(key) <= allowed).copied()
 }
 
+/// The known names that were probably meant by `name`: the nearest one, else all of the family whose first word is the nearest to its own.
+pub fn family<'a>(name: &str, known: impl IntoIterator<Item = &'a str>) -> Vec<&'a str> {
+    let known: Vec<&str> = known.into_iter().collect();
+    if let Some(one) = nearest(name, known.iter().copied()) {
+        return vec![one];
+    }
+    fn first_word(name: &str) -> &str {
+        name.split(|c: char| !c.is_alphabetic()).next().unwrap_or_default()
+    }
+    let word = nearest(first_word(name), known.iter().map(|k| first_word(k)));
+    known.into_iter().filter(|k| Some(first_word(k)) == word).collect()
+}
+
+/// True for the end of a key that names a unit, such as `mm`.
+pub fn is_unit(end: &str) -> bool {
+    UNITS.iter().any(|unit| unit.strip_prefix('_') == Some(end))
+}
+
 /// Ends of keys that name a unit, those used here and those people bring along; longer ones first.
 const UNITS: [&str; 35] = [
     "_a_per_mm2",
@@ -60,7 +78,7 @@ const UNITS: [&str; 35] = [
 
 #[cfg(test)]
 mod tests {
-    use super::nearest;
+    use super::{family, nearest};
 
     #[test]
     fn units_cases_and_slips() {
@@ -73,5 +91,16 @@ mod tests {
         assert_eq!(nearest("resistivity_ohm_m", keys), Some("resistivity_uohm_cm"));
         assert_eq!(nearest("colour", keys), None);
         assert_eq!(nearest("", keys), None);
+    }
+
+    #[test]
+    fn a_name_without_its_grade_gets_the_whole_family() {
+        let metals = ["copper-etp", "copper-of", "nickel-200", "nickel-201", "tin", "brass-cuzn30"];
+        assert_eq!(family("nikel", metals), ["nickel-200", "nickel-201"]);
+        assert_eq!(family("Copper C110", metals), ["copper-etp", "copper-of"]);
+        assert_eq!(family("nickel-20l", metals), ["nickel-200"]);
+        assert_eq!(family("brass", metals), ["brass-cuzn30"]);
+        assert_eq!(family("unobtainium", metals), [""; 0]);
+        assert_eq!(family("", metals), [""; 0]);
     }
 }

@@ -32,7 +32,7 @@ impl Origins {
     pub fn join(&self, id: JoinId) -> &Span {
         self.joins.get(id.index()).unwrap_or(&self.title)
     }
-    /// A terminal's or cell's name; copies of a pattern share it, a return end has its block.
+    /// A terminal's or cell's name; copies of a pattern share it, a cell of a weld list has its first row there, a return end has its block.
     pub fn electrode(&self, id: ElectrodeId) -> &Span {
         self.electrodes.get(id.index()).unwrap_or(&self.title)
     }

@@ -1,6 +1,6 @@
 //! Outline text to rings: one number line per point, with the place of each, all faults at once.
 
-use super::drawn::{Budget, DrawnRing};
+use super::drawn::{Budget, DrawnRing, few_enough};
 use crate::diagnostic::{Fault, Remark, SourceText, Span};
 use crate::geometry::ring::SAGITTA;
 use crate::geometry::{Point, Ring, Vertex};
@@ -14,7 +14,8 @@ pub fn read_outline(source: &Arc<SourceText>, budget: &mut Budget, faults: &mut 
     for line in &lines {
         let words = words(line, comma);
         let numbers = words.iter().filter(|w| starts_number(w.text)).count();
-        if let Err(fault) = budget.spend(numbers, &reader.span(line.start, line.end)) {
+        let here = reader.span(line.start, line.end);
+        if let Err(fault) = budget.spend(numbers, &here).and_then(|()| few_enough(reader.faults.len(), &here)) {
             reader.faults.push(fault);
             return Vec::new();
         }
@@ -408,6 +409,7 @@ mod tests {
         let (_, faults, _) = read("0 0\n1\n1 x1\n1 2 3 4\nwheel\nring\nring\ncircle 1 2\ncircle 1 2 -3\nunit mm\n1e999 0\n5 5\n");
         let lines: Vec<usize> = faults.iter().map(|f| f.span.as_ref().expect("a place").line_column().0).collect();
         assert_eq!(lines, [2, 3, 4, 5, 6, 8, 9, 10, 11]);
+        assert_eq!(read(&"x\n".repeat(5000)).1.len(), 1001, "a slip that is repeated for ever comes to an end");
         assert!(read("# nothing\n").1[0].message.contains("no ring"));
         assert_eq!(read("ciircle 1 2 3").1[0].remedy.as_deref(), Some("did you mean `circle`?"));
     }

@@ -17,10 +17,15 @@ corner_radius_mm = 0.2
 
 const OUTLINE: &str = "# strip with a slot\n0 0\n120 0\n120 30\n0 30\n\n40 10\n60 10\n60 20\n40 20\ncircle 80 15 8.4\n";
 
+const WELDS: &str =
+    "id,x_mm,y_mm,cell,diameter_mm,length,angle,net,curent\n1,9,7,C1,1.0,,,B+,15\n2,24,7,C2,,3,90,B+,15\n3,11,7,C1,,,,B+,15\n";
+
 fn read_job(text: &str) -> Result<Reading, Vec<Fault>> {
     read(Path::new("pack/job.toml"), &|path: &Path| match path.to_str() {
         Some("pack/job.toml") => Ok(text.to_string()),
         Some("pack/carrier.outline") => Ok(OUTLINE.to_string()),
+        Some("pack/welds.csv") => Ok(WELDS.to_string()),
+        Some("pack/pipe.outline") => Err(Error::from(ErrorKind::Unsupported)),
         Some("pack/binary.outline") => Err(Error::from(ErrorKind::InvalidData)),
         _ => Err(Error::from(ErrorKind::NotFound)),
     })
@@ -91,7 +96,7 @@ density_a_mm2 = {{ overlay = 12 }}
     assert_eq!(*centre, Point::new(21.0, 17.0));
     assert!((area_mm2 - std::f64::consts::FRAC_PI_4).abs() < 1e-12);
     assert_eq!(problem.electrodes[1].through, [LayerId(1), LayerId(0)]);
-    assert_eq!(problem.electrodes[1].group.as_deref(), Some("in"));
+    assert_eq!(problem.electrodes[1].group.as_deref(), Some("cells in"));
     assert_eq!(problem.electrodes[0].drive, Drive::Balance);
     let Footprint::Line { points } = &problem.electrodes[0].spots[0].footprint else { panic!("a line") };
     assert_eq!(points, &[Point::new(120.0, 0.0), Point::new(120.0, 30.0)]);
@@ -176,11 +181,152 @@ current_a = -5
     assert_eq!(reading.problem.layers[0].rings[1].vertices.len(), 7);
 }
 
+/// The spots of a cell as (centre, area, width).
+fn spots(problem: &Problem, electrode: usize) -> Vec<(f64, f64, f64, f64)> {
+    let spot = |f: &Footprint| match f {
+        Footprint::Area { centre, area_mm2, diameter_mm, .. } => (centre.x, centre.y, *area_mm2, diameter_mm.unwrap_or(0.0)),
+        Footprint::Line { .. } => panic!("an area"),
+    };
+    problem.electrodes[electrode].spots.iter().map(|s| spot(&s.footprint)).collect()
+}
+
+const LUG: &str = "[[terminal]]\nname = \"lug\"\nlayer = \"carrier\"\nline_mm = [[120, 0], [120, 30]]\n";
+
+#[test]
+fn one_block_makes_the_cells_of_its_list() {
+    let block = "[[cell]]\nlayer = \"carrier\"\nspots_csv = \"welds.csv\"\ndiameter_mm = 0.8\njoint_mohm = 0.05\ncurrent_a = 5\n";
+    let Reading { problem, origins, remarks } = good(&format!("{STRIP}{LUG}{block}"));
+    assert_eq!(problem.electrodes.iter().map(|e| e.name.as_str()).collect::<Vec<_>>(), ["lug", "C1", "C2"]);
+    let round = |d: f64| std::f64::consts::FRAC_PI_4 * d * d;
+    let [first, third] = spots(&problem, 1)[..] else { panic!("two spots") };
+    assert_eq!(((first.0, first.1, first.3), (third.0, third.1, third.3)), ((9.0, 7.0, 1.0), (11.0, 7.0, 0.8)));
+    let seam = spots(&problem, 2)[0];
+    assert!((seam.2 - (round(0.8) + 0.8 * 2.2)).abs() < 1e-12, "3 mm over all: {seam:?}");
+    let Footprint::Area { region, .. } = &problem.electrodes[2].spots[0].footprint else { panic!("an area") };
+    assert!((region.bounding_box().height() - 3.0).abs() < 0.01 && (region.bounding_box().width() - 0.8).abs() < 0.01, "upright");
+    assert!(problem.electrodes[1..].iter().all(|e| e.drive == Drive::Current(5.0) && e.spots[0].joint_ohm == 0.05e-3));
+    let place = origins.electrode(ElectrodeId(2));
+    assert_eq!((place.source.path.to_str(), place.line_column()), (Some("pack/welds.csv"), (3, 8)));
+    let texts: Vec<&str> = remarks.iter().map(|r| r.text.as_str()).collect();
+    let told = "pack/welds.csv: columns not used: `id`, `net`, `curent` (did you mean `current_a`?)";
+    assert!(texts.contains(&told), "{texts:?}");
+
+    // The same welds join two sheets: whose cell they are does not matter there.
+    let cover = "[[layer]]\nname = \"cover\"\nmetal = \"tin\"\nthickness_mm = 0.2\npoints_mm = [[0, 0], [120, 0], [120, 30], [0, 30]]\n";
+    let join = "[[join]]\nbetween = [\"carrier\", \"cover\"]\nspots_csv = \"welds.csv\"\ndiameter_mm = 0.8\njoint_mohm = 0.02\n";
+    let wire = "[[terminal]]\nname = \"wire\"\nlayer = \"cover\"\nline_mm = [[0, 0], [0, 30]]\ncurrent_a = 5\n";
+    assert_eq!(good(&format!("{STRIP}{cover}{LUG}{wire}{join}")).problem.joins[0].spots.len(), 3);
+}
+
+#[test]
+fn lists_are_read_as_spreadsheets_write_them() {
+    let read_list = |list: &str, block: &str| {
+        let job = format!("{STRIP}{LUG}[[cell]]\nlayer = \"carrier\"\nspots_csv = \"list.csv\"\njoint_mohm = 0\n{block}");
+        let reading = read(Path::new("job.toml"), &|path: &Path| {
+            Ok(match path.to_str() {
+                Some("job.toml") => job.clone(),
+                Some("list.csv") => list.to_string(),
+                _ => OUTLINE.to_string(),
+            })
+        });
+        let Reading { problem, .. } = reading.unwrap_or_else(|faults| panic!("{list:?}: {}", crate_explained(&faults)));
+        let named = problem.electrodes.iter().enumerate().skip(1).map(|(i, e)| (e.name.clone(), e.drive, spots(&problem, i)));
+        named.collect::<Vec<_>>()
+    };
+    let plain = read_list("x,y,cell,diameter,current_a\n9.5,7,A,1,2.5\n20,7,B,1,-2\n11.5,7,A,1,\n", "");
+    assert_eq!((plain.len(), plain[0].2.len()), (2, 2));
+    assert_eq!((&plain[0].0, plain[0].1, &plain[1].0, plain[1].1), (&"A".into(), Drive::Current(2.5), &"B".into(), Drive::Current(-2.0)));
+    for same in [
+        "\u{feff}X [mm];Y [mm];Cell;Diameter (mm);Current [A]\r\n9,5;7;A;1;2,5\r\n;;;;\r\n20;7;B;1;-2\r\n11,5;7;A;1;2,5\r\n",
+        "# from the drawing\nx_mm\ty_mm\tcell\tdiameter_mm\tcurrent\n9,5\t7\tA\t1\t2.5\n20\t7\tB\t1\t-2\n\n11.5\t7\tA\t1",
+        "cell,current_a,\"diameter_mm\",y,x\n\"A\",2.5,1,7,9.5\nB,\"-2\",1,7,20,,\nA,,1,7.0,11.5",
+    ] {
+        assert_eq!(read_list(same, ""), plain, "{same:?}");
+    }
+    let one = read_list("x,y\n9,7\n11,7\n", "name = \"C1\"\ndiameter_mm = 1\ncurrent_a = 2\npattern = { step_mm = [10, 0], count = 2 }\n");
+    assert_eq!(one.iter().map(|c| (c.0.as_str(), c.2.len())).collect::<Vec<_>>(), [("C1", 2), ("C2", 2)]);
+    let mixed = read_list("x,y,cell\n9,7,A\n20,7,\n11,7,A\n", "name = \"C1\"\ndiameter_mm = 1\ncurrent_a = 2\n");
+    assert_eq!(mixed.iter().map(|c| (c.0.as_str(), c.2.len())).collect::<Vec<_>>(), [("A", 2), ("C1", 1)]);
+    // The currents of our own table of welds do not stand in the way of the block's.
+    let again = read_list("electrode,x_mm,y_mm,current_a\nC1,9,7,1.1\nC1,11,7,0.9\n", "name = \"C1\"\ndiameter_mm = 1\ncurrent_a = 2\n");
+    assert_eq!((again.len(), again[0].1), (1, Drive::Current(2.0)));
+}
+
+#[test]
+fn endless_lists_and_endless_slips_come_to_an_end() {
+    let block = "[[cell]]\nname = \"C\"\nlayer = \"carrier\"\nspots_csv = \"list.csv\"\ndiameter_mm = 1\njoint_mohm = 0\ncurrent_a = 1\n";
+    for (row, count, told) in
+        [("1,1\n", 1, "more than 100000 spots"), ("a,b\n", 1002, "reading stops here"), (",x", 1, "more than 1000 columns")]
+    {
+        let list = format!("x,y{}{}", if row.starts_with(',') { "" } else { "\n" }, row.repeat(200_000));
+        let faults = read(Path::new("job.toml"), &|path: &Path| {
+            Ok(match path.to_str() {
+                Some("job.toml") => format!("{STRIP}{LUG}{block}"),
+                Some("list.csv") => list.clone(),
+                _ => OUTLINE.to_string(),
+            })
+        });
+        let faults = faults.expect_err("too much");
+        assert!(faults.len() <= count && faults.last().is_some_and(|f| f.message.contains(told)), "{}: {:?}", faults.len(), faults.last());
+    }
+}
+
+#[test]
+fn crossings_that_end_beside_the_outline_end_on_it() {
+    let crossing = "[[crossing]]\nname = \"waist\"\nfrom_mm = [100, 0.015]\nto_mm = [100, 30.01]\n";
+    let cell = "[[cell]]\nname = \"C\"\nlayer = \"carrier\"\nspots_mm = [[9, 7]]\ndiameter_mm = 1\njoint_mohm = 0\ncurrent_a = 1\n";
+    let Reading { problem, remarks, .. } = good(&format!("{STRIP}{LUG}{cell}{crossing}"));
+    assert_eq!((problem.crossings[0].from, problem.crossings[0].to), (Point::new(100.0, 0.0), Point::new(100.0, 30.0)));
+    let texts: Vec<&str> = remarks.iter().map(|r| r.text.as_str()).collect();
+    assert!(texts.contains(&"waist: 2 points were moved onto the outline (by at most 0.02 mm)"), "{texts:?}");
+    let far = good(&format!("{STRIP}{LUG}{cell}{}", crossing.replace("0.015", "0.03").replace("30.01", "31")));
+    assert_eq!((far.problem.crossings[0].from, far.problem.crossings[0].to), (Point::new(100.0, 0.03), Point::new(100.0, 31.0)));
+}
+
+#[test]
+fn slips_of_units_are_remarked_where_they_are_written() {
+    let text = r#"
+[[layer]]
+name = "plate"
+resistivity_uohm_cm = 0.0172
+thickness_mm = 25
+points_mm = [[0, 0], [0.24, 0], [0.24, 0.08], [0, 0.08]]
+[[terminal]]
+name = "lug"
+layer = "plate"
+line_mm = [[0.24, 0], [0.24, 0.08]]
+joint_mohm = 150
+voltage_mv = 0
+[[cell]]
+name = "C1"
+layer = "plate"
+spots_mm = [[0.04, 0.04]]
+diameter_mm = 0.01
+joint_mohm = 170
+emf_mv = 3.65
+resistance_mohm = 16
+"#;
+    let texts: Vec<String> = good(text).remarks.into_iter().map(|r| r.text).collect();
+    for part in [
+        "plate: its extents are 0.24 x 0.08 mm: plausible?",
+        "plate: `thickness_mm` is 25: plausible?",
+        "plate: `resistivity_uohm_cm` is 0.0172: plausible?",
+        "lug: `joint_mohm` is 150: plausible?",
+        "C1: `joint_mohm` is 170: plausible?",
+        "C1: `emf_mv` is 3.65: plausible?",
+    ] {
+        assert_eq!(texts.iter().filter(|t| t.starts_with(part)).count(), 1, "{part}: {texts:?}");
+    }
+    assert_eq!(texts.len(), 6, "{texts:?}");
+}
+
 #[test]
 fn unreadable_files_are_told_at_their_key() {
-    let faults = read_job(&STRIP.replace("carrier.outline", "binary.outline")).expect_err("not text");
-    let fault = faults.iter().find(|f| f.message.contains("not text in UTF-8")).expect("told");
-    assert_eq!(fault.span.as_ref().map(|s| s.line_column()), Some((6, 11)));
+    for (file, reason) in [("binary.outline", "it is not text in UTF-8"), ("pipe.outline", "it is a pipe or a device")] {
+        let faults = read_job(&STRIP.replace("carrier.outline", file)).expect_err("no outline");
+        let fault = faults.iter().find(|f| f.message.contains(reason)).expect("told");
+        assert_eq!(fault.span.as_ref().map(|s| s.line_column()), Some((6, 11)));
+    }
     assert_eq!(read(Path::new("gone.toml"), &|_| Err(Error::from(ErrorKind::NotFound))).expect_err("gone").len(), 1);
 }
 
@@ -203,17 +349,24 @@ fn broken_sheets_and_outlines_never_panic() {
         }
         String::from_utf8_lossy(&bytes).into_owned()
     };
+    let listed = "[[cell]]\nlayer = \"carrier\"\nspots_csv = \"welds.csv\"\ndiameter_mm = 0.8\njoint_mohm = 0.05\ncurrent_a = 5\n";
+    let whole = format!("{whole}{listed}").replace("C1", "D1");
     let mut refused = 0;
     for _ in 0..3000 {
-        let (job, outline) = (spoil(&whole, &mut random), spoil(OUTLINE, &mut random));
-        let spoilt = random.bool();
+        let (job, outline, welds) = (spoil(&whole, &mut random), spoil(OUTLINE, &mut random), spoil(WELDS, &mut random));
+        let spoilt = random.u8(0..3);
         let result = read(Path::new("job.toml"), &|path: &Path| {
-            let outline = if spoilt { outline.clone() } else { OUTLINE.to_string() };
-            Ok(if path.ends_with("job.toml") { job.clone() } else { outline })
+            let text = match path.extension().and_then(|e| e.to_str()) {
+                Some("csv") => (if spoilt == 0 { &welds } else { WELDS }).to_string(),
+                _ if path.ends_with("job.toml") => (if spoilt == 1 { &job } else { &whole }).clone(),
+                _ => (if spoilt == 2 { &outline } else { OUTLINE }).to_string(),
+            };
+            Ok(text)
         });
         if let Err(faults) = result {
             refused += 1;
             assert!(!faults.is_empty());
+            assert!(faults.iter().filter_map(|f| f.span.as_ref()).all(|s| s.line_column().0 > 0 && s.end <= s.source.text.len().max(1)));
         }
     }
     assert!(refused > 1000, "{refused}");
@@ -315,6 +468,7 @@ current_a = -5
             .map(|e| if let Footprint::Line { points } = &e.spots[0].footprint { points.len() } else { 0 })
             .collect();
         assert_eq!(counts, [2, 2, 3], "a line along the outline takes up its corners");
-        assert_eq!(remarks.len(), 1, "half a spot, and nothing moved: {remarks:?}");
+        let rest = remarks.iter().filter(|r| !r.text.contains("its extents are")).count();
+        assert_eq!(rest, 1, "half a spot, and nothing moved: {remarks:?}");
     }
 }

@@ -64,24 +64,7 @@ pub fn features_of(ring: &Ring, metal_left: bool, features: &mut Vec<Feature>) {
     for (i, &(a, bulge, b)) in edges.iter().enumerate() {
         let (start, end) = (turn(i), turn((i + 1) % count));
         let smooth = [start == Turn::None, end == Turn::None];
-        match Arc::new(a, bulge, b) {
-            None => features.push(Feature::Straight { ends: [a, b], smooth }),
-            Some(arc) => {
-                let parts = (arc.sweep.abs() / std::f64::consts::FRAC_PI_2 - END).ceil().clamp(1.0, 4.0) as usize;
-                let point = |k: usize| match k {
-                    0 => a,
-                    k if k == parts => b,
-                    k => arc.point(k as f64 / parts as f64),
-                };
-                features.extend((0..parts).map(|k| Feature::Bent {
-                    ends: [point(k), point(k + 1)],
-                    smooth: [k > 0 || smooth[0], k + 1 < parts || smooth[1]],
-                    centre: arc.centre,
-                    radius: arc.radius,
-                    left: arc.sweep > 0.0,
-                }));
-            }
-        }
+        features.extend(parts(a, bulge, b, smooth));
         let along = [tangents[(i + count - 1) % count][1], tangents[i][0]];
         match start {
             Turn::None => {}
@@ -89,6 +72,25 @@ pub fn features_of(ring: &Ring, metal_left: bool, features: &mut Vec<Feature>) {
             Turn::Right => features.push(Feature::Tip { at: a, along, side: Side::Metal }),
         }
     }
+}
+
+/// The parts of one edge; `smooth` says whether the boundary goes on at its ends without a corner: without, the very ends are no part of it.
+pub fn parts(a: Point, bulge: f64, b: Point, smooth: [bool; 2]) -> Vec<Feature> {
+    let Some(arc) = Arc::new(a, bulge, b) else { return vec![Feature::Straight { ends: [a, b], smooth }] };
+    let parts = (arc.sweep.abs() / std::f64::consts::FRAC_PI_2 - END).ceil().clamp(1.0, 4.0) as usize;
+    let point = |k: usize| match k {
+        0 => a,
+        k if k == parts => b,
+        k => arc.point(k as f64 / parts as f64),
+    };
+    let part = |k: usize| Feature::Bent {
+        ends: [point(k), point(k + 1)],
+        smooth: [k > 0 || smooth[0], k + 1 < parts || smooth[1]],
+        centre: arc.centre,
+        radius: arc.radius,
+        left: arc.sweep > 0.0,
+    };
+    (0..parts).map(part).collect()
 }
 
 /// How a boundary turns at a vertex.
@@ -195,6 +197,29 @@ impl Feature {
             }
         }
         pairs
+    }
+
+    /// The points, the first on `self`, at which two edges with their ends are nearest to each other. Edges that cross have no pair at the crossing:
+    /// theirs is one at an end, or one where a bend reaches deepest across the other.
+    pub fn nearest(&self, other: &Self) -> Option<(Point, Point)> {
+        let others = other.with_ends();
+        let pairs = self.with_ends().into_iter().flat_map(|one| {
+            let near = others
+                .iter()
+                .flat_map(move |other| one.candidates(other).into_iter().filter(move |&(p, q)| one.holds(p) && other.holds(q)));
+            near.collect::<Vec<_>>()
+        });
+        pairs.min_by(|a, b| a.0.distance(a.1).total_cmp(&b.0.distance(b.1)))
+    }
+
+    /// Itself and its ends as tips, whose directions do not matter here.
+    fn with_ends(self) -> Vec<Self> {
+        match self {
+            Self::Straight { ends, .. } | Self::Bent { ends, .. } => {
+                [self].into_iter().chain(ends.map(|at| Self::Tip { at, along: [Point::default(); 2], side: Side::Metal })).collect()
+            }
+            Self::Tip { .. } => vec![self],
+        }
     }
 
     /// Pairs at which the distance is stationary; whether they lie on the features is not yet asked.

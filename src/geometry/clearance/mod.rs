@@ -1,6 +1,6 @@
 //! The narrowest metal and the narrowest gap of an outline, exact between straight edges, arcs and corner tips.
 
-mod feature;
+pub(super) mod feature;
 mod grid;
 
 use super::{BoundingBox, IndexedRegion, Point, Region, Ring};

@@ -3,7 +3,9 @@
 use super::layer::Stack;
 use super::names::Names;
 use super::place::place;
-use super::shape::{Drawn, drawn_places};
+use super::plausible;
+use super::shape::{Drawn, drawn_places, place_key, places_by};
+use super::weld_list::{Weld, read_welds};
 use crate::diagnostic::Span;
 use crate::geometry::Point;
 use crate::index::{ElectrodeId, LayerId, SourceId};
@@ -12,9 +14,10 @@ use crate::reading::drawn::{MOST_COPIES, within};
 use crate::reading::fields::{Fields, Notes, Placed};
 use crate::reading::files::Files;
 use crate::reading::sheet::Value;
+use std::collections::HashMap;
 
 const TERMINAL_KEYS: [&str; 9] = ["name", "layer", "line_mm", "edge_mm", "disc_mm", "points_mm", "current_a", "voltage_mv", "joint_mohm"];
-const CELL_KEYS: [&str; 16] = [
+const CELL_KEYS: [&str; 17] = [
     "name",
     "layer",
     "through",
@@ -24,6 +27,7 @@ const CELL_KEYS: [&str; 16] = [
     "areas_mm",
     "line_mm",
     "edge_mm",
+    "spots_csv",
     "joint_mohm",
     "current_a",
     "emf_mv",
@@ -33,7 +37,8 @@ const CELL_KEYS: [&str; 16] = [
     "pattern",
 ];
 const RETURN_KEYS: [&str; 9] = ["layer", "through", "spots_mm", "diameter_mm", "seams_mm", "areas_mm", "line_mm", "edge_mm", "joint_mohm"];
-const CELL_PLACES: [&str; 5] = ["spots_mm", "seams_mm", "areas_mm", "line_mm", "edge_mm"];
+const CELL_PLACES: [&str; 6] = ["spots_mm", "seams_mm", "areas_mm", "line_mm", "edge_mm", "spots_csv"];
+const RETURN_PLACES: [&str; 5] = ["spots_mm", "seams_mm", "areas_mm", "line_mm", "edge_mm"];
 
 /// An electrode before it is put onto the metal.
 pub struct DrawnElectrode {
@@ -88,6 +93,7 @@ fn read_terminal(block: &Value, layers: &Names, names: &mut Names, notes: &Notes
     let layer = fields.text("layer").and_then(|l| layer_id(&l, layers, notes));
     let places = drawn_places(&fields, &["line_mm", "edge_mm", "disc_mm", "points_mm"]);
     let joint = if fields.has("joint_mohm") { fields.joint("joint_mohm") } else { Some(0.0) };
+    plausible::remark_number(name.as_ref().map_or("terminal", |n| &n.value), "joint_mohm", joint, notes);
     let current = current(&fields);
     let voltage = fields.number_where("voltage_mv", "within a million volts", |v| v.abs() <= 1e9);
     let drive = match (fields.has("current_a"), fields.has("voltage_mv")) {
@@ -110,14 +116,13 @@ fn current(fields: &Fields) -> Option<f64> {
     fields.number_where("current_a", "within a million amperes", |i| i.abs() <= 1e6).map(|i| i.value)
 }
 
-/// What a cell's end or its return end is attached by.
-struct End {
+/// What a cell's end or its return end is attached to, and by what resistance.
+struct Footing {
     through: Vec<LayerId>,
-    places: Vec<Drawn>,
     joint_ohm: f64,
 }
 
-fn read_end(fields: &Fields, layers: &Names, notes: &Notes) -> Option<End> {
+fn read_footing(fields: &Fields, who: &str, layers: &Names, notes: &Notes) -> Option<Footing> {
     let through = match (fields.has("layer"), fields.has("through")) {
         (true, true) => {
             let remedy = "keep `layer` for one sheet, `through` for several";
@@ -130,10 +135,10 @@ fn read_end(fields: &Fields, layers: &Names, notes: &Notes) -> Option<End> {
             fields.text("layer").and_then(|l| layer_id(&l, layers, notes)).map(|l| vec![l])
         }
     };
-    let places = drawn_places(fields, &CELL_PLACES);
     fields.missing("joint_mohm", "the resistance of one spot's interface in milliohm; 0 is solid");
     let joint = fields.joint("joint_mohm");
-    Some(End { through: through?, places: places?, joint_ohm: joint? * 1e-3 })
+    plausible::remark_number(who, "joint_mohm", joint, notes);
+    Some(Footing { through: through?, joint_ohm: joint? * 1e-3 })
 }
 
 fn read_through(fields: &Fields, layers: &Names, notes: &Notes) -> Option<Vec<LayerId>> {
@@ -158,76 +163,165 @@ fn read_through(fields: &Fields, layers: &Names, notes: &Notes) -> Option<Vec<La
     good.then_some(through)
 }
 
+/// One cell of a block: the block's own, or one of its list of welds.
+struct CellEnd {
+    name: Placed<String>,
+    places: Vec<Drawn>,
+    /// Its own current in A, where the list gives it.
+    current_a: Option<Placed<f64>>,
+}
+
 fn read_cell(block: &Value, layers: &Names, names: &mut Names, files: &Files, notes: &Notes, drawn: &mut DrawnElectrodes) -> Option<()> {
     let fields = Fields::open(block, "cell", &CELL_KEYS, notes)?;
-    let name = fields.required_text("name");
+    let name = fields.text("name");
+    let who = name.as_ref().map_or("cell", |n| n.value.as_str());
     let group = fields.text("group");
-    let end = read_end(&fields, layers, notes);
-    let drive = read_drive(&fields, notes);
+    let footing = read_footing(&fields, who, layers, notes);
+    let key = place_key(&fields, &CELL_PLACES);
+    let driven = fields.has("current_a") || fields.has("emf_mv");
+    let welds = (key == Some("spots_csv")).then(|| read_welds(&fields, if driven { &["current_a"] } else { &[] }, files));
+    let listed = |has: fn(&Weld) -> bool| welds.iter().flatten().flatten().any(has);
+    let (names_listed, currents_listed) = (listed(|w| w.cell.is_some()), listed(|w| w.current_a.is_some()));
+    // A list with faults may hold what seems to be missing.
+    let list_failed = matches!(welds, Some(None));
+    if !names_listed && !list_failed {
+        fields.missing("name", "a text in quotes");
+    }
+    let drive = if list_failed && !driven { None } else { read_drive(&fields, currents_listed, who, notes) };
     let back = fields.value("return").map(|value| {
         let inner = Fields::open(value, "return", &RETURN_KEYS, notes)?;
-        Some((read_end(&inner, layers, notes)?, value.span.clone()))
+        let (footing, places) = (read_footing(&inner, "return", layers, notes), drawn_places(&inner, &RETURN_PLACES));
+        Some((footing?, places?, value.span.clone()))
     });
     let steps = read_pattern(&fields, notes);
-    let Some(Placed { value: first, span }) = name else {
-        names.add(None, fields.span, notes);
-        return None;
-    };
-    let steps = steps?;
-    let spots = end.as_ref().map_or(0, |e| e.places.len()) + back.as_ref().map_or(0, |b| b.as_ref().map_or(0, |b| b.0.places.len()));
-    let limit = files.budget.borrow_mut().spend_spots(spots.saturating_mul(steps.len()), &span);
-    notes.keep(limit)?;
-    let copies: Vec<String> = numbered(&first, steps.len());
-    for copy in &copies {
-        names.add(Some(Placed { value: copy.clone(), span: span.clone() }), fields.span, notes);
-        if back.is_some() {
-            names.add(Some(Placed { value: format!("{copy} return"), span: span.clone() }), fields.span, notes);
+    if names_listed {
+        for key in ["pattern", "return"].into_iter().filter(|key| fields.has(key)) {
+            let message = format!("`{key}` has no meaning beside a list of several cells");
+            let remedy = "write a block for each cell, or leave the column `cell` out";
+            notes.fault(message, fields.place(key), "`spots_csv` alone, or with the welds of one cell", remedy);
         }
     }
-    let (end, drive) = (end?, drive?);
+    let cells = match welds {
+        Some(welds) => welds.and_then(|welds| cells_of_list(welds, name.clone(), currents_listed, notes)),
+        None => key
+            .and_then(|key| places_by(&fields, key))
+            .zip(name.clone())
+            .map(|(places, name)| vec![CellEnd { name, places, current_a: None }]),
+    };
+    let steps = steps?;
+    let back_spots = back.iter().flatten().map(|b| b.1.len()).sum::<usize>();
+    let spots = cells.iter().flatten().map(|c| c.places.len()).sum::<usize>() + back_spots;
+    let limit = files.budget.borrow_mut().spend_spots(spots.saturating_mul(steps.len()), fields.place("name"));
+    notes.keep(limit)?;
+    // Where the cell cannot be read its name is still taken.
+    let named: Vec<&Placed<String>> = cells.as_ref().map_or_else(|| name.iter().collect(), |cells| cells.iter().map(|c| &c.name).collect());
+    if named.is_empty() {
+        names.add(None, fields.span, notes);
+    }
+    for Placed { value: first, span } in named {
+        for copy in numbered(first, steps.len()) {
+            let end = back.is_some().then(|| format!("{copy} return"));
+            for name in [copy].into_iter().chain(end) {
+                names.add(Some(Placed { value: name, span: span.clone() }), fields.span, notes);
+            }
+        }
+    }
+    let (footing, cells, drive) = (footing?, cells?, drive?);
     let back = match back {
         Some(back) => Some(back?),
         None => None,
     };
-    let drive_key = if fields.value("current_a").is_some() { "current_a" } else { "name" };
-    for (name, step) in copies.into_iter().zip(steps) {
+    for (cell, name, step) in cells.iter().flat_map(|cell| {
+        let copies = numbered(&cell.name.value, steps.len());
+        copies.into_iter().zip(&steps).map(move |(name, step)| (cell, name, *step))
+    }) {
         let id = ElectrodeId::new(drawn.list.len());
         let source = SourceId::new(drawn.sources.len());
-        let (forward, backward, default_group) = match drive {
-            CellDrive::Current(i) => (Drive::Current(i), Drive::Current(-i), if i < 0.0 { "out" } else { "in" }),
-            CellDrive::Source { emf_v, resistance_ohm } => {
+        let given = |i: f64| (Drive::Current(i), Drive::Current(-i), if i < 0.0 { "cells out" } else { "cells in" });
+        let (forward, backward, default_group) = match (drive, &cell.current_a) {
+            (CellDrive::Current(i), _) => given(i),
+            (CellDrive::Listed, current) => given(current.as_ref()?.value),
+            (CellDrive::Source { emf_v, resistance_ohm }, _) => {
                 let negative = back.is_some().then(|| ElectrodeId::new(id.index() + 1));
                 drawn.sources.push(Source { emf_v, resistance_ohm, positive: id, negative });
-                (Drive::Source(source), Drive::Return(source), "sources")
+                (Drive::Source(source), Drive::Return(source), "cells")
             }
         };
         let group_name = group.as_ref().map_or(default_group, |g| g.value.as_str());
-        let mut push = |name: String, group: String, end: &End, drive, span: &Span| {
-            let places = end.places.iter().map(|p| p.moved(step)).collect();
-            let through = end.through.clone();
-            let electrode = Electrode { name, kind: ElectrodeKind::Cell, group: Some(group), through, spots: Vec::new(), drive };
-            let drive_span = fields.place(drive_key).clone();
-            drawn.list.push(DrawnElectrode { electrode, places, joint_ohm: end.joint_ohm, span: span.clone(), drive_span });
+        let drive_span = match &cell.current_a {
+            Some(current) => &current.span,
+            None if fields.value("current_a").is_some() => fields.place("current_a"),
+            None => &cell.name.span,
         };
-        push(name.clone(), group_name.to_string(), &end, forward, &span);
-        if let Some((end, place)) = &back {
-            push(format!("{name} return"), format!("{group_name} return"), end, backward, place);
+        let mut push = |name: String, group: String, footing: &Footing, places: &[Drawn], drive, span: &Span| {
+            let places = places.iter().map(|p| p.moved(step)).collect();
+            let through = footing.through.clone();
+            let electrode = Electrode { name, kind: ElectrodeKind::Cell, group: Some(group), through, spots: Vec::new(), drive };
+            let (span, drive_span) = (span.clone(), drive_span.clone());
+            drawn.list.push(DrawnElectrode { electrode, places, joint_ohm: footing.joint_ohm, span, drive_span });
+        };
+        push(name.clone(), group_name.to_string(), &footing, &cell.places, forward, &cell.name.span);
+        if let Some((footing, places, place)) = &back {
+            push(format!("{name} return"), format!("{group_name} return"), footing, places, backward, place);
         }
     }
     Some(())
 }
 
+/// The cells of a list in the order of their first welds; welds that name no cell belong to the block's.
+fn cells_of_list(welds: Vec<Weld>, own: Option<Placed<String>>, with_currents: bool, notes: &Notes) -> Option<Vec<CellEnd>> {
+    let mut cells: Vec<CellEnd> = Vec::new();
+    let mut found: HashMap<String, usize> = HashMap::new();
+    let mut good = true;
+    for Weld { drawn, cell, current_a } in welds {
+        let Some(name) = cell.or_else(|| own.clone()) else {
+            let remedy = "fill the column `cell`, or give the block a `name` for the rest";
+            notes.fault("the weld belongs to no cell", &drawn.span, "a cell's name in every row", remedy);
+            good = false;
+            continue;
+        };
+        let number = *found.entry(name.value.clone()).or_insert(cells.len());
+        if number == cells.len() {
+            cells.push(CellEnd { name, places: Vec::new(), current_a: None });
+        }
+        let cell = &mut cells[number];
+        match (&cell.current_a, current_a) {
+            (Some(first), Some(other)) if first.value != other.value => {
+                let message = format!("`{}` has two currents, {} A and {} A", cell.name.value, first.value, other.value);
+                let remedy = "give each row the current of the whole cell, or fill one row only";
+                notes.fault_with(message, &other.span, "one current for each cell", remedy, vec![(first.span.clone(), "the first one")]);
+                good = false;
+            }
+            (None, other) => cell.current_a = other,
+            _ => {}
+        }
+        cell.places.push(drawn);
+    }
+    for cell in cells.iter().filter(|cell| with_currents && cell.current_a.is_none()) {
+        let message = format!("`{}` has no current", cell.name.value);
+        notes.fault(message, &cell.name.span, "a current for each cell of the list", "fill `current_a` in one of its rows");
+        good = false;
+    }
+    good.then_some(cells)
+}
+
 #[derive(Clone, Copy)]
 enum CellDrive {
     Current(f64),
-    Source { emf_v: f64, resistance_ohm: f64 },
+    /// Each cell's own, from the list of welds.
+    Listed,
+    Source {
+        emf_v: f64,
+        resistance_ohm: f64,
+    },
 }
 
-fn read_drive(fields: &Fields, notes: &Notes) -> Option<CellDrive> {
+fn read_drive(fields: &Fields, listed: bool, who: &str, notes: &Notes) -> Option<CellDrive> {
     let current = current(fields);
     let emf = fields.number_where("emf_mv", "within a million volts", |v| v.abs() <= 1e9);
+    plausible::remark_number(who, "emf_mv", emf.as_ref().map(|e| e.value), notes);
     let resistance = fields.positive("resistance_mohm");
-    match (fields.has("current_a"), fields.has("emf_mv")) {
+    match (fields.has("current_a") || listed, fields.has("emf_mv")) {
         (true, true) => {
             let remedy = "remove `current_a`: it is found from the voltage; or remove `emf_mv`";
             notes.fault("the cell is driven twice", fields.place("emf_mv"), "`current_a`, or `emf_mv` with `resistance_mohm`", remedy);
@@ -243,6 +337,7 @@ fn read_drive(fields: &Fields, notes: &Notes) -> Option<CellDrive> {
             );
             None
         }
+        (true, false) if listed => Some(CellDrive::Listed),
         (true, false) => current.map(CellDrive::Current),
         (false, true) => {
             fields.missing("resistance_mohm", "the cell's internal resistance in milliohm, above zero");

@@ -3,7 +3,9 @@
 use super::layer::Stack;
 use super::names::Names;
 use super::place::place;
-use super::shape::{Form, drawn_places, rings_of};
+use super::plausible;
+use super::shape::{Drawn, Form, drawn_places, place_key, places_by, rings_of};
+use super::weld_list::read_welds;
 use crate::diagnostic::Span;
 use crate::geometry::overlap::common_area;
 use crate::geometry::{BoundingBox, Point, Region, Ring};
@@ -146,16 +148,21 @@ pub fn read_joins(blocks: &[Value], stack: &Stack, files: &Files, notes: &Notes)
 }
 
 fn read_join(block: &Value, stack: &Stack, files: &Files, notes: &Notes) -> Option<(Join, Span)> {
-    let keys = ["between", "spots_mm", "diameter_mm", "seams_mm", "areas_mm", "joint_mohm"];
+    let keys = ["between", "spots_mm", "diameter_mm", "seams_mm", "areas_mm", "spots_csv", "joint_mohm"];
     let fields = Fields::open(block, "join", &keys, notes)?;
     let between = read_between(&fields, stack, notes);
-    let places = drawn_places(&fields, &["spots_mm", "seams_mm", "areas_mm"]);
+    let places = match place_key(&fields, &["spots_mm", "seams_mm", "areas_mm", "spots_csv"]) {
+        Some("spots_csv") => read_welds(&fields, &["cell", "current_a"], files).map(|welds| welds.into_iter().map(|w| w.drawn).collect()),
+        Some(key) => places_by(&fields, key),
+        None => None,
+    };
     fields.missing("joint_mohm", "the resistance of one spot's interface in milliohm; 0 is a bond");
     let joint = fields.joint("joint_mohm");
-    let (between, places) = (between?, places?);
+    let (between, places): (_, Vec<Drawn>) = (between?, places?);
     let limit = files.budget.borrow_mut().spend_spots(places.len(), fields.span);
     notes.keep(limit)?;
     let who = format!("join {} - {}", stack.name(between[0]), stack.name(between[1]));
+    plausible::remark_number(&who, "joint_mohm", joint, notes);
     let spots = place(&places, &between, stack, &who, notes);
     Some((Join { between, spots, joint_ohm: joint? * 1e-3 }, fields.span.clone()))
 }

@@ -1,6 +1,7 @@
 //! The layers' blocks: outline, thickness and metal; and the stack they make once corners are rounded.
 
 use super::names::Names;
+use super::plausible;
 use super::shape::rings_of;
 use crate::geometry::corner::{Sharp, round_inside_corners};
 use crate::geometry::{IndexedRegion, Point, Region, Ring};
@@ -67,18 +68,24 @@ pub fn read_layers(blocks: &[Value], celsius: f64, files: &Files, notes: &Notes)
     let mut layers = Vec::new();
     for block in blocks {
         let Some(fields) = Fields::open(block, "layer", &KEYS, notes) else { continue };
-        names.add(fields.required_text("name"), fields.span, notes);
+        let name = fields.required_text("name");
+        let who = name.as_ref().map_or("layer", |n| n.value.as_str()).to_string();
+        names.add(name, fields.span, notes);
         fields.missing("thickness_mm", "the sheet's thickness in mm");
         let rings = rings_of(&fields, files);
         let corner_radius = fields.number_where("corner_radius_mm", "larger than zero", |r| r > 0.0 && r <= 1e6);
-        let region = |rings: &Vec<DrawnRing>| IndexedRegion::new(&Region::from_rings(rings.iter().map(|r| &r.ring)));
+        let region = |rings: &Vec<DrawnRing>| Region::from_rings(rings.iter().map(|r| &r.ring));
+        let thickness_mm =
+            fields.number_where("thickness_mm", "larger than zero and at most 100", |t| t > 0.0 && t <= 100.0).map(|t| t.value);
+        plausible::remark_number(&who, "thickness_mm", thickness_mm, notes);
+        if let Some(rings) = &rings {
+            plausible::remark_extents(&who, region(rings).bounding_box(), notes);
+        }
         layers.push(DrawnLayer {
-            sharp: rings.as_ref().filter(|_| corner_radius.is_some()).map(region),
+            sharp: rings.as_ref().filter(|_| corner_radius.is_some()).map(|rings| IndexedRegion::new(&region(rings))),
             rings,
-            material: material(&fields, celsius),
-            thickness_mm: fields
-                .number_where("thickness_mm", "larger than zero and at most 100", |t| t > 0.0 && t <= 100.0)
-                .map(|t| t.value),
+            material: material(&fields, &who, celsius),
+            thickness_mm,
             corner_radius,
         });
     }
@@ -86,7 +93,7 @@ pub fn read_layers(blocks: &[Value], celsius: f64, files: &Files, notes: &Notes)
 }
 
 /// Metal and its resistivity in ohm mm at the job's temperature.
-fn material(fields: &Fields, celsius: f64) -> Option<(Material, f64)> {
+fn material(fields: &Fields, who: &str, celsius: f64) -> Option<(Material, f64)> {
     let alpha = fields.number_where("alpha_per_k", "between -0.1 and 0.1", |a| a.abs() <= 0.1);
     for key in ["conductivity_w_mk", "heat_capacity_j_kgk"] {
         fields.positive(key);
@@ -94,6 +101,7 @@ fn material(fields: &Fields, celsius: f64) -> Option<(Material, f64)> {
     fields.number("melting_c");
     let density = fields.positive("density_g_cm3");
     let own = fields.positive("resistivity_uohm_cm");
+    plausible::remark_number(who, "resistivity_uohm_cm", own, fields.notes);
     let named = fields.text("metal");
     let material = match (named, fields.has("resistivity_uohm_cm")) {
         (Some(name), true) => {
@@ -104,8 +112,12 @@ fn material(fields: &Fields, celsius: f64) -> Option<(Material, f64)> {
         (Some(name), false) => {
             let Some(row) = metal(&name.value) else {
                 let known = crate::problem::material::METALS.iter().map(|m| m.name);
-                let near = crate::reading::hint::nearest(&name.value, known);
-                let remedy = near.map_or("`pinchbar metals` lists the names".to_string(), |n| format!("did you mean `{n}`?"));
+                let near = crate::reading::hint::family(&name.value, known);
+                let remedy = match near.split_last() {
+                    None => "`pinchbar metals` lists the names".to_string(),
+                    Some((one, [])) => format!("did you mean `{one}`?"),
+                    Some((last, others)) => format!("did you mean `{}` or `{last}`?", others.join("`, `")),
+                };
                 let expected = "a row of the metals table, or `resistivity_uohm_cm`";
                 fields.notes.fault(format!("unknown metal `{}`", name.value), &name.span, expected, remedy);
                 return None;

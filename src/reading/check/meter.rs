@@ -2,6 +2,7 @@
 
 use super::layer::Stack;
 use super::names::Names;
+use super::place::{onto_outline, remark_moved};
 use crate::diagnostic::Span;
 use crate::geometry::predicate::segments_meet;
 use crate::geometry::{BoundingBox, Point};
@@ -69,7 +70,13 @@ fn read_crossing(block: &Value, stack: &Stack, names: &mut Names, notes: &Notes)
     fields.missing("to_mm", "[x, y]");
     let point = |key| fields.tuple::<2>(key, "[x, y]").map(|p| Point::new(p.value[0], p.value[1]));
     let (from, to) = (point("from_mm"), point("to_mm"));
-    let (from, to) = (from?, to?);
+    // An end near several sheets' outlines moves onto the nearest.
+    let mut moved = 0;
+    let mut settled = |p: Point| {
+        let near = stack.metal.iter().flatten().min_by(|a, b| a.rim_distance(p).total_cmp(&b.rim_distance(p)));
+        near.and_then(|metal| onto_outline(p, metal, &mut moved)).map_or(p, |rim| rim.point)
+    };
+    let (from, to) = (settled(from?), settled(to?));
     if from == to {
         notes.fault("the crossing has no length", fields.place("to_mm"), "two different points", "correct `from_mm` or `to_mm`");
         return None;
@@ -83,6 +90,7 @@ fn read_crossing(block: &Value, stack: &Stack, names: &mut Names, notes: &Notes)
         return None;
     }
     let Placed { value: name, span } = name?;
+    remark_moved(&name, moved, notes);
     Some((Crossing { name, from, to }, span))
 }
 

@@ -8,7 +8,9 @@ mod layer;
 mod meter;
 mod names;
 mod place;
+mod plausible;
 mod shape;
+mod weld_list;
 
 use super::fields::{Fields, Notes};
 use super::files::Files;

@@ -9,7 +9,7 @@ use crate::problem::Footprint;
 use crate::reading::fields::Notes;
 
 /// A point this near to the outline, in mm, moves onto it.
-pub const ONTO_OUTLINE: f64 = 0.02;
+const ONTO_OUTLINE: f64 = 0.02;
 
 /// A corner of the outline this near to a line, in mm, becomes a point of the line.
 const ALONG_OUTLINE: f64 = 0.005;
@@ -36,12 +36,7 @@ pub fn place(drawn: &[Drawn], layers: &[LayerId], stack: &Stack, who: &str, note
         };
         footprints.extend(footprint);
     }
-    if moved > 0 {
-        notes.remark(format!(
-            "{who}: {moved} {} moved onto the outline (by at most {ONTO_OUTLINE} mm)",
-            if moved == 1 { "point was" } else { "points were" }
-        ));
-    }
+    remark_moved(who, moved, notes);
     if let Some(least) = partly.iter().copied().reduce(f64::min) {
         let spots = if partly.len() == 1 { "1 spot lies" } else { &format!("{} spots lie", partly.len()) };
         let text = format!(
@@ -51,6 +46,14 @@ pub fn place(drawn: &[Drawn], layers: &[LayerId], stack: &Stack, who: &str, note
         notes.remark(text);
     }
     footprints
+}
+
+/// Tells how many points were moved onto the outline, if any.
+pub fn remark_moved(who: &str, moved: usize, notes: &Notes) {
+    if moved > 0 {
+        let points = if moved == 1 { "point was" } else { "points were" };
+        notes.remark(format!("{who}: {moved} {points} moved onto the outline (by at most {ONTO_OUTLINE} mm)"));
+    }
 }
 
 /// A line or edge lies on one layer, the last one; the sheets above it must hold it too.
@@ -109,7 +112,7 @@ fn centroid(region: &Region) -> Point {
 }
 
 /// A point moved onto the outline where it is near: onto a corner, or else onto the edge.
-fn onto_outline(p: Point, metal: &IndexedRegion, moved: &mut usize) -> Option<RimPoint> {
+pub fn onto_outline(p: Point, metal: &IndexedRegion, moved: &mut usize) -> Option<RimPoint> {
     let rim = metal.nearest_rim(p).filter(|r| r.point.distance(p) <= ONTO_OUTLINE)?;
     let reach = Point::new(ONTO_OUTLINE, ONTO_OUTLINE);
     let corners =

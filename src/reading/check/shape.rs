@@ -117,7 +117,12 @@ fn ring(value: &Value, key: &str, fields: &Fields) -> Option<DrawnRing> {
 
 /// The places of attachment of a block, given by exactly one of `keys`.
 pub fn drawn_places(fields: &Fields, keys: &[&'static str]) -> Option<Vec<Drawn>> {
-    let given: Vec<&str> = keys.iter().copied().filter(|key| fields.has(key)).collect();
+    places_by(fields, place_key(fields, keys)?)
+}
+
+/// The one of `keys` by which the block says where it is attached.
+pub fn place_key(fields: &Fields, keys: &[&'static str]) -> Option<&'static str> {
+    let given: Vec<&'static str> = keys.iter().copied().filter(|key| fields.has(key)).collect();
     let listed = keys.iter().map(|k| format!("`{k}`")).collect::<Vec<_>>().join(", ");
     let key = match given.as_slice() {
         [key] => *key,
@@ -132,10 +137,15 @@ pub fn drawn_places(fields: &Fields, keys: &[&'static str]) -> Option<Vec<Drawn>
             return None;
         }
     };
-    if key != "spots_mm" && fields.has("diameter_mm") {
+    if !["spots_mm", "spots_csv"].contains(&key) && fields.has("diameter_mm") {
         let message = format!("`diameter_mm` has no meaning beside `{key}`");
-        fields.notes.fault(message, fields.place("diameter_mm"), "`diameter_mm` only beside `spots_mm`", "remove `diameter_mm`");
+        fields.notes.fault(message, fields.place("diameter_mm"), "`diameter_mm` only beside spots", "remove `diameter_mm`");
     }
+    Some(key)
+}
+
+/// The places of attachment that stand in the block itself.
+pub fn places_by(fields: &Fields, key: &str) -> Option<Vec<Drawn>> {
     let at = |x, y| Point::new(x, y);
     match key {
         "spots_mm" => {
