@@ -4,7 +4,7 @@
 //!
 //! | floor | holds |
 //! |---|---|
-//! | [`index`], [`diagnostic`], [`quantity`] | words: ids, faults with places, units |
+//! | [`index`], [`diagnostic`], [`quantity`], [`progress`] | words: ids, faults with places, units, stages |
 //! | [`geometry`] | points, rings with arcs, regions |
 //! | [`problem`], [`mesh`] | the checked statement; the triangulation (they do not know each other) |
 //! | [`reading`] | texts to a `Problem`, or all faults at once |
@@ -13,12 +13,14 @@
 //! | [`physics`] | from a `Problem` to a `Solution` |
 //! | [`findings`] | from a `Solution` to what a reader wants to know |
 //! | [`report`], [`picture`] | findings to bytes |
+//! | [`starting`] | a first sheet and outline, as texts to edit (it uses `problem` for the metals, nothing in between) |
 //! | [`cli`] | files and terminal |
 #![forbid(unsafe_code)]
 #![warn(missing_docs)]
 
 pub mod diagnostic;
 pub mod index;
+pub mod progress;
 pub mod quantity;
 
 pub mod geometry;
@@ -38,5 +40,7 @@ pub mod findings;
 
 pub mod picture;
 pub mod report;
+
+pub mod starting;
 
 pub mod cli;

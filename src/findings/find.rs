@@ -12,6 +12,7 @@ use crate::physics::plan::Mark;
 use crate::physics::solution::Passed;
 use crate::physics::{self, Fault, Solution};
 use crate::problem::{Crossing, Electrode, ElectrodeKind, Footprint, Interface, Problem};
+use crate::progress::{Listener, Stage};
 use rayon::prelude::*;
 
 /// Times that the mesh is refined under the hotspots: the first places may move a little when they are resolved.
@@ -35,9 +36,18 @@ pub struct Found {
 /// # Errors
 /// As [`crate::physics::run`]; a crossing that runs inside a held patch.
 pub fn find(problem: &Problem) -> Result<Found, Vec<Fault>> {
-    let started = physics::Started::new(problem)?;
+    find_with(problem, &|_| {})
+}
+
+/// As [`find`], telling a listener where the work is.
+///
+/// # Errors
+/// As [`find`].
+pub fn find_with(problem: &Problem, listener: &Listener) -> Result<Found, Vec<Fault>> {
+    let started = physics::Started::new(problem, listener)?;
     let expected = survey(problem, &started.first, &DensityField::new(problem, &started.first)).unresolved;
     let mut solution = started.finished(&expected)?;
+    listener(Stage::Hotspots);
     let mut density = DensityField::new(problem, &solution);
     let mut survey = survey(problem, &solution, &density);
     for _ in 0..SHARPENINGS {

@@ -12,6 +12,7 @@ use crate::geometry::Point;
 use crate::index::{ElectrodeId, LayerId};
 use crate::mesh::{Mesh, bisected, triangulated};
 use crate::problem::Problem;
+use crate::progress::{Listener, Stage};
 
 /// Rounds after which the refinement gives up: each adds triangles, so the vertex limit comes first in practice.
 const MOST_ROUNDS: usize = 200;
@@ -23,6 +24,7 @@ pub struct Rounds<'a> {
     cells: Vec<CellPlan>,
     lines: Vec<LinePlan>,
     record: RunRecord,
+    listener: &'a Listener<'a>,
     /// How much wider, in parts of what is asked, the voltages' intervals are than the loss's: learnt on the first mesh.
     strictness: f64,
 }
@@ -41,7 +43,7 @@ impl<'a> Started<'a> {
     /// # Errors
     /// Faults of the statement that only the mesh can show (metal that hangs on nothing, currents that do not balance on a piece, electrodes that
     /// meet), or a numerical failure.
-    pub fn new(problem: &'a Problem) -> Result<Self, Vec<Fault>> {
+    pub fn new(problem: &'a Problem, listener: &'a Listener<'a>) -> Result<Self, Vec<Fault>> {
         let plan = Plan::new(problem)?;
         let drawing = plan.drawing()?;
         let (mesh, quality) =
@@ -49,7 +51,7 @@ impl<'a> Started<'a> {
         let cells = cells(&plan, &mesh)?;
         let lines = plan.line_plans();
         let record = RunRecord { moves: drawing.moves, angles_reached: quality.angles_reached, ..RunRecord::default() };
-        let mut rounds = Rounds { problem, plan, cells, lines, record, strictness: 1.0 };
+        let mut rounds = Rounds { problem, plan, cells, lines, record, listener, strictness: 1.0 };
         match rounds.round(mesh)? {
             (Some(first), finer) => Ok(Self { rounds, first, finer }),
             (None, _) => Err(without_answer()),
@@ -89,6 +91,8 @@ impl Rounds<'_> {
     /// One round on a mesh: the solution where everything was enclosed (always the first and the last time), and the next mesh, if there is one.
     fn round(&mut self, mesh: Mesh) -> Result<(Option<Solution>, Option<Mesh>), Vec<Fault>> {
         let (problem, plan) = (self.problem, &self.plan);
+        let gap = self.record.rounds.last().map(|r| r.gap);
+        (self.listener)(Stage::Round { number: self.record.rounds.len() + 1, triangles: mesh.triangles.len(), gap });
         let complex = Complex::new(&mesh, &self.cells, &self.lines, problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
         let is_first = self.record.rounds.is_empty();
         if is_first {
