@@ -19,6 +19,9 @@ pub const DROP_MV: f64 = 20.0;
 /// What hand formulas may use up of a limit: spots and inside corners need the rest.
 const SHARE_OF_LIMIT: f64 = 0.6;
 
+/// A spot's current leaves to one side of its rim more than to the other.
+const UNEVEN_RIM: f64 = 1.2;
+
 /// Stock sheets, thin ones first: metal, thickness in mm, limit in A/mm2; common practice, no source.
 const STOCK: [(&str, f64, f64); 10] = [
     ("nickel-201", 0.15, 8.0),
@@ -163,18 +166,20 @@ impl Plate {
         [(-h, -h), (h, -h), (-h, h), (h, h)].map(|(x, y)| Point::new(can.x + x, can.y + y))
     }
 
-    /// The first sheet that keeps the drop and the tab's mean density below their shares of the limits, by hand formulas: a strip per row that
-    /// gathers a cell's current at every pitch, and the tab. The thickest where none does.
+    /// The first sheet that keeps the drop, the tab's mean density and that at a spot's rim below their shares of the limits, by hand formulas:
+    /// a strip per row that gathers a cell's current at every pitch, and the tab. The thickest where none does.
     fn choose_stock(&mut self, columns: u32, squares: f64) {
         let total = f64::from(self.cells()) * self.current_a;
         let width = self.tab_mm[1] - self.tab_mm[0];
         let in_row = 0.5 * f64::from(columns).powi(2) * self.current_a * squares;
         let in_tab = total * (self.tab_mm[2] - self.size_mm[0]) / width;
+        let rims = 4.0 * std::f64::consts::PI * self.spot_mm;
         for (name, thickness, limit) in STOCK {
             (self.metal, self.thickness_mm, self.density_a_mm2) = (name, thickness, limit);
             let ohm_mm = metal(name).map_or(f64::INFINITY, |m| m.material().resistivity.at(20.0));
             let drop_mv = 1e3 * ohm_mm / thickness * (in_row + in_tab);
-            if drop_mv <= SHARE_OF_LIMIT * DROP_MV && total / (width * thickness) <= SHARE_OF_LIMIT * limit {
+            let density = (total / width).max(UNEVEN_RIM * self.current_a / rims) / thickness;
+            if drop_mv <= SHARE_OF_LIMIT * DROP_MV && density <= SHARE_OF_LIMIT * limit {
                 break;
             }
         }

@@ -64,7 +64,7 @@ pub fn sheet(order: &Order, plate: &Plate) -> String {
     page.block("[[layer]]", "a sheet of metal; several: bottom first");
     page.line("name = \"plate\"", "the other blocks call it by this name");
     page.line(&format!("metal = \"{}\"", plate.metal), "`pinchbar metals` lists them");
-    page.line(&format!("thickness_mm = {}", plate.thickness_mm), "a stock size, by a hand estimate of the drop");
+    page.line(&format!("thickness_mm = {}", plate.thickness_mm), "a stock size, by hand formulas");
     page.line(&format!("outline = \"{OUTLINE}\""), "the file beside this one");
     page.line(&format!("corner_radius_mm = {}", coordinate(plate.corner_mm)), "of the inside corners, where the tab begins");
     for (block, name) in plate.blocks.iter().zip(if plate.blocks.len() > 1 { ["A", "B"] } else { ["C", ""] }) {
@@ -75,7 +75,7 @@ pub fn sheet(order: &Order, plate: &Plate) -> String {
     page.line("layer = \"plate\"", "the sheet it is fixed to");
     page.line("# the tab's end, from corner to corner", "");
     page.line(&format!("line_mm = [{}, {}]", pair([end, low]), pair([end, high])), "");
-    page.block("[limits]", "what you accept: PASS to 80 %, TIGHT to 100 %");
+    page.block("[limits]", "what you accept; PASS up to 80 % of it");
     page.line(&format!("drop_mv = {DROP_MV}"), "largest, between any can and the lead");
     page.line(&format!("density_a_mm2 = {{ plate = {} }}", plate.density_a_mm2), "gauge peak in the plate");
     page.line("joint_mv = 3", "largest over one spot");
