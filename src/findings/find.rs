@@ -265,3 +265,28 @@ fn middle(footprint: &Footprint) -> Point {
         }
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::trial::{bulged, line, problem, sheet, terminals};
+    use super::*;
+    use std::sync::Mutex;
+
+    #[test]
+    fn a_listener_hears_every_round_in_order_and_then_the_hotspots() {
+        let bend = bulged(&[(0.0, 0.0, 0.0), (14.0, 0.0, 0.0), (14.0, 7.0, 0.0), (7.0, 7.0, 0.0), (7.0, 14.0, 0.0), (0.0, 14.0, 0.0)]);
+        let ends = terminals(line(&[(14.0, 0.0), (14.0, 7.0)]), line(&[(7.0, 14.0), (0.0, 14.0)]), 0, 1.0);
+        let heard = Mutex::new(Vec::new());
+        let found = find_with(&problem(vec![sheet("a", vec![bend], 1.0)], ends, 1e-4, 1.0), &|stage| heard.lock().unwrap().push(stage));
+        let rounds = found.unwrap().findings.run.rounds;
+        let heard = heard.into_inner().unwrap();
+        assert_eq!(heard.last(), Some(&Stage::Hotspots));
+        assert!(rounds > 1 && heard.len() > 2, "{heard:?}");
+        let mut before = None;
+        for (k, stage) in heard[..heard.len() - 1].iter().enumerate() {
+            let Stage::Round { number, triangles, gap } = stage else { panic!("{heard:?}") };
+            assert!(*number == k + 1 && gap.is_some() == (k > 0) && before < Some(*triangles), "{heard:?}");
+            before = Some(*triangles);
+        }
+    }
+}
