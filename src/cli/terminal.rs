@@ -10,10 +10,10 @@ pub fn print(text: &str) -> io::Result<()> {
     print_bytes(text.as_bytes())
 }
 
-/// As [`print`].
+/// As [`print()`].
 ///
 /// # Errors
-/// As [`print`].
+/// As [`print()`].
 pub fn print_bytes(bytes: &[u8]) -> io::Result<()> {
     let mut out = io::stdout().lock();
     match out.write_all(bytes).and_then(|()| out.flush()) {

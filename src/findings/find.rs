@@ -39,10 +39,10 @@ pub fn find(problem: &Problem) -> Result<Found, Vec<Fault>> {
     find_with(problem, &|_| {})
 }
 
-/// As [`find`], telling a listener where the work is.
+/// As [`find()`], telling a listener where the work is.
 ///
 /// # Errors
-/// As [`find`].
+/// As [`find()`].
 pub fn find_with(problem: &Problem, listener: &Listener) -> Result<Found, Vec<Fault>> {
     let started = physics::Started::new(problem, listener)?;
     let expected = survey(problem, &started.first, &DensityField::new(problem, &started.first)).unresolved;

@@ -95,7 +95,8 @@ fn cell(page: &mut Page, plate: &Plate, block: &Block, name: &str) {
     page.line("joint_mohm = 0.05", "of one spot's interface: measure yours");
     page.line(&format!("current_a = {}", coordinate(plate.current_a)), "+ into the plate; continuous");
     if several {
-        page.line("# step along a row, cells in it, step to the next row, rows", "");
+        let rows = if block.rows > 1 { ", step to the next row, rows" } else { "" };
+        page.line(&format!("# step along a row, cells in it{rows}"), "");
         let along = format!("step_mm = {}, count = {}", pair([plate.pitch_mm, 0.0]), block.count);
         let across = format!(", row_step_mm = {}, rows = {}", pair([0.0, block.row_step_mm]), block.rows);
         page.line(&format!("pattern = {{ {along}{} }}", if block.rows > 1 { &across } else { "" }), "");
