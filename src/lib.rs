@@ -4,7 +4,7 @@
 //!
 //! | floor | holds |
 //! |---|---|
-//! | [`index`], [`diagnostic`], [`quantity`], [`mod@csv`] | words: ids, faults with places, units; rows of cells |
+//! | [`index`], [`diagnostic`], [`quantity`], [`progress`], [`mod@csv`] | words: ids, faults with places, units, stages; rows of cells |
 //! | [`geometry`] | points, rings with arcs, regions |
 //! | [`problem`], [`mesh`] | the checked statement; the triangulation (they do not know each other) |
 //! | [`reading`] | texts to a `Problem`, or all faults at once |
@@ -13,6 +13,7 @@
 //! | [`physics`] | from a `Problem` to a `Solution` |
 //! | [`findings`] | from a `Solution` to what a reader wants to know |
 //! | [`report`], [`picture`] | findings to bytes |
+//! | [`starting`] | a first sheet and outline, as texts to edit (it uses `problem` for the metals, nothing in between) |
 //! | [`cli`] | files and terminal |
 #![forbid(unsafe_code)]
 #![warn(missing_docs)]
@@ -20,6 +21,7 @@
 pub mod csv;
 pub mod diagnostic;
 pub mod index;
+pub mod progress;
 pub mod quantity;
 
 pub mod geometry;
@@ -39,5 +41,7 @@ pub mod findings;
 
 pub mod picture;
 pub mod report;
+
+pub mod starting;
 
 pub mod cli;

@@ -44,14 +44,15 @@ fn names(folder: &Path) -> Vec<String> {
 #[test]
 fn help_fits_one_screen_and_the_long_one_carries_the_caution() {
     let here = folder();
-    for arguments in [&["-h"][..], &["map", "-h"], &["check", "-h"], &["metals", "-h"]] {
+    for arguments in [&["-h"][..], &["map", "-h"], &["check", "-h"], &["metals", "-h"], &["start", "-h"]] {
         let output = tool(here.path(), arguments);
         let shown = text(&output.stdout);
         assert_eq!((status(&output), output.stderr.len()), (0, 0), "{arguments:?}");
         assert!(shown.lines().count() <= 24 && shown.contains("Usage: pinchbar"), "{shown}");
+        assert!(shown.lines().all(|l| l.chars().count() <= 80), "{shown}");
     }
     let long = text(&tool(here.path(), &["--help"]).stdout);
-    for word in ["map", "check", "metals", "CAUTION", "no substitute", "fuse", "Local codes"] {
+    for word in ["map", "check", "metals", "start", "CAUTION", "no substitute", "fuse", "Local codes"] {
         assert!(long.contains(word), "{word} is missing from\n{long}");
     }
     let version = text(&tool(here.path(), &["--version"]).stdout);
@@ -64,11 +65,17 @@ fn wrong_calls_and_wrong_input_end_with_two_and_leave_stdout_empty() {
     let broken = strip(here.path(), "[limits]\ndorp_mv = 3\n");
     std::fs::write(here.path().join("bytes.toml"), [0xff, 0xfe, 0x00]).expect("written");
     let broken = broken.to_string_lossy();
-    let calls: [(&[&str], &str); 8] = [
+    let calls: [(&[&str], &str); 14] = [
         (&[], "Usage"),
         (&["chekc"], "check"),
         (&["map", "--bracket-percent", "-1"], "bracket-percent"),
         (&["check"], "JOBS"),
+        (&["check", "--bracket-percent", "0", "absent.toml"], "bracket-percent"),
+        (&["start"], "DIR"),
+        (&["start", "new", "--cells", "potato"], "potato"),
+        (&["start", "new", "--pitch", "20"], "pitch of 20 mm"),
+        (&["start", "new", "--rows", "0"], "--rows"),
+        (&["start", "new", "--rows", "3", "--columns", "200"], "divide the pack"),
         (&["map", "absent.toml"], "absent.toml"),
         (&["map", "bytes.toml"], "bytes.toml"),
         (&["map", &broken], "drop_mv"),
@@ -82,6 +89,7 @@ fn wrong_calls_and_wrong_input_end_with_two_and_leave_stdout_empty() {
         assert!(!said.contains('\u{1b}'), "colour without a terminal: {said}");
     }
     assert!(!here.path().join("pinchbar-out").exists(), "a refused job leaves nothing behind");
+    assert!(!here.path().join("new").exists(), "a refused start leaves nothing behind");
 }
 
 #[test]
@@ -175,7 +183,8 @@ fn a_folder_that_cannot_be_written_is_told_before_the_work() {
         let output = tool(here.path(), &["map", "strip.toml", "--out", out]);
         assert_eq!((status(&output), text(&output.stdout).as_str()), (2, ""), "{out}");
         let said = text(&output.stderr);
-        assert!(said.starts_with(&format!("pinchbar: cannot write into {out}")), "{said}");
+        assert!(said.starts_with(&format!("pinchbar: cannot write into {out}: ")) && said.contains("remedy: "), "{said}");
+        assert!(out == "half" || said.contains("is a file, not a folder"), "{said}");
     }
     assert_eq!(names(&here.path().join("half")), ["report.md"]);
 }
@@ -270,7 +279,81 @@ fn metals_have_a_source_for_every_figure() {
     let here = folder();
     let shown = text(&tool(here.path(), &["metals"]).stdout);
     assert!(shown.contains("nickel-201") && shown.contains("copper-etp"), "{shown}");
+    assert!(shown.lines().all(|l| l.chars().count() <= 80), "{shown}");
+    let (table, sources) = shown.split_once("\nSources\n").expect("the sources below the table");
+    let last = sources.rsplit_once("  [").and_then(|(_, rest)| rest.split_once(']')).expect("a numbered source").0;
+    assert!(last.parse::<usize>().is_ok_and(|n| n > 10) && table.contains(&format!("[{last}]")), "{shown}");
     let value: serde_json::Value = serde_json::from_slice(&tool(here.path(), &["metals", "--json"]).stdout).expect("JSON");
     let rows = value.as_array().expect("a list");
     assert!(rows.len() > 20 && rows.iter().all(|r| r["source"].as_str().is_some_and(|s| !s.is_empty())));
+}
+
+#[test]
+fn a_started_plate_solves_at_once_with_all_its_cells() {
+    let calls: [(&[&str], usize); 5] = [
+        (&[], 10),
+        (&["--rows", "1", "--columns", "1", "--cells", "4680"], 1),
+        (&["--rows", "1", "--columns", "6", "--cells", "18650", "--arrange", "staggered"], 6),
+        (&["--rows", "6", "--columns", "1", "--cells", "26650", "--pitch", "27"], 6),
+        (&["--rows", "2", "--columns", "6", "--arrange", "staggered"], 12),
+    ];
+    for (more, cells) in calls {
+        let here = folder();
+        let arguments: Vec<&str> = ["start", "my pack/new"].iter().chain(more).copied().collect();
+        let output = tool(here.path(), &arguments);
+        let shown = text(&output.stdout);
+        assert_eq!((status(&output), text(&output.stderr).as_str()), (0, ""), "{more:?}");
+        assert!(shown.contains("written  my pack/new/plate.toml\n") && shown.lines().all(|l| l.chars().count() <= 80), "{shown}");
+        assert!(shown.ends_with("next     pinchbar map 'my pack/new/plate.toml'\n"), "{shown}");
+        assert_eq!(names(&here.path().join("my pack/new")), ["plate.outline", "plate.toml"]);
+
+        let output = tool(here.path(), &["map", "my pack/new/plate.toml", "--json"]);
+        let value: serde_json::Value = serde_json::from_slice(&output.stdout).expect("JSON");
+        assert_eq!((status(&output), text(&output.stderr).as_str()), (0, ""), "{more:?}: {}", text(&output.stdout));
+        assert_eq!(value["remarks"].as_array().map(Vec::len), Some(0), "{}", value["remarks"]);
+        let electrodes = value["electrodes"].as_array().expect("a list");
+        let current = |kind: &str| -> Vec<f64> {
+            electrodes.iter().filter(|e| e["kind"] == kind).map(|e| e["current_a"].as_f64().expect("a current")).collect()
+        };
+        let (into, out) = (current("cell"), current("terminal"));
+        assert_eq!((into.len(), out.len()), (cells, 1), "{more:?}");
+        assert!((into.iter().sum::<f64>() + out[0]).abs() < 1e-9 && into.iter().all(|c| *c > 0.0), "{into:?} {out:?}");
+    }
+}
+
+#[test]
+fn start_never_writes_over_a_file() {
+    let here = folder();
+    std::fs::create_dir(here.path().join("new")).expect("made");
+    std::fs::write(here.path().join("new/plate.outline"), "mine").expect("written");
+    std::fs::write(here.path().join("file"), "mine").expect("written");
+    for (folder, part) in [("new", "plate.outline is there already"), ("file", "it is a file, not a folder")] {
+        let output = tool(here.path(), &["start", folder]);
+        let said = text(&output.stderr);
+        assert_eq!((status(&output), text(&output.stdout).as_str()), (2, ""), "{said}");
+        assert!(said.starts_with("pinchbar: ") && said.contains(part) && said.contains("remedy: "), "{said}");
+    }
+    assert_eq!(names(&here.path().join("new")), ["plate.outline"]);
+    assert_eq!(std::fs::read_to_string(here.path().join("new/plate.outline")).expect("kept"), "mine");
+
+    let output = tool(here.path(), &["start", "json", "--json"]);
+    let value: serde_json::Value = serde_json::from_slice(&output.stdout).expect("JSON and nothing else");
+    assert_eq!(value["written"].as_array().map(Vec::len), Some(2));
+    assert_eq!(text(&tool(here.path(), &["start", "quiet", "--quiet"]).stdout), "");
+}
+
+#[test]
+fn completions_and_the_manual_are_had_without_installation() {
+    let here = folder();
+    for (shell, mark) in [("bash", "complete -F"), ("zsh", "#compdef pinchbar"), ("fish", "complete -c pinchbar")] {
+        let output = tool(here.path(), &["completions", shell]);
+        let shown = text(&output.stdout);
+        assert_eq!((status(&output), text(&output.stderr).as_str()), (0, ""), "{shell}");
+        assert!(shown.contains(mark) && shown.contains("bracket-percent") && shown.contains("staggered"), "{shown}");
+    }
+    let page = text(&tool(here.path(), &["manual"]).stdout);
+    assert!(page.contains(".TH pinchbar 1") && page.contains("EXIT STATUS"), "{page}");
+    for word in ["MAP", "CHECK", "METALS", "START", "CAUTION: LIVE BATTERY WORK", "no substitute", "Local codes"] {
+        assert!(page.contains(word), "{word} is missing from\n{page}");
+    }
 }

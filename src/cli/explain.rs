@@ -1,14 +1,15 @@
 //! Faults as text for a terminal: what is wrong, where, an excerpt, what was expected, one remedy.
 
 use crate::diagnostic::{Fault, Span};
+use crate::report::table::wrapped;
 use annotate_snippets::{Annotation, AnnotationKind, Group, Level, Renderer, Snippet};
 use std::fmt::Write;
 
 /// Most faults that are printed.
 const MOST: usize = 50;
 
-/// Most characters of a line that are shown.
-const WIDTH: usize = 110;
+/// Most characters of a line of the input that are shown: with its number and both cuts it fits 80 columns, so that the mark stands below its place.
+const WIDTH: usize = 66;
 
 /// All faults, at most fifty, each beginning with `pinchbar: `. It reads the same without colour.
 pub fn explain(faults: &[Fault], colour: bool) -> String {
@@ -37,7 +38,9 @@ fn explain_one(text: &mut String, fault: &Fault, colour: bool) {
     }
     for (word, part) in [("expected", &fault.expected), ("remedy", &fault.remedy)] {
         if let Some(part) = part {
-            let _ = writeln!(text, "  {word}: {}", printable(part));
+            for (i, line) in wrapped(part, 80 - 4 - word.len()).iter().enumerate() {
+                let _ = if i == 0 { writeln!(text, "  {word}: {line}") } else { writeln!(text, "    {line}") };
+            }
         }
     }
 }
@@ -122,10 +125,17 @@ mod tests {
     }
 
     #[test]
+    fn what_was_expected_is_wrapped() {
+        let long = Fault { expected: Some("one of: ".to_string() + &"diameter_mm, ".repeat(20)), ..fault("x = 1\n", 0, 1) };
+        let text = explain(&[long], false);
+        assert!(text.lines().all(|l| l.chars().count() <= 80) && text.matches("diameter_mm").count() == 20, "{text}");
+    }
+
+    #[test]
     fn long_lines_are_cut_and_any_span_is_survived() {
         let long = "x".repeat(200_000);
         let text = explain(&[fault(&long, 100_000, 199_000)], false);
-        assert!(text.lines().all(|l| l.chars().count() < 160), "{}", text.len());
+        assert!(text.lines().all(|l| l.chars().count() <= 80), "{}", text.len());
         for (start, end) in [(0, 0), (5, 2), (3, 900_000), (900_000, 900_001)] {
             assert!(explain(&[fault("é\u{7}ab\r\n", start, end)], false).starts_with("pinchbar: "));
             assert!(explain(&[fault("", start, end)], true).starts_with("pinchbar: "));

@@ -1,5 +1,6 @@
 //! Files in and out: texts read with a guard, results written whole or not at all; the only user of `tempfile`.
 
+use crate::diagnostic::Fault;
 use std::io::{self, Read, Write};
 use std::path::{Path, PathBuf};
 
@@ -79,6 +80,64 @@ impl OutFolder {
     }
 }
 
+/// Writes new files into a folder, which is made where it is missing: all of them or none, and never over a file that is there.
+///
+/// # Errors
+/// A fault that names the file or folder; `elsewhere` is the remedy.
+pub fn write_new(folder: &Path, files: &[(&str, String)], elsewhere: &str) -> Result<(), Fault> {
+    let taken = |path: &Path| Fault {
+        message: format!("{} is there already and is left as it is", path.display()),
+        span: None,
+        expected: None,
+        remedy: Some(format!("{elsewhere}, or move that file away")),
+        labels: Vec::new(),
+    };
+    // A link that leads nowhere is in the way as well.
+    if let Some(path) = files.iter().map(|(name, _)| folder.join(name)).find(|p| p.symlink_metadata().is_ok()) {
+        return Err(taken(&path));
+    }
+    let refused = |e: io::Error| unwritable(folder, &e, elsewhere);
+    std::fs::create_dir_all(folder).map_err(refused)?;
+    let mut written = Vec::new();
+    for (name, content) in files {
+        let mut file = tempfile::Builder::new().prefix(".pinchbar-").tempfile_in(folder).map_err(refused)?;
+        file.write_all(content.as_bytes()).and_then(|()| open_to_readers(file.as_file())).map_err(refused)?;
+        written.push((folder.join(name), file));
+    }
+    let mut placed: Vec<PathBuf> = Vec::new();
+    for (path, file) in written {
+        if let Err(e) = file.persist_noclobber(&path) {
+            // Ours so far: half a job would be worse than none.
+            placed.iter().for_each(|ours| drop(std::fs::remove_file(ours)));
+            return Err(if e.error.kind() == io::ErrorKind::AlreadyExists { taken(&path) } else { refused(e.error) });
+        }
+        placed.push(path);
+    }
+    Ok(())
+}
+
+/// Why nothing can be written into a folder, with a remedy.
+pub fn unwritable(folder: &Path, error: &io::Error, elsewhere: &str) -> Fault {
+    let stands = |path: &Path| path.exists() && !path.is_dir();
+    let why = match error.kind() {
+        io::ErrorKind::AlreadyExists | io::ErrorKind::NotADirectory => match folder.ancestors().find(|p| stands(p)) {
+            Some(file) if file != folder => format!("{} is a file, not a folder", file.display()),
+            _ => "it is a file, not a folder".into(),
+        },
+        io::ErrorKind::PermissionDenied => "you may not write there".into(),
+        io::ErrorKind::ReadOnlyFilesystem => "it is on a disk that is read-only".into(),
+        io::ErrorKind::StorageFull => "the disk is full".into(),
+        _ => error.to_string(),
+    };
+    Fault {
+        message: format!("cannot write into {}: {why}", folder.display()),
+        span: None,
+        expected: Some("a folder that can be written, or made".into()),
+        remedy: Some(elsewhere.into()),
+        labels: Vec::new(),
+    }
+}
+
 /// Temporary files are private; results are for colleagues too.
 fn open_to_readers(file: &std::fs::File) -> io::Result<()> {
     #[cfg(unix)]
@@ -116,6 +175,36 @@ mod tests {
         assert!(OutFolder::ready(&base.path().join("file/below"), &[]).is_err());
         std::fs::create_dir(base.path().join("x")).unwrap();
         assert_eq!(OutFolder::ready(base.path(), &["x"]).unwrap_err().kind(), io::ErrorKind::IsADirectory);
+    }
+
+    #[test]
+    fn new_files_are_written_all_or_none_and_never_over_old_ones() {
+        let base = tempfile::tempdir().unwrap();
+        let folder = base.path().join("a/b");
+        let files = [("x", "1".to_string()), ("y", "2".to_string())];
+        write_new(&folder, &files, "elsewhere").unwrap();
+        assert_eq!(std::fs::read_to_string(folder.join("y")).unwrap(), "2");
+        std::fs::remove_file(folder.join("x")).unwrap();
+        let fault = write_new(&folder, &[("x", "3".into()), ("y", "4".into())], "elsewhere").unwrap_err();
+        assert!(fault.message.contains("b/y is there already"), "{fault:?}");
+        assert_eq!(std::fs::read_dir(&folder).unwrap().count(), 1, "nothing new beside the old file");
+        assert_eq!(std::fs::read_to_string(folder.join("y")).unwrap(), "2");
+    }
+
+    #[test]
+    fn a_folder_that_cannot_be_written_is_told_in_words() {
+        let base = tempfile::tempdir().unwrap();
+        let file = base.path().join("file");
+        std::fs::write(&file, "").unwrap();
+        for (kind, path, part) in [
+            (io::ErrorKind::AlreadyExists, file.clone(), "file: it is a file, not a folder"),
+            (io::ErrorKind::NotADirectory, file.join("below"), "file is a file, not a folder"),
+            (io::ErrorKind::PermissionDenied, base.path().into(), "you may not write there"),
+            (io::ErrorKind::ReadOnlyFilesystem, base.path().into(), "read-only"),
+        ] {
+            let fault = unwritable(&path, &kind.into(), "name another");
+            assert!(fault.message.contains(part) && fault.remedy.as_deref() == Some("name another"), "{fault:?}");
+        }
     }
 
     #[test]

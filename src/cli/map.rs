@@ -1,9 +1,10 @@
 //! `pinchbar map`: read, solve, find, show.
 
-use super::{Ending, explain, files, late, terminal};
+use super::{Ending, explain, files, late, progress::Progress, terminal};
 use crate::diagnostic::{Fault, Remark};
 use crate::findings::{self, Findings, Verdict};
 use crate::problem::Problem;
+use crate::progress::Stage;
 use crate::reading::{self, Reading};
 use crate::report;
 use std::collections::BTreeMap;
@@ -36,48 +37,70 @@ pub struct Request<'a> {
     pub timings: bool,
 }
 
+/// Everything up to the writing.
+struct Mapped {
+    problem: Problem,
+    findings: Findings,
+    /// Where the results go, if anywhere.
+    folder: Option<files::OutFolder>,
+    /// The PNG, if it was drawn.
+    picture: Option<Vec<u8>>,
+}
+
+/// Why there is nothing to write.
+enum Stop {
+    /// The input is at fault.
+    Refused(Vec<Fault>),
+    /// The tool failed.
+    Failed(String),
+}
+
 /// Runs the command.
 ///
 /// # Errors
 /// When stdout or a result file cannot be written.
 pub fn run(request: &Request) -> io::Result<Ending> {
+    match mapped(request) {
+        Ok(mapped) => show(request, &mapped),
+        Err(Stop::Refused(faults)) => Ok(refused(&faults)),
+        Err(Stop::Failed(text)) => {
+            terminal::say(&text);
+            Ok(Ending::Failed)
+        }
+    }
+}
+
+/// Says nothing: the line of progress is gone before anything else is shown.
+fn mapped(request: &Request) -> Result<Mapped, Stop> {
+    let progress = Progress::start(request.quiet);
     let mut clock = Clock::start();
-    let reading = match read(request) {
-        Ok(reading) => reading,
-        Err(faults) => return Ok(refused(&faults)),
-    };
+    progress.show(Stage::Reading);
+    let Reading { mut problem, origins, remarks } = read(request).map_err(Stop::Refused)?;
     clock.lap("read");
     // Before the work: it would be lost in a folder that cannot be written.
-    let folder = match folder(request) {
-        Ok(folder) => folder,
-        Err(text) => {
-            terminal::say(&text);
-            return Ok(Ending::BadInput);
-        }
-    };
-    let Reading { mut problem, origins, remarks } = reading;
+    let folder = folder(request).map_err(|fault| Stop::Refused(vec![fault]))?;
     if let Some(percent) = request.bracket_percent {
         problem.accuracy.bracket = percent / 100.0;
     }
-    let found = findings::find(&problem);
-    let mut found = match found {
-        Ok(found) => found,
-        Err(faults) if faults.iter().any(late::is_ours) => {
-            faults.iter().for_each(|f| terminal::say(&f.to_string()));
-            return Ok(Ending::Failed);
-        }
-        Err(faults) => return Ok(refused(&faults.iter().map(|f| late::placed(f, &problem, &origins)).collect::<Vec<_>>())),
-    };
+    let found = findings::find_with(&problem, &|stage| progress.show(stage));
+    let mut found = found.map_err(|faults| match faults.iter().find(|f| late::is_ours(f)) {
+        Some(ours) => Stop::Failed(ours.to_string()),
+        None => Stop::Refused(faults.iter().map(|f| late::placed(f, &problem, &origins)).collect()),
+    })?;
     clock.lap("solve");
     found.findings.remarks.splice(0..0, remarks);
-    let picture = if folder.is_some() { report::figure::heat_map(&problem, &found) } else { Ok(Vec::new()) };
-    let picture = picture.map_err(|text| found.findings.remarks.push(Remark::new(format!("No picture: {text}.")))).ok();
+    progress.show(Stage::Drawing);
+    let picture = folder.as_ref().map(|_| report::figure::heat_map(&problem, &found)).transpose();
+    let picture = picture.unwrap_or_else(|text| {
+        found.findings.remarks.push(Remark::new(format!("No picture: {text}.")));
+        None
+    });
     clock.lap("draw");
     let mut findings = found.findings;
     if request.timings {
         findings.run.seconds = Some(clock.laps);
     }
-    show(request, &problem, &findings, folder, picture)
+    Ok(Mapped { problem, findings, folder, picture })
 }
 
 fn read(request: &Request) -> Result<Reading, Vec<Fault>> {
@@ -91,7 +114,7 @@ fn read(request: &Request) -> Result<Reading, Vec<Fault>> {
 }
 
 /// The folder for the results, ready; `None` where only JSON on stdout was asked for.
-fn folder(request: &Request) -> Result<Option<files::OutFolder>, String> {
+fn folder(request: &Request) -> Result<Option<files::OutFolder>, Fault> {
     let path = match (request.out, request.json) {
         (Some(out), _) => out.to_path_buf(),
         (None, true) => return Ok(None),
@@ -100,24 +123,19 @@ fn folder(request: &Request) -> Result<Option<files::OutFolder>, String> {
             Path::new("pinchbar-out").join(name)
         }
     };
-    files::OutFolder::ready(&path, &RESULTS).map(Some).map_err(|e| format!("cannot write into {}: {e}", path.display()))
+    files::OutFolder::ready(&path, &RESULTS).map(Some).map_err(|e| files::unwritable(&path, &e, "name another folder with `--out DIR`"))
 }
 
-fn show(
-    request: &Request,
-    problem: &Problem,
-    findings: &Findings,
-    folder: Option<files::OutFolder>,
-    picture: Option<Vec<u8>>,
-) -> io::Result<Ending> {
+fn show(request: &Request, mapped: &Mapped) -> io::Result<Ending> {
+    let Mapped { problem, findings, folder, picture } = mapped;
     let json = report::json::json(findings).map_err(io::Error::other)?;
-    if let Some(folder) = &folder {
+    if let Some(folder) = folder {
         let contents = [
-            picture,
+            picture.clone(),
             Some(report::csv::hotspots(findings).map_err(io::Error::other)?),
             Some(report::csv::welds(findings).map_err(io::Error::other)?),
             Some(json.clone().into_bytes()),
-            Some(report::markdown::report(problem, findings).into_bytes()),
+            Some(report::markdown::report(problem, findings, picture.is_some()).into_bytes()),
         ];
         folder.replace(&RESULTS.into_iter().zip(contents).collect::<Vec<_>>())?;
     }
@@ -126,7 +144,7 @@ fn show(
     } else if !request.quiet {
         terminal::print(&report::table::summary(findings))?;
     }
-    if let (Some(folder), false) = (&folder, request.quiet) {
+    if let (Some(folder), false) = (folder, request.quiet) {
         terminal::say(&format!("picture, tables and report are in {}", folder.path().display()));
     }
     if !findings.run.reached {

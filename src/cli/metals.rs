@@ -3,6 +3,7 @@
 use super::{Ending, terminal};
 use crate::problem::material::{Evidence, METALS, TabledResistivity};
 use crate::report;
+use crate::report::table::wrapped;
 use serde::Serialize;
 use std::io;
 
@@ -53,24 +54,40 @@ fn rows() -> Vec<Row> {
     rows
 }
 
+/// The table within 80 columns; sources are numbered and stand below it.
 fn table() -> String {
-    let mut text = String::from(
-        "Metals by the name used in a sheet. Lots differ by some per cent, commercial nickel and plated steel by more: measure yours.\n",
-    );
+    let head =
+        "Metals by the name used in a sheet. Lots differ by some per cent, commercial nickel and plated steel by more: measure yours.";
+    let mut text = String::new();
+    write(&mut text, "", head);
+    let mut sources: Vec<&str> = Vec::new();
     let mut last = "";
     for row in rows() {
         if row.metal != last {
             let description = METALS.iter().find(|m| m.name == row.metal).map_or("", |m| m.description);
-            text += &format!("\n{}: {description}\n", row.metal);
+            text.push('\n');
+            write(&mut text, "", &format!("{}: {description}", row.metal));
             last = row.metal;
         }
-        text += &format!(
-            "  {:32} {:>10}  {} ({})\n",
-            row.figure,
-            format!("{:.4}", row.value).trim_end_matches('0').trim_end_matches('.'),
-            row.evidence,
-            row.source
-        );
+        let number = sources.iter().position(|s| *s == row.source).unwrap_or_else(|| {
+            sources.push(row.source);
+            sources.len() - 1
+        });
+        let value = format!("{:.4}", row.value);
+        let value = value.trim_end_matches('0').trim_end_matches('.');
+        text += &format!("  {:30} {value:>8}  {} [{}]\n", row.figure, row.evidence, number + 1);
+    }
+    text += "\nSources\n";
+    for (i, source) in sources.iter().enumerate() {
+        write(&mut text, &format!("  {:>4} ", format!("[{}]", i + 1)), source);
     }
     text
+}
+
+/// Words in lines of at most 80 characters, the first after a mark, the others below each other.
+fn write(text: &mut String, mark: &str, words: &str) {
+    for (i, line) in wrapped(words, 80 - mark.len()).into_iter().enumerate() {
+        let mark = if i == 0 { mark.to_string() } else { " ".repeat(mark.len()) };
+        *text += &format!("{mark}{line}\n");
+    }
 }

@@ -7,9 +7,12 @@ pub mod files;
 pub mod late;
 pub mod map;
 pub mod metals;
+pub mod progress;
+pub mod start;
 pub mod terminal;
 
-use args::{Command, Common};
+use crate::starting::Order;
+use args::{Arrangement, Command, Common};
 use std::ffi::OsString;
 use std::panic::AssertUnwindSafe;
 use std::process::ExitCode;
@@ -52,9 +55,12 @@ fn dispatched(arguments: impl Iterator<Item = OsString>) -> ExitCode {
         Err((text, false)) => return finish(terminal::print(&text).map(|()| Ending::Done)),
     };
     let common = match &line.command {
-        Command::Map { common, .. } | Command::Check { common, .. } | Command::Metals { common } => common,
+        Command::Map { common, .. } | Command::Check { common, .. } | Command::Metals { common } | Command::Start { common, .. } => {
+            Some(common)
+        }
+        Command::Completions { .. } | Command::Manual => None,
     };
-    if let Err(text) = set_threads(common) {
+    if let Some(Err(text)) = common.map(set_threads) {
         terminal::say(&text);
         return Ending::Failed.into();
     }
@@ -67,8 +73,15 @@ fn dispatched(arguments: impl Iterator<Item = OsString>) -> ExitCode {
             bracket_percent: *bracket_percent,
             timings: *timings,
         }),
-        Command::Check { jobs, common } => check::run(jobs, common.json, common.quiet),
+        Command::Check { jobs, common, .. } => check::run(jobs, common.json, common.quiet),
         Command::Metals { common } => metals::run(common.json),
+        Command::Start { folder, cells, rows, columns, pitch, arrange, common } => {
+            let staggered = *arrange == Arrangement::Staggered;
+            let order = Order { cells: cells.clone(), rows: *rows, columns: *columns, pitch_mm: *pitch, staggered };
+            start::run(folder, &order, common.json, common.quiet)
+        }
+        Command::Completions { shell } => terminal::print_bytes(&args::completions(*shell)).map(|()| Ending::Done),
+        Command::Manual => args::manual().and_then(|page| terminal::print_bytes(&page)).map(|()| Ending::Done),
     })
 }
 

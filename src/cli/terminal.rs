@@ -7,8 +7,16 @@ use std::io::{self, IsTerminal, Write};
 /// # Errors
 /// Anything else that stdout refuses, such as a full disk.
 pub fn print(text: &str) -> io::Result<()> {
+    print_bytes(text.as_bytes())
+}
+
+/// As [`print()`].
+///
+/// # Errors
+/// As [`print()`].
+pub fn print_bytes(bytes: &[u8]) -> io::Result<()> {
     let mut out = io::stdout().lock();
-    match out.write_all(text.as_bytes()).and_then(|()| out.flush()) {
+    match out.write_all(bytes).and_then(|()| out.flush()) {
         Err(e) if e.kind() == io::ErrorKind::BrokenPipe => Ok(()),
         other => other,
     }

@@ -12,6 +12,7 @@ use crate::physics::plan::Mark;
 use crate::physics::solution::Passed;
 use crate::physics::{self, Fault, Solution};
 use crate::problem::{Crossing, Electrode, ElectrodeKind, Footprint, Interface, Problem};
+use crate::progress::{Listener, Stage};
 use rayon::prelude::*;
 
 /// Times that the mesh is refined under the hotspots: the first places may move a little when they are resolved.
@@ -35,9 +36,18 @@ pub struct Found {
 /// # Errors
 /// As [`crate::physics::run`]; a crossing that runs inside a held patch.
 pub fn find(problem: &Problem) -> Result<Found, Vec<Fault>> {
-    let started = physics::Started::new(problem)?;
+    find_with(problem, &|_| {})
+}
+
+/// As [`find()`], telling a listener where the work is.
+///
+/// # Errors
+/// As [`find()`].
+pub fn find_with(problem: &Problem, listener: &Listener) -> Result<Found, Vec<Fault>> {
+    let started = physics::Started::new(problem, listener)?;
     let expected = survey(problem, &started.first, &DensityField::new(problem, &started.first)).unresolved;
     let mut solution = started.finished(&expected)?;
+    listener(Stage::Hotspots);
     let mut density = DensityField::new(problem, &solution);
     let mut survey = survey(problem, &solution, &density);
     for _ in 0..SHARPENINGS {
@@ -252,6 +262,31 @@ fn middle(footprint: &Footprint) -> Point {
                 left -= step;
             }
             points.first().copied().unwrap_or_default()
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::trial::{bulged, line, problem, sheet, terminals};
+    use super::*;
+    use std::sync::Mutex;
+
+    #[test]
+    fn a_listener_hears_every_round_in_order_and_then_the_hotspots() {
+        let bend = bulged(&[(0.0, 0.0, 0.0), (14.0, 0.0, 0.0), (14.0, 7.0, 0.0), (7.0, 7.0, 0.0), (7.0, 14.0, 0.0), (0.0, 14.0, 0.0)]);
+        let ends = terminals(line(&[(14.0, 0.0), (14.0, 7.0)]), line(&[(7.0, 14.0), (0.0, 14.0)]), 0, 1.0);
+        let heard = Mutex::new(Vec::new());
+        let found = find_with(&problem(vec![sheet("a", vec![bend], 1.0)], ends, 1e-4, 1.0), &|stage| heard.lock().unwrap().push(stage));
+        let rounds = found.unwrap().findings.run.rounds;
+        let heard = heard.into_inner().unwrap();
+        assert_eq!(heard.last(), Some(&Stage::Hotspots));
+        assert!(rounds > 1 && heard.len() > 2, "{heard:?}");
+        let mut before = None;
+        for (k, stage) in heard[..heard.len() - 1].iter().enumerate() {
+            let Stage::Round { number, triangles, gap } = stage else { panic!("{heard:?}") };
+            assert!(*number == k + 1 && gap.is_some() == (k > 0) && before < Some(*triangles), "{heard:?}");
+            before = Some(*triangles);
         }
     }
 }

@@ -13,7 +13,7 @@ pub mod summit;
 mod trial;
 pub mod verdict;
 
-pub use find::{Found, find};
+pub use find::{Found, find, find_with};
 
 use crate::diagnostic::Remark;
 use serde::Serialize;

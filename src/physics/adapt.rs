@@ -12,6 +12,7 @@ use crate::geometry::Point;
 use crate::index::{ElectrodeId, LayerId};
 use crate::mesh::{Mesh, bisected, triangulated};
 use crate::problem::Problem;
+use crate::progress::{Listener, Stage};
 
 /// Rounds after which the refinement gives up: each adds triangles, so the vertex limit comes first in practice.
 const MOST_ROUNDS: usize = 200;
@@ -23,6 +24,7 @@ pub struct Rounds<'a> {
     cells: Vec<CellPlan>,
     lines: Vec<LinePlan>,
     record: RunRecord,
+    listener: &'a Listener<'a>,
     /// Whether the voltages' intervals are so much wider than the loss's that every round has to look at them.
     voltages_lead: bool,
 }
@@ -59,7 +61,7 @@ impl<'a> Started<'a> {
     /// # Errors
     /// Faults of the statement that only the mesh can show (metal that hangs on nothing, currents that do not balance on a piece, electrodes that
     /// meet), or a numerical failure.
-    pub fn new(problem: &'a Problem) -> Result<Self, Vec<Fault>> {
+    pub fn new(problem: &'a Problem, listener: &'a Listener<'a>) -> Result<Self, Vec<Fault>> {
         let plan = Plan::new(problem)?;
         let drawing = plan.drawing()?;
         let (mesh, quality) =
@@ -67,7 +69,7 @@ impl<'a> Started<'a> {
         let cells = cells(&plan, &mesh)?;
         let lines = plan.line_plans();
         let record = RunRecord { moves: drawing.moves, angles_reached: quality.angles_reached, ..RunRecord::default() };
-        let mut rounds = Rounds { problem, plan, cells, lines, record, voltages_lead: false };
+        let mut rounds = Rounds { problem, plan, cells, lines, record, listener, voltages_lead: false };
         match rounds.round(mesh)? {
             Outcome { solution: Some(first), wanted, .. } => Ok(Self { rounds, first, wanted }),
             _ => Err(without_answer()),
@@ -112,6 +114,8 @@ impl Rounds<'_> {
     /// One round on a mesh.
     fn round(&mut self, mesh: Mesh) -> Result<Outcome, Vec<Fault>> {
         let (problem, plan) = (self.problem, &self.plan);
+        let gap = self.record.rounds.last().map(|r| r.gap);
+        (self.listener)(Stage::Round { number: self.record.rounds.len() + 1, triangles: mesh.triangles.len(), gap });
         let complex = Complex::new(&mesh, &self.cells, &self.lines, problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
         let is_first = self.record.rounds.is_empty();
         if is_first {

@@ -5,15 +5,17 @@ use crate::findings::{Enclosure, Findings};
 use crate::problem::{Drive, Electrode, ElectrodeKind, Footprint, Interface, Problem};
 use crate::quantity::three;
 
-/// The report.
-pub fn report(problem: &Problem, findings: &Findings) -> String {
+/// The report, with the picture where there is one.
+pub fn report(problem: &Problem, findings: &Findings, picture: bool) -> String {
     let mut out = Page::default();
     out.line(format!("# {}", plain(&findings.title)));
     out.line(format!("> {CAUTION}"));
     for caution in further_cautions(problem, findings) {
         out.line(format!("> {caution}"));
     }
-    out.line("![Where current crowds](heatmap.png)");
+    if picture {
+        out.line("![Where current crowds](heatmap.png)");
+    }
     out.line(in_short(problem));
     headline(&mut out, findings);
     crowding(&mut out, findings);
@@ -304,6 +306,18 @@ fn joint(ohm: f64) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn the_picture_is_shown_only_where_there_is_one() {
+        let sheet = "[[layer]]\nname = \"a\"\nthickness_mm = 1\nresistivity_uohm_cm = 2\npoints_mm = [[0, 0], [9, 0], [9, 5], [0, 5]]\n\
+                     [[terminal]]\nname = \"in\"\nlayer = \"a\"\nline_mm = [[0, 0], [0, 5]]\ncurrent_a = 1\n\
+                     [[terminal]]\nname = \"out\"\nlayer = \"a\"\nline_mm = [[9, 0], [9, 5]]\n";
+        let reading = crate::reading::read(std::path::Path::new("job.toml"), &|_| Ok(sheet.into())).unwrap();
+        let found = crate::findings::find(&reading.problem).unwrap();
+        let [with, without] = [true, false].map(|picture| report(&reading.problem, &found.findings, picture));
+        assert!(with.contains("(heatmap.png)") && !without.contains("heatmap.png"));
+        assert_eq!(with.len() - without.len(), "![Where current crowds](heatmap.png)\n\n".len());
+    }
 
     #[test]
     fn cells_of_a_table_stay_in_their_row() {

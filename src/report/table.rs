@@ -128,18 +128,22 @@ fn clipped(name: &str, width: usize) -> String {
     name.chars().take(width.saturating_sub(1)).chain(['~']).collect()
 }
 
-/// Words in lines of at most `width` characters.
+/// Words in lines of at most `width` characters; a longer word is cut.
 pub fn wrapped(text: &str, width: usize) -> Vec<String> {
     let mut lines = vec![String::new()];
     for word in words::one_line(text).split_whitespace() {
-        let last = lines.len() - 1;
-        if !lines[last].is_empty() && lines[last].chars().count() + 1 + word.chars().count() > width {
-            lines.push(word.into());
-        } else {
-            if !lines[last].is_empty() {
-                lines[last].push(' ');
+        let letters: Vec<char> = word.chars().collect();
+        for part in letters.chunks(width.max(1)) {
+            let last = lines.len() - 1;
+            let used = lines[last].chars().count();
+            if used > 0 && used + 1 + part.len() > width {
+                lines.push(part.iter().collect());
+            } else {
+                if used > 0 {
+                    lines[last].push(' ');
+                }
+                lines[last].extend(part);
             }
-            lines[last].push_str(word);
         }
     }
     lines
@@ -153,5 +157,7 @@ mod tests {
     fn long_names_and_remarks_stay_within_their_columns() {
         assert_eq!(clipped("Überlangername-123", 8), "Überlan~");
         assert!(wrapped(&"word ".repeat(60), 74).iter().all(|l| l.chars().count() <= 74));
+        let cut = wrapped(&format!("a name {} of one word", "x".repeat(200)), 74);
+        assert!(cut.len() == 4 && cut.iter().all(|l| l.chars().count() <= 74), "{cut:?}");
     }
 }
