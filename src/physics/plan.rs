@@ -2,7 +2,7 @@
 
 use super::Fault;
 use crate::fem::{CellPlan, End, ExchangePlan, Hold, LeafPlan, LinePlan};
-use crate::geometry::{Point, Ring};
+use crate::geometry::{Point, ring};
 use crate::index::{ContactId, ElectrodeId, JoinId, LayerId};
 use crate::mesh::{Arrangement, arrange};
 use crate::problem::{Footprint, Interface, Problem};
@@ -93,7 +93,7 @@ impl<'a> Plan<'a> {
         }
         for (p, probe) in problem.probes.iter().enumerate() {
             for (side, tip) in probe.tips.iter().enumerate() {
-                plan.area(Area::Tip(p as u32, side as u32), vec![Ring::circle(tip.1, probe.tip_mm).flattened()]);
+                plan.area(Area::Tip(p as u32, side as u32), vec![ring::tip(tip.1, probe.tip_mm)]);
             }
         }
         plan.marks.sort_unstable();

@@ -151,7 +151,7 @@ mod tests {
     #[test]
     fn every_plate_is_a_valid_job_without_a_remark() {
         for cells in ["5", "18650", "21700", "4680", "18.35", "120"] {
-            for (rows, columns) in [(1, 1), (1, 7), (7, 1), (2, 6), (3, 3), (20, 20)] {
+            for (rows, columns) in [(1, 1), (1, 7), (7, 1), (2, 6), (3, 3), (15, 15)] {
                 for staggered in [false, true] {
                     let order = order(cells, rows, columns, staggered);
                     let (sheet, Reading { problem, remarks, .. }) = read(&order);

@@ -2,13 +2,13 @@
 
 use super::layer::Stack;
 use super::names::Names;
-use super::place::place;
+use super::place::{disc, place};
 use super::plausible;
 use super::shape::{Drawn, Form, drawn_places, place_key, places_by, rings_of};
 use super::weld_list::read_welds;
 use crate::diagnostic::Span;
 use crate::geometry::overlap::common_area;
-use crate::geometry::{BoundingBox, Point, Region, Ring};
+use crate::geometry::{BoundingBox, Point, Region};
 use crate::index::LayerId;
 use crate::problem::{Contact, Interface, Join};
 use crate::reading::fields::{Fields, Notes, Placed, not_yet};
@@ -32,7 +32,7 @@ fn read_contact(block: &Value, stack: &Stack, names: &mut Names, files: &Files, 
         names.add(Some(name.clone()), fields.span, notes);
     }
     let between = read_between(&fields, stack, notes);
-    let area = read_area(&fields, files, notes);
+    let area = read_area(&fields, stack, files, notes);
     let interface = match fields.value("contact_mohm_mm2") {
         Some(Value { content: Content::Block(_), span }) => {
             not_yet("a band of contact values", span, notes);
@@ -63,7 +63,7 @@ fn has_state(block: &Value) -> bool {
 }
 
 /// `Some(None)`: wherever both are.
-fn read_area(fields: &Fields, files: &Files, notes: &Notes) -> Option<Option<Region>> {
+fn read_area(fields: &Fields, stack: &Stack, files: &Files, notes: &Notes) -> Option<Option<Region>> {
     let given: Vec<&str> = ["over", "points_mm", "outline", "disc_mm"].into_iter().filter(|k| fields.has(k)).collect();
     if let [_, second, ..] = given.as_slice() {
         let expected = "one of `over`, `points_mm`, `outline`, `disc_mm`";
@@ -82,7 +82,7 @@ fn read_area(fields: &Fields, files: &Files, notes: &Notes) -> Option<Option<Reg
             Some(None)
         }
         Some(&"disc_mm") => match drawn_places(fields, &["disc_mm"])?.into_iter().next()?.form {
-            Form::Disc(centre, diameter) => Some(Some(Region::from_rings([&Ring::circle(centre, diameter)]))),
+            Form::Disc(centre, diameter) => Some(Some(disc(centre, diameter, stack))),
             _ => None,
         },
         Some(_) => {

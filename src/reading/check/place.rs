@@ -3,6 +3,7 @@
 use super::layer::Stack;
 use super::shape::{Drawn, Form};
 use crate::geometry::predicate::{meeting_point, nearest_on_segment, segments_meet};
+use crate::geometry::ring;
 use crate::geometry::{BoundingBox, IndexedRegion, Point, Region, RimPoint, Ring};
 use crate::index::LayerId;
 use crate::problem::Footprint;
@@ -25,12 +26,19 @@ pub fn place(drawn: &[Drawn], layers: &[LayerId], stack: &Stack, who: &str, note
     for spot in drawn {
         let footprint = match &spot.form {
             Form::Disc(centre, diameter) => {
-                area(spot, Ring::circle(*centre, *diameter), Some((*centre, *diameter)), layers, stack, &mut partly, notes)
+                let area_mm2 = 0.25 * std::f64::consts::PI * diameter * diameter;
+                let region = disc(*centre, *diameter, stack);
+                area(spot, region, area_mm2, Some((*centre, *diameter)), layers, stack, &mut partly, notes)
             }
             Form::Seam(a, b, width) => {
-                area(spot, Ring::seam(*a, *b, *width), Some((a.midpoint(*b), *width)), layers, stack, &mut partly, notes)
+                let ring = Ring::seam(*a, *b, *width);
+                let (region, area_mm2) = (Region::from_rings([&ring]), ring.signed_area());
+                area(spot, region, area_mm2, Some((a.midpoint(*b), *width)), layers, stack, &mut partly, notes)
             }
-            Form::Area(ring) => area(spot, ring.clone(), None, layers, stack, &mut partly, notes),
+            Form::Area(ring) => {
+                let (region, area_mm2) = (Region::from_rings([ring]), ring.signed_area().abs());
+                area(spot, region, area_mm2, None, layers, stack, &mut partly, notes)
+            }
             Form::Line(points) => on_all(layers, stack, |metal, name| line(spot, points, metal, name, &mut moved, notes)),
             Form::Edge(points) => on_all(layers, stack, |metal, name| edge(spot, points, metal, name, &mut moved, notes)),
         };
@@ -65,17 +73,26 @@ fn on_all(layers: &[LayerId], stack: &Stack, mut put: impl FnMut(&IndexedRegion,
     points.map(|points| Footprint::Line { points })
 }
 
+/// The polygon of a disc: a plain one where it lies clear of every outline, else the one that a drawn circle gets, which an outline's arc may share.
+pub fn disc(centre: Point, diameter: f64, stack: &Stack) -> Region {
+    let clear = |metal: &IndexedRegion| metal.rim_distance(centre) > 0.5 * diameter + ONTO_OUTLINE;
+    if stack.metal.iter().flatten().all(clear) {
+        Region { loops: vec![ring::spot(centre, diameter)] }
+    } else {
+        Region::from_rings([&Ring::circle(centre, diameter)])
+    }
+}
+
 fn area(
     spot: &Drawn,
-    ring: Ring,
+    region: Region,
+    area_mm2: f64,
     round: Option<(Point, f64)>,
     layers: &[LayerId],
     stack: &Stack,
     partly: &mut Vec<f64>,
     notes: &Notes,
 ) -> Option<Footprint> {
-    let region = Region::from_rings([&ring]);
-    let area_mm2 = ring.signed_area().abs();
     let centre = round.map_or_else(|| centroid(&region), |r| r.0);
     let mut least: f64 = 1.0;
     for &layer in layers {
