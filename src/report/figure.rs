@@ -1,12 +1,11 @@
 //! From a solution and its findings to the sheet that the picture draws.
 
-use super::words::{CAUTION, interval};
+use super::words::{self, CAUTION, interval};
 use crate::findings::metal::LayerMetal;
 use crate::findings::{Found, HotspotKind};
 use crate::geometry::Point;
 use crate::mesh::NONE;
 use crate::picture::{self, HotspotMark, Panel, Sheet, SpotMark};
-use crate::problem::material::OWN_FIGURES;
 use crate::problem::{Drive, Electrode, ElectrodeKind, Footprint, Problem};
 use crate::quantity::three;
 
@@ -83,11 +82,7 @@ fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
     let (points, triangles, potential_mv) = nodes(found, metal);
     let mut panel = Panel {
         name: layer.name.clone(),
-        details: if layer.material.name == OWN_FIGURES {
-            format!("{} µΩ cm, {} mm", three(layer.resistivity * 1e5), layer.thickness_mm)
-        } else {
-            format!("{}, {} mm", layer.material.name, layer.thickness_mm)
-        },
+        details: format!("{}, {} mm", words::metal(layer), layer.thickness_mm),
         loops: layer.region.loops.clone(),
         points,
         triangles,
