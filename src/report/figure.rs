@@ -1,13 +1,14 @@
 //! From a solution and its findings to the sheet that the picture draws.
 
 use super::words::{self, CAUTION, interval};
-use crate::findings::metal::LayerMetal;
+use crate::findings::metal::{LayerMetal, MetalTriangle};
 use crate::findings::{Found, HotspotKind};
 use crate::geometry::Point;
 use crate::mesh::NONE;
 use crate::picture::{self, HotspotMark, Panel, Sheet, SpotMark};
 use crate::problem::{Drive, Electrode, ElectrodeKind, Footprint, Problem};
 use crate::quantity::three;
+use std::collections::HashMap;
 
 /// Spots whose amperes are worth writing: beyond this many they would only be noise.
 const MOST_LABELS: usize = 80;
@@ -59,12 +60,7 @@ fn refer_to_lowest(panels: &mut [Panel]) {
 }
 
 fn subtitle(problem: &Problem, found: &Found) -> String {
-    // What enters one connected piece; both bars of a group carry the same current.
-    let mut inward = vec![0.0; found.solution.complex.pieces];
-    for (e, &piece) in found.findings.electrodes.iter().zip(&found.solution.complex.piece_of) {
-        inward[piece as usize] += e.current_a.max(0.0);
-    }
-    let inward = inward.into_iter().fold(0.0, f64::max);
+    let inward = through(problem, found);
     let count = |kind: ElectrodeKind| problem.electrodes.iter().filter(|e| e.kind == kind && !matches!(e.drive, Drive::Return(_))).count();
     let plural = |n: usize, one: &str| if n == 1 { format!("1 {one}") } else { format!("{n} {one}s") };
     let mut parts = Vec::new();
@@ -74,6 +70,29 @@ fn subtitle(problem: &Problem, found: &Found) -> String {
         }
     }
     format!("{} A through {} · metal at {} °C", three(inward), parts.join(" and "), problem.temperature_c)
+}
+
+/// What flows through the whole job, A: what enters from outside, pieces in series through their cells counted once.
+fn through(problem: &Problem, found: &Found) -> f64 {
+    let complex = &found.solution.complex;
+    let mut inward = vec![0.0; complex.pieces];
+    for (e, &piece) in found.findings.electrodes.iter().zip(&complex.piece_of) {
+        inward[piece as usize] += e.current_a.max(0.0);
+    }
+    let mut set: Vec<usize> = (0..complex.pieces).collect();
+    let ends = || problem.electrodes.iter().zip(&complex.piece_of);
+    for (positive, &from) in ends() {
+        for (negative, &to) in ends() {
+            if let (Drive::Source(s), Drive::Return(r)) = (positive.drive, negative.drive)
+                && s == r
+            {
+                let (keep, drop) = (set[from as usize].min(set[to as usize]), set[from as usize].max(set[to as usize]));
+                set.iter_mut().filter(|s| **s == drop).for_each(|s| *s = keep);
+            }
+        }
+    }
+    let of = |number: usize| set.iter().zip(&inward).filter(|(s, _)| **s == number).map(|(_, a)| *a).fold(0.0, f64::max);
+    (0..complex.pieces).map(of).sum()
 }
 
 fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
@@ -89,9 +108,10 @@ fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
         potential_mv,
         values: metal.triangles.iter().map(|t| t.magnitude).collect(),
         flow: metal.triangles.iter().map(|t| [t.density.x, t.density.y]).collect(),
+        regions: regions(found, metal),
         ..Panel::default()
     };
-    let spots: usize = problem.electrodes.iter().map(|e| e.spots.len()).sum();
+    let spots: usize = problem.electrodes.iter().map(|e| e.spots.len()).chain(problem.joins.iter().map(|j| j.spots.len())).sum();
     for (electrode, finding) in
         problem.electrodes.iter().zip(&found.findings.electrodes).filter(|(e, _)| e.through.iter().any(|t| t.index() == l))
     {
@@ -109,11 +129,32 @@ fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
         }
         panel.names.push((name_place(electrode), electrode.name.clone()));
     }
-    for join in problem.joins.iter().filter(|j| j.between.iter().any(|b| b.index() == l)) {
-        for spot in &join.spots {
-            if let Footprint::Area { region, .. } = spot {
-                panel.spots.extend(region.loops.iter().map(|outline| SpotMark { outline: outline.clone(), label: None }));
+    let mut findings = found.findings.joins.iter();
+    for join in &problem.joins {
+        for (spot, finding) in join.spots.iter().zip(findings.by_ref()) {
+            if let Footprint::Area { region, .. } = spot
+                && join.between.iter().any(|b| b.index() == l)
+            {
+                let label = finding.current_a.filter(|_| spots <= MOST_LABELS).map(|a| format!("{} A", three(a.abs())));
+                panel.spots.extend(region.loops.iter().map(|outline| SpotMark { outline: outline.clone(), label: label.clone() }));
             }
+        }
+    }
+    for contact in problem.contacts.iter().filter(|c| c.between.iter().any(|b| b.index() == l)) {
+        panel.contacts.extend(contact.area.iter().flat_map(|area| area.loops.iter().cloned()));
+    }
+    for probe in &problem.probes {
+        for (&(layer, at), sign) in probe.tips.iter().zip(["+", "−"]) {
+            if layer.index() == l {
+                panel.tips.push((at, format!("{} {sign}", words::one_line(&probe.name))));
+            }
+        }
+    }
+    for (crossing, finding) in problem.crossings.iter().zip(&found.findings.crossings) {
+        let own = finding.current_a.get(&layer.name).copied().unwrap_or(0.0);
+        let most = finding.current_a.values().fold(0.0, |m: f64, a| m.max(a.abs()));
+        if own.abs() > 1e-9 * most {
+            panel.crossings.push(([crossing.from, crossing.to], format!("{} {} A", words::one_line(&crossing.name), three(own))));
         }
     }
     for (row, place) in found.findings.hotspots.iter().zip(&found.places).filter(|(_, p)| p.layer.index() == l) {
@@ -146,6 +187,20 @@ fn nodes(found: &Found, metal: &LayerMetal) -> (Vec<Point>, Vec<[u32; 3]>, Vec<f
         }));
     }
     (points, triangles, potential)
+}
+
+/// Where the current density jumps: from bare to bonded metal and at held patches.
+fn regions(found: &Found, metal: &LayerMetal) -> Vec<u32> {
+    let mut kinds = HashMap::new();
+    let leaf = |t: &MetalTriangle| found.solution.complex.elements[t.element as usize].leaf;
+    metal
+        .triangles
+        .iter()
+        .map(|t| {
+            let (leaf, next) = (leaf(t), kinds.len() as u32);
+            *kinds.entry((leaf.layers, leaf.held.map(|h| h.pole))).or_insert(next)
+        })
+        .collect()
 }
 
 /// Where an electrode's name belongs: the middle of its spots.
