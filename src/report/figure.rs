@@ -122,7 +122,7 @@ fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
                     panel.patches.extend(region.loops.iter().cloned())
                 }
                 Footprint::Area { region, .. } => {
-                    let label = (spots <= MOST_LABELS).then(|| format!("{} A", three(out.current_a)));
+                    let label = (spots <= MOST_LABELS).then(|| amperes(out.current_a));
                     panel.spots.extend(region.loops.iter().map(|outline| SpotMark { outline: outline.clone(), label: label.clone() }));
                 }
             }
@@ -135,7 +135,7 @@ fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
             if let Footprint::Area { region, .. } = spot
                 && join.between.iter().any(|b| b.index() == l)
             {
-                let label = finding.current_a.filter(|_| spots <= MOST_LABELS).map(|a| format!("{} A", three(a.abs())));
+                let label = finding.current_a.filter(|_| spots <= MOST_LABELS).map(|a| amperes(a.abs()));
                 panel.spots.extend(region.loops.iter().map(|outline| SpotMark { outline: outline.clone(), label: label.clone() }));
             }
         }
@@ -154,7 +154,7 @@ fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
         let own = finding.current_a.get(&layer.name).copied().unwrap_or(0.0);
         let most = finding.current_a.values().fold(0.0, |m: f64, a| m.max(a.abs()));
         if own.abs() > 1e-9 * most {
-            panel.crossings.push(([crossing.from, crossing.to], format!("{} {} A", words::one_line(&crossing.name), three(own))));
+            panel.crossings.push(([crossing.from, crossing.to], format!("{} {}", words::one_line(&crossing.name), amperes(own))));
         }
     }
     for (row, place) in found.findings.hotspots.iter().zip(&found.places).filter(|(_, p)| p.layer.index() == l) {
@@ -187,6 +187,11 @@ fn nodes(found: &Found, metal: &LayerMetal) -> (Vec<Point>, Vec<[u32; 3]>, Vec<f
         }));
     }
     (points, triangles, potential)
+}
+
+/// A current with the minus sign of print.
+fn amperes(value: f64) -> String {
+    format!("{} A", three(value).replacen('-', "−", 1))
 }
 
 /// Where the current density jumps: from bare to bonded metal and at held patches.
