@@ -142,9 +142,10 @@ impl Notes<'_> {
         let names = self.name_places();
         let mut numbers: Vec<String> = Vec::new();
         for view in self.views {
+            let spots: Vec<Spot> = view.panel.spots.iter().filter_map(|s| Some(around(&view.frame.all(&s.outline))?.centre())).collect();
             for mark in &view.panel.hotspots {
                 let at = view.frame.at(mark.at);
-                if let Some(place) = self.balloon_place(drawing, view, at, &leaders, &names) {
+                if let Some(place) = self.balloon_place(drawing, &spots, at, &leaders, &names) {
                     let number = mark.number.to_string();
                     drawing.claim(balloon(place), &number);
                     leaders.push([place, at]);
@@ -176,8 +177,7 @@ impl Notes<'_> {
     }
 
     /// The place with the least cost: near, off the metal, its leader short over metal and across nothing.
-    fn balloon_place(&self, drawing: &Drawing, view: &View<'_>, at: Spot, leaders: &[[Spot; 2]], names: &[Area]) -> Option<Spot> {
-        let spots: Vec<Spot> = view.panel.spots.iter().filter_map(|s| Some(around(&view.frame.all(&s.outline))?.centre())).collect();
+    fn balloon_place(&self, drawing: &Drawing, spots: &[Spot], at: Spot, leaders: &[[Spot; 2]], names: &[Area]) -> Option<Spot> {
         let mut best: Option<(f64, Spot)> = None;
         for distance in [40.0, 52.0, 66.0, 84.0, 106.0, 134.0, 170.0, 215.0, 270.0, 340.0] {
             // Nothing farther can be cheaper.
@@ -191,22 +191,24 @@ impl Notes<'_> {
                 if !drawing.occupied.is_free(&area.widened(3.0)) {
                     continue;
                 }
+                // What is quick to know first: most places are out of the question by then.
+                let dearer = |cost: f64| best.is_some_and(|(known, _)| cost >= known);
+                let named = names.iter().filter(|name| name.overlaps(&area)).count() as f64;
+                let mut cost = distance + 60.0 * named + 60.0 * surrounded(place, spots) + 26.0 * self.metal_below(&area) as f64;
+                if dearer(cost) {
+                    continue;
+                }
                 let steps = (distance / 8.0).ceil();
                 let along = |k: f64| [at[0] + (place[0] - at[0]) * k / steps, at[1] + (place[1] - at[1]) * k / steps];
-                let over = (0..steps as usize).filter(|&k| self.share(along(k as f64)).is_some()).count() as f64 * 8.0;
+                cost += 3.2 * (0..steps as usize).filter(|&k| self.share(along(k as f64)).is_some()).count() as f64;
                 let entangled = |&[other, spot]: &[Spot; 2]| {
                     cross([other, spot], [at, place]) || balloon(other).crossed_by(at, place) || area.widened(2.0).crossed_by(other, spot)
                 };
-                let crossed = leaders.iter().filter(|&leader| entangled(leader)).count() as f64;
-                let blocked = drawing.occupied.crossed_by(at, place) as f64;
-                let named = names.iter().filter(|name| name.overlaps(&area)).count() as f64;
-                let cost = distance
-                    + 0.4 * over
-                    + 26.0 * self.metal_below(&area) as f64
-                    + 400.0 * crossed
-                    + 30.0 * blocked
-                    + 60.0 * named
-                    + 60.0 * surrounded(place, &spots);
+                cost += 400.0 * leaders.iter().filter(|&leader| entangled(leader)).count() as f64;
+                if dearer(cost) {
+                    continue;
+                }
+                cost += 30.0 * drawing.occupied.crossed_by(at, place) as f64;
                 if best.is_none_or(|(known, _)| cost < known) {
                     best = Some((cost, place));
                 }

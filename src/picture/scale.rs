@@ -1,6 +1,7 @@
 //! Round steps, the colour scale's end, the steps of potential, and numbers as a reader writes them.
 
 use super::Panel;
+use rayon::prelude::*;
 
 /// Bins of the area count from which quantiles are read.
 const BINS: usize = 4096;
@@ -54,7 +55,7 @@ fn sized(panel: &Panel, triangle: &[u32; 3]) -> f64 {
 /// Equipotentials that divide what drops in the metal: the drop over a joint from one piece of metal to another would leave none of them in either.
 /// All panels share a step where it leaves each of them some lines.
 fn potentials(panels: &[Panel]) -> Vec<Option<Potentials>> {
-    let ranges: Vec<Option<(f64, f64, f64)>> = panels.iter().map(range).collect();
+    let ranges: Vec<Option<(f64, f64, f64)>> = panels.par_iter().map(range).collect();
     let widest = ranges.iter().flatten().map(|r| r.2).fold(0.0, f64::max);
     let of = |&range: &Option<(f64, f64, f64)>| {
         let (low, high, span) = range?;

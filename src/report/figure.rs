@@ -216,3 +216,61 @@ fn name_place(electrode: &Electrode) -> Point {
     });
     middles.fold(Point::default(), |s, p| s + p) * (1.0 / electrode.spots.len().max(1) as f64)
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn sheet_of(job: &str) -> Sheet {
+        let reading = crate::reading::read(std::path::Path::new("job.toml"), &|_| Ok(job.into())).unwrap();
+        let found = crate::findings::find(&reading.problem).unwrap();
+        sheet(&reading.problem, &found)
+    }
+
+    /// A strip of 10 x 5 mm as a layer of its own, from some y on.
+    fn layer(name: &str, y: f64) -> String {
+        let points = format!("[[0, {y}], [10, {y}], [10, {0}], [0, {0}]]", y + 5.0);
+        format!("[[layer]]\nname = \"{name}\"\nthickness_mm = 0.2\nresistivity_uohm_cm = 2\npoints_mm = {points}\n")
+    }
+
+    fn end(name: &str, layer: &str, x: f64, y: f64, drive: &str) -> String {
+        format!("[[terminal]]\nname = \"{name}\"\nlayer = \"{layer}\"\nline_mm = [[{x}, {y}], [{x}, {}]]\n{drive}\n", y + 5.0)
+    }
+
+    #[test]
+    fn what_enters_separate_pieces_adds_up() {
+        let job = layer("a", 0.0)
+            + &layer("b", 10.0)
+            + &end("a in", "a", 0.0, 0.0, "current_a = 2")
+            + &end("a out", "a", 10.0, 0.0, "")
+            + &end("b in", "b", 0.0, 10.0, "current_a = 3")
+            + &end("b out", "b", 10.0, 10.0, "");
+        assert!(sheet_of(&job).subtitle.starts_with("5.00 A through 4 terminals"));
+    }
+
+    #[test]
+    fn rows_in_series_through_their_cells_count_once() {
+        let job = layer("plus", 0.0)
+            + &layer("minus", 10.0)
+            + "[[cell]]\nname = \"c\"\nlayer = \"plus\"\nspots_mm = [[3, 2.5]]\ndiameter_mm = 1\njoint_mohm = 0.1\nemf_mv = 1000\n\
+               resistance_mohm = 10\nreturn = { layer = \"minus\", spots_mm = [[3, 12.5]], diameter_mm = 1, joint_mohm = 0.1 }\n"
+            + &end("lead", "plus", 10.0, 0.0, "current_a = -4")
+            + &end("other lead", "minus", 10.0, 10.0, "current_a = 4");
+        assert!(sheet_of(&job).subtitle.starts_with("4.00 A through"), "{}", sheet_of(&job).subtitle);
+    }
+
+    #[test]
+    fn joins_tips_and_lines_are_in_the_panels_they_belong_to() {
+        let job = layer("a", 0.0)
+            + &layer("b", 0.0)
+            + "[[join]]\nbetween = [\"a\", \"b\"]\nspots_mm = [[5, 2.5]]\ndiameter_mm = 1\njoint_mohm = 0.1\n\
+               [[probe]]\nname = \"over\"\nlayer = \"a\"\nlayer_b = \"b\"\ntips_mm = [[4, 1], [6, 1]]\n\
+               [[crossing]]\nname = \"cut\"\nfrom_mm = [2, 0]\nto_mm = [2, 5]\n"
+            + &end("in", "a", 0.0, 0.0, "current_a = 2")
+            + &end("out", "b", 10.0, 0.0, "");
+        let [a, b] = <[Panel; 2]>::try_from(sheet_of(&job).panels).unwrap();
+        assert_eq!((a.spots[0].label.as_deref(), b.spots[0].label.as_deref()), (Some("2.00 A"), Some("2.00 A")));
+        assert_eq!((a.tips[0].1.as_str(), b.tips[0].1.as_str(), a.tips.len()), ("over +", "over −", 1));
+        assert_eq!((a.crossings[0].1.as_str(), b.crossings.len()), ("cut 2.00 A", 0));
+    }
+}
