@@ -173,7 +173,7 @@ fn dashed(rim: &[Spot], length: f64) -> Vec<Vec<Spot>> {
         let mut number = (passed / dash) as usize;
         while step > 0.0 && number as f64 * dash < passed + step {
             let (from, to) = (passed.max(number as f64 * dash), (passed + step).min((number + 1) as f64 * dash));
-            if number % 2 == 0 && to > from {
+            if number.is_multiple_of(2) && to > from {
                 match dashes.last_mut() {
                     // A dash goes on around a corner.
                     Some(last) if from == passed && passed > number as f64 * dash => last.push(at(to)),

@@ -280,6 +280,7 @@ impl Notes<'_> {
     pub fn readings(&self, drawing: &mut Drawing) {
         let size = 13.0;
         for view in self.views {
+            patches_of(view).into_iter().for_each(|patch| drawing.occupied.take(patch));
             let tips: Vec<Area> = view.panel.tips.iter().map(|(at, _)| tip(view.frame.at(*at))).collect();
             for ((_, text), area) in view.panel.tips.iter().zip(&tips) {
                 let _ = self.beside(drawing, text, size, area, &tips);
@@ -468,7 +469,7 @@ fn over_metal(view: &View<'_>, ends: [Point; 2]) -> Option<[Spot; 2]> {
     let at = |s: f64| [a[0] + s * way[0], a[1] + s * way[1]];
     let mut met = (0..=length as usize).map(|s| s as f64).filter(|&s| view.share(at(s)).is_some());
     let first = met.next()?;
-    let last = met.last().unwrap_or(first);
+    let last = met.next_back().unwrap_or(first);
     Some([at((first - BEYOND).max(0.0)), at((last + BEYOND).min(length))])
 }
 
