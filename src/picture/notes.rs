@@ -283,7 +283,7 @@ impl Notes<'_> {
             patches_of(view).into_iter().for_each(|patch| drawing.occupied.take(patch));
             let tips: Vec<Area> = view.panel.tips.iter().map(|(at, _)| tip(view.frame.at(*at))).collect();
             for ((_, text), area) in view.panel.tips.iter().zip(&tips) {
-                let _ = self.beside(drawing, text, size, area, &tips);
+                let _ = self.beside(drawing, text, size, area, &[]);
                 let ([x, y], arm) = (area.centre(), 4.5);
                 let cross = vec![vec![[x - arm, y], [x + arm, y]], vec![[x, y - arm], [x, y + arm]]];
                 drawing.marks.push(Mark::Lines(cross.clone(), 4.6, WHITE));
