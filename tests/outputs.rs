@@ -32,11 +32,11 @@ fn contents(folder: &Path) -> BTreeMap<String, Vec<u8>> {
 
 #[test]
 fn the_same_bytes_on_any_number_of_threads_and_every_time() {
-    // Sheets with a contact, many spots, sources with meters, held potentials.
-    for job in ["copper-on-nickel.toml", "bench-parallel.toml", "one-weak-can.toml", "neck-one-shorted.toml"] {
+    // Sheets in contact, bolted sheets with meters, cells as sources.
+    for job in ["copper-on-nickel.toml", "loose-lug.toml", "one-weak-can.toml"] {
         let folder = tempfile::tempdir().expect("a folder");
         let mut runs = Vec::new();
-        for (run, threads) in ["1", "2", "2", "5"].into_iter().enumerate() {
+        for (run, threads) in ["1", "2", "2"].into_iter().enumerate() {
             let out = folder.path().join(run.to_string());
             let output = tool(&["map", &sample(job), "--threads", threads, "--out", &out.to_string_lossy()]).output().expect("it runs");
             let shown = String::from_utf8(output.stdout).expect("UTF-8");
@@ -70,8 +70,9 @@ fn killed(job: &str, out: &Path, moment: Moment, old: &BTreeMap<String, Vec<u8>>
         Moment::After(time) => start.elapsed() >= time,
         Moment::Writing(count) => names(out).iter().filter(|n| n.starts_with(UNFINISHED)).count() >= count,
         Moment::Placed(count) => {
-            let new = |name: &&str| std::fs::metadata(out.join(name)).is_ok_and(|m| old.get(*name).is_none_or(|o| o.len() as u64 != m.len()));
-            OURS.iter().filter(new).count() >= count
+            let length = |name: &str| std::fs::metadata(out.join(name)).ok().map(|m| m.len());
+            let is_new = |name: &str| length(name).is_some_and(|l| old.get(name).is_none_or(|o| o.len() as u64 != l));
+            OURS.into_iter().filter(|name| is_new(name)).count() >= count
         }
     };
     while !due() && child.try_wait().expect("its state").is_none() {
@@ -89,10 +90,10 @@ fn a_killed_run_leaves_whole_files_or_none() {
     let job = base.path().join("plate.toml").to_string_lossy().into_owned();
     let sheet = |current: f64, title: &str| {
         let text = format!(
-            "title = \"{title}\"\n[[layer]]\nname = \"plate\"\nmetal = \"nickel-201\"\nthickness_mm = 0.2\n\
+            "title = \"{title}\"\n[accuracy]\nbracket_percent = 1\n[[layer]]\nname = \"plate\"\nmetal = \"nickel-201\"\nthickness_mm = 0.2\n\
              points_mm = [[0, 0], [30, 0], [30, 20], [0, 20]]\n\
              [[cell]]\nname = \"C\"\nlayer = \"plate\"\nspots_mm = [[5, 5]]\ndiameter_mm = 1\njoint_mohm = 0.05\ncurrent_a = {current}\n\
-             pattern = {{ step_mm = [6, 0], count = 4, row_step_mm = [0, 10], rows = 2 }}\n\
+             pattern = {{ step_mm = [6, 0], count = 2, row_step_mm = [0, 10], rows = 2 }}\n\
              [[terminal]]\nname = \"lug\"\nlayer = \"plate\"\nline_mm = [[30, 0], [30, 20]]\n"
         );
         std::fs::write(&job, text).expect("the sheet is written");
@@ -150,7 +151,9 @@ fn where_results_cannot_be_written_is_told_before_what_only_the_work_shows() {
                 [[terminal]]\nname = \"out\"\nlayer = \"strip\"\nline_mm = [[50, 0], [50, 5]]\n";
     std::fs::write(&job, text).expect("written");
     std::fs::write(base.path().join("file"), "").expect("written");
-    for (out, part) in [("free", "connected to no electrode"), ("file", "is a file, not a folder"), ("file/below", "is a file, not a folder")] {
+    for (out, part) in
+        [("free", "connected to no electrode"), ("file", "is a file, not a folder"), ("file/below", "is a file, not a folder")]
+    {
         let output = tool(&["map", &job, "--out", &base.path().join(out).to_string_lossy()]).output().expect("it runs");
         let said = String::from_utf8(output.stderr).expect("UTF-8");
         assert_eq!((output.status.code(), output.stdout.len()), (Some(2), 0), "{out}: {said}");
