@@ -51,7 +51,7 @@ pub fn find_with(problem: &Problem, listener: &Listener) -> Result<Found, Vec<Fa
     let mut density = DensityField::new(problem, &solution);
     let mut survey = survey(problem, &solution, &density);
     for _ in 0..SHARPENINGS {
-        if survey.unresolved.is_empty() {
+        if !survey.doubtful {
             break;
         }
         solution = physics::sharpened(problem, solution, &survey.unresolved)?;

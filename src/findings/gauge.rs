@@ -5,6 +5,7 @@ use crate::geometry::Point;
 use crate::index::LayerId;
 use crate::mesh::NONE;
 use crate::physics::Solution;
+use crate::physics::adapt::RESOLVED;
 use crate::problem::Problem;
 
 /// Current density of every sheet.
@@ -82,7 +83,9 @@ pub struct Covered {
     pub direction: Point,
     /// Roughly the middle of the metal under the disc.
     pub middle: Point,
-    /// Longest edge of a triangle under it that makes up more than a fiftieth of it.
+    /// Part of the metal under it that lies in triangles with an edge longer than [`RESOLVED`] diameters.
+    pub coarse: f64,
+    /// Longest edge of a triangle under it, mm.
     pub longest: f64,
 }
 
@@ -131,7 +134,6 @@ impl<'a> Disc<'a> {
     /// The means over a disc of some diameter.
     pub fn mean(&mut self, centre: Place, diameter: f64) -> Covered {
         let metal = self.metal;
-        let whole = 0.25 * std::f64::consts::PI * diameter * diameter;
         let mut sum = Covered::default();
         let mut area = 0.0;
         self.flood(centre, diameter, |t, part| {
@@ -140,13 +142,15 @@ impl<'a> Disc<'a> {
             sum.mean += part * triangle.magnitude;
             sum.direction = sum.direction + triangle.density * part;
             sum.middle = sum.middle + triangle.middle() * part;
-            // A triangle that the disc only just touches does not spoil the mean.
-            if part > 0.05 * whole {
-                sum.longest = sum.longest.max(triangle.longest());
+            let longest = triangle.longest();
+            sum.longest = sum.longest.max(longest);
+            if longest > RESOLVED * diameter {
+                sum.coarse += part;
             }
         });
         if area > 0.0 {
             sum.mean /= area;
+            sum.coarse /= area;
             (sum.direction, sum.middle) = (sum.direction * (1.0 / area), sum.middle * (1.0 / area));
         }
         sum

@@ -151,10 +151,19 @@ impl Outline {
         outline
     }
 
-    /// Re-entrant corners and ends of line joints within reach of a point.
-    pub fn corners_near(&self, point: Point, reach: f64) -> impl Iterator<Item = Point> {
-        let all = self.corners.iter().map(|c| c.point).chain(self.line_ends.iter().map(|e| e.0));
-        all.filter(move |c| c.distance(point) <= reach)
+    /// Re-entrant corners and ends of line joints.
+    fn sharp_places(&self) -> impl Iterator<Item = Point> + Clone {
+        self.corners.iter().map(|c| c.point).chain(self.line_ends.iter().map(|e| e.0))
+    }
+
+    /// The nearest of them to a point.
+    pub fn nearest_corner(&self, point: Point) -> Option<Point> {
+        self.sharp_places().min_by(|a, b| a.distance(point).total_cmp(&b.distance(point)))
+    }
+
+    /// Those within reach of a point.
+    pub fn corners_near(&self, point: Point, reach: f64) -> impl Iterator<Item = Point> + Clone {
+        self.sharp_places().filter(move |c| c.distance(point) <= reach)
     }
 }
 
