@@ -1,11 +1,12 @@
 //! The upper bound worked out again from the fluxes alone: they conserve current on every triangle, and what they dissipate is the bound.
 
-use crate::support::random::job;
+use crate::support::random::{job, job_of_all_kinds};
 use crate::support::run;
 use fastrand::Rng;
-use pinchbar::fem::{End, Link};
+use pinchbar::fem::{End, FarEnd, Link};
 use pinchbar::geometry::Point;
 use pinchbar::physics::Solution;
+use pinchbar::problem::Drive;
 
 /// Dissipation of the flux, the largest current it loses on a triangle, and the largest it loses between triangles.
 fn dissipation(solution: &Solution) -> (f64, f64, f64) {
@@ -38,13 +39,14 @@ fn dissipation(solution: &Solution) -> (f64, f64, f64) {
         (0..3).for_each(|k| across[complex.link_of[e][k] as usize] += flux[k]);
     }
     for x in &complex.edge_exchanges {
-        let corners = mesh.corners(complex.elements[x.element as usize].triangle as usize);
-        let (i, j) = ((x.edge as usize + 1) % 3, (x.edge as usize + 2) % 3);
-        let ends = [i, j].map(|k| solution.potential.values[complex.unknown_at(End::Leaf(x.element), k)]);
-        let mean = 0.5 * (ends[0] + ends[1]) - solution.potential.values[x.pole as usize];
-        let conductance = x.per_length * corners[i].distance(corners[j]);
+        let drops = complex.across_edge(mesh, x).map(|[near, far]| solution.potential.values[near] - solution.potential.values[far]);
+        let mean = 0.5 * (drops[0] + drops[1]);
+        let conductance = x.per_length * complex.edge_length(mesh, x);
         loss += conductance * mean * mean;
         across[complex.link_of[x.element as usize][x.edge as usize] as usize] -= conductance * mean;
+        if let FarEnd::Leaf(element, edge) = x.far {
+            across[complex.link_of[element as usize][edge as usize] as usize] += conductance * mean;
+        }
     }
     let worst = |list: &mut dyn Iterator<Item = f64>| list.fold(0.0, |m: f64, x| m.max(x.abs()));
     let inside = worst(&mut complex.elements.iter().zip(&left).filter(|(e, _)| e.leaf.held.is_none()).map(|(_, &x)| x));
@@ -55,12 +57,15 @@ fn dissipation(solution: &Solution) -> (f64, f64, f64) {
 #[test]
 fn the_upper_bound_is_what_a_conserving_flux_dissipates() {
     let mut wrong = Vec::new();
-    for seed in 8000..8030 {
-        let problem = job(&mut Rng::with_seed(seed), 0.05);
+    for seed in 8000..8060 {
+        let mut rng = Rng::with_seed(seed);
+        let problem = if seed % 2 == 0 { job(&mut rng, 0.05) } else { job_of_all_kinds(&mut rng, 0.05) };
         let solution = run(&problem, 5.0);
         let (loss, inside, between) = dissipation(&solution);
         let largest = solution.electrodes.iter().map(|e| e.current.abs()).fold(0.0, f64::max);
-        if (loss / solution.loss.high - 1.0).abs() > 1e-8 || inside > 1e-8 * largest || between > 1e-8 * largest {
+        // Where currents are found, the interval of the loss also holds what they may be off.
+        let given = problem.electrodes.iter().all(|e| matches!(e.drive, Drive::Current(_) | Drive::Balance));
+        if given && (loss / solution.loss.high - 1.0).abs() > 1e-8 || inside > 1e-8 * largest || between > 1e-8 * largest {
             wrong.push(format!("job {seed}: {loss} and {:?}; lost {inside:e} and {between:e} of {largest} A", solution.loss));
         }
     }

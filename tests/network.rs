@@ -109,3 +109,23 @@ fn ladders_of_cells_carry_what_nodal_analysis_finds() {
         }
     }
 }
+
+/// A line joint of a cell through two strips, 6 mm wide and 40 mm long: closed forms, derived. Along the line all is alike, so that the fields have one
+/// dimension: the joint is passed once on the way to the lower strip, twice on the way to the upper one.
+#[test]
+fn a_line_through_two_sheets_is_passed_once_for_each_interface() {
+    let strip = 9e-5 * 36.0 / (6.0 * 0.2);
+    for (joint_mohm, out, expected_ohm) in [(0.2, "lower", 0.2e-3 + strip), (0.2, "upper", 0.4e-3 + strip), (0.0, "upper", strip)] {
+        let sheet = format!(
+            "[[layer]]\nname = \"upper\"\nresistivity_uohm_cm = 9\nthickness_mm = 0.2\npoints_mm = [[0, 0], [40, 0], [40, 6], [0, 6]]\n\
+             [[layer]]\nname = \"lower\"\nresistivity_uohm_cm = 9\nthickness_mm = 0.2\npoints_mm = [[-3, 0], [40, 0], [40, 6], [-3, 6]]\n\
+             [[cell]]\nname = \"C\"\nthrough = [\"upper\", \"lower\"]\nline_mm = [[4, 0], [4, 6]]\njoint_mohm = {joint_mohm}\ncurrent_a = 5\n\
+             [[terminal]]\nname = \"out\"\nlayer = \"{out}\"\nline_mm = [[40, 0], [40, 6]]\n"
+        );
+        let found = solved(&read(&sheet, &Default::default()), 1e-4);
+        let resistance = found.resistance_mohm.expect("two electrodes");
+        let expected = 1e3 * expected_ohm;
+        assert!(resistance.low <= expected && expected <= resistance.high, "{joint_mohm} {out}: {resistance:?}, {expected}");
+        assert!((found.loss_w.value - 25.0 * expected_ohm).abs() < 1e-6 * found.loss_w.value);
+    }
+}

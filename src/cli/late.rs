@@ -69,7 +69,7 @@ pub fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
             "a line over metal outside solid patches",
             "move the crossing, or give the joint a resistance",
         ),
-        Late::SpotOff(k) | Late::LineThroughSheets(k) => at(
+        Late::SpotOff(k) => at(
             origins.electrode(*k).clone(),
             format!("`{}`: {fault}", name(*k)),
             "a place on the metal of its layer",

@@ -65,22 +65,14 @@ pub fn assembled(mesh: &Mesh, complex: &Complex, free: &[Option<u32>]) -> Symmet
     }
     for x in &complex.edge_exchanges {
         // ∫ d² = length / 6 (d_1² + d_2² + (d_1 + d_2)²)
-        let (i, j, length) = edge_ends(mesh, complex, x.element as usize, x.edge as usize);
-        let weight = x.per_length * length / 6.0;
-        let pole = x.pole as usize;
-        for u in [i, j] {
-            add_square(&merged(&[(u, 1.0), (pole, -1.0)]), weight);
+        let weight = x.per_length * complex.edge_length(mesh, x) / 6.0;
+        let d = complex.across_edge(mesh, x).map(|[near, far]| [(near, 1.0), (far, -1.0)]);
+        for pair in &d {
+            add_square(&merged(pair), weight);
         }
-        add_square(&merged(&[(i, 1.0), (j, 1.0), (pole, -2.0)]), weight);
+        add_square(&merged(d.as_flattened()), weight);
     }
     triplets.into()
-}
-
-/// The unknowns at the ends of an element's edge, and its length.
-pub(super) fn edge_ends(mesh: &Mesh, complex: &Complex, element: usize, edge: usize) -> (usize, usize, f64) {
-    let corners = mesh.corners(complex.elements[element].triangle as usize);
-    let (i, j) = ((edge + 1) % 3, (edge + 2) % 3);
-    (complex.unknowns[element][i] as usize, complex.unknowns[element][j] as usize, corners[i].distance(corners[j]))
 }
 
 /// A linear form with each unknown named once.

@@ -56,15 +56,24 @@ pub struct ExchangePlan {
     pub mark: u32,
 }
 
+/// What a line joins the layers to.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum Touch {
+    /// To a pole, without a drop.
+    Held(u32),
+    /// To a pole, by S/mm.
+    Pole(u32, f64),
+    /// To another layer (as a bit), by S/mm.
+    Layer(u64, f64),
+}
+
 /// What a line label of the mesh does.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct LinePlan {
-    /// The layer it touches, as a bit.
-    pub layer: u64,
-    /// The pole on the other side.
-    pub pole: u32,
-    /// S/mm; `None`: held, no drop.
-    pub per_length: Option<f64>,
+    /// The layers it touches, one bit each.
+    pub layers: u64,
+    /// What is on the other side.
+    pub touch: Touch,
     /// The caller's mark.
     pub mark: u32,
 }
@@ -91,15 +100,24 @@ pub struct AreaExchange {
     pub mark: u32,
 }
 
-/// An exchange with a pole along one edge; current counts + from the leaf into the pole.
+/// The far end of an exchange along an edge.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum FarEnd {
+    /// A pole.
+    Pole(u32),
+    /// Another element on the same edge of the mesh, and which of its edges that is.
+    Leaf(u32, u8),
+}
+
+/// An exchange along one edge; current counts + from the element into the far end.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct EdgeExchange {
     /// An element on that edge.
     pub element: u32,
     /// Which of its edges.
     pub edge: u8,
-    /// The pole.
-    pub pole: u32,
+    /// The other side.
+    pub far: FarEnd,
     /// S/mm.
     pub per_length: f64,
     /// The caller's mark.
@@ -295,15 +313,22 @@ impl Complex {
                 for hold in own().filter_map(|m| self.elements[m.0 as usize].leaf.held) {
                     touch(hold).map_err(meet)?;
                 }
-                for line in on_edge.iter().map(|&l| &lines[l as usize]).filter(|l| l.layer & layers != 0) {
-                    match line.per_length {
-                        None => touch(Hold { pole: line.pole, mark: line.mark }).map_err(meet)?,
-                        Some(per_length) => {
-                            if let Some(m) = own().find(|m| self.elements[m.0 as usize].leaf.held.is_none()) {
-                                let (pole, mark) = (line.pole, line.mark);
-                                self.edge_exchanges.push(EdgeExchange { element: m.0, edge: m.1, pole, per_length, mark });
-                            }
+                for line in on_edge.iter().map(|&l| &lines[l as usize]).filter(|l| l.layers & layers != 0) {
+                    let free = |m: &&(u32, u8, u32)| self.elements[m.0 as usize].leaf.held.is_none();
+                    let (far, per_length) = match line.touch {
+                        Touch::Held(pole) => {
+                            touch(Hold { pole, mark: line.mark }).map_err(meet)?;
+                            continue;
                         }
+                        Touch::Pole(pole, per_length) => (Some(FarEnd::Pole(pole)), per_length),
+                        Touch::Layer(other, per_length) => {
+                            let mut others =
+                                members.iter().filter(|m| m.2 != group && self.elements[m.0 as usize].leaf.layers & other != 0);
+                            (others.find(free).map(|m| FarEnd::Leaf(m.0, m.1)), per_length)
+                        }
+                    };
+                    if let (Some(&(element, edge, _)), Some(far)) = (own().find(free), far) {
+                        self.edge_exchanges.push(EdgeExchange { element, edge, far, per_length, mark: line.mark });
                     }
                 }
                 let mut previous: Option<[u32; 2]> = None;
@@ -372,6 +397,23 @@ impl Complex {
             m.2 = names.partition_point(|&n| n < m.2) as u32;
         }
         names.len() as u32
+    }
+
+    /// The unknowns on both sides of an exchange along an edge, the element's first, at the smaller vertex and at the other one.
+    pub fn across_edge(&self, mesh: &Mesh, x: &EdgeExchange) -> [[usize; 2]; 2] {
+        let unknown = |corner: u32| self.unknowns[corner as usize / 3][corner as usize % 3] as usize;
+        let near = self.ends_by_vertex(mesh, x.element, x.edge).map(unknown);
+        let far = match x.far {
+            FarEnd::Pole(pole) => [pole as usize; 2],
+            FarEnd::Leaf(element, edge) => self.ends_by_vertex(mesh, element, edge).map(unknown),
+        };
+        [0, 1].map(|i| [near[i], far[i]])
+    }
+
+    /// Length of the edge of an exchange, mm.
+    pub fn edge_length(&self, mesh: &Mesh, x: &EdgeExchange) -> f64 {
+        let corners = mesh.corners(self.elements[x.element as usize].triangle as usize);
+        corners[(x.edge as usize + 1) % 3].distance(corners[(x.edge as usize + 2) % 3])
     }
 
     /// The two corners of an element at the ends of one of its edges, the smaller vertex first.
@@ -455,8 +497,8 @@ impl Complex {
                 }
             }
         }
-        for x in &self.edge_exchanges {
-            add(x.pole as usize, mesh.corners(self.elements[x.element as usize].triangle as usize)[(x.edge as usize + 1) % 3]);
+        for (x, pole) in self.edge_exchanges.iter().filter_map(|x| if let FarEnd::Pole(pole) = x.far { Some((x, pole)) } else { None }) {
+            add(pole as usize, mesh.corners(self.elements[x.element as usize].triangle as usize)[(x.edge as usize + 1) % 3]);
         }
         for (pole, [x, y, n]) in sums.into_iter().enumerate() {
             if n > 0.0 {
@@ -502,7 +544,8 @@ impl Complex {
             join(&mut parent, self.unknown_at(x.ends[0], 0) as u32, self.unknown_at(x.ends[1], 0) as u32);
         }
         for x in &self.edge_exchanges {
-            join(&mut parent, self.unknowns[x.element as usize][(x.edge as usize + 1) % 3], x.pole);
+            let [[near, far], _] = self.across_edge(mesh, x);
+            join(&mut parent, near as u32, far as u32);
         }
         let mut number = vec![NONE; self.order()];
         // The smallest unknown is the root, and poles come first: a root that is no pole has no pole in its piece.

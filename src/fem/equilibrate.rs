@@ -8,8 +8,8 @@
 //!
 //! The defect (flux + g grad phi, and an exchange's difference less its mean) gives the bound: energy of the flux = discrete energy + its square.
 
-use super::assemble::{conduction, edge_ends};
-use super::complex::{Complex, Element, End, Link};
+use super::assemble::conduction;
+use super::complex::{Complex, Element, End, FarEnd, Link};
 use super::field::Field;
 use crate::algebra::Dense;
 use crate::geometry::Point;
@@ -42,24 +42,31 @@ const CHUNK: usize = 1536;
 
 /// The flux of a single field without loads, and the defect per triangle.
 pub fn equilibrated(mesh: &Mesh, complex: &Complex, field: &Field) -> Equilibrated {
-    type Part = (Vec<[f64; 3]>, Vec<(u32, f64)>);
+    let (flux, indicator) = fluxes(mesh, complex, field, &[]);
+    Equilibrated { flux: flux.chunks_exact(3).map(|f| [f[0], f[1], f[2]]).collect(), indicator }
+}
+
+/// The fluxes of all columns (three rows of them per element), and per triangle the sum of their defects.
+fn fluxes(mesh: &Mesh, complex: &Complex, field: &Field, loads: &[Load]) -> (Vec<f64>, Vec<f64>) {
+    type Part = (Vec<f64>, Vec<(u32, f64)>);
     let parts: Vec<Part> = chunks(complex)
         .into_par_iter()
         .map(|range| {
-            let chunk = Chunk::new(mesh, complex, field, &[], range);
+            let chunk = Chunk::new(mesh, complex, field, loads, range);
             let mut indicator = Vec::with_capacity(chunk.range.len());
             chunk.defects(|triangle, rows| indicator.push((triangle, rows.iter().map(|r| r * r).sum())));
-            (chunk.flux.chunks_exact(3).map(|f| [f[0], f[1], f[2]]).collect(), indicator)
+            (chunk.flux, indicator)
         })
         .collect();
-    let mut result = Equilibrated { flux: Vec::with_capacity(complex.elements.len()), indicator: vec![0.0; mesh.triangles.len()] };
-    for (flux, indicator) in parts {
-        result.flux.extend(flux);
-        for (t, eta) in indicator {
-            result.indicator[t as usize] += eta;
+    let mut flux = Vec::with_capacity(3 * complex.elements.len() * field.width);
+    let mut indicator = vec![0.0; mesh.triangles.len()];
+    for (part, defects) in parts {
+        flux.extend(part);
+        for (t, eta) in defects {
+            indicator[t as usize] += eta;
         }
     }
-    result
+    (flux, indicator)
 }
 
 /// The Gram matrix of the defects of all columns: upper minus lower bound as a quadratic form of the columns' weights. `loads` are sorted by element.
@@ -87,30 +94,18 @@ pub fn gram(mesh: &Mesh, complex: &Complex, field: &Field, loads: &[Load]) -> De
             total.accumulate(part);
         }
     }
+    total.mirror();
     total
 }
 
-/// Per triangle: the sum over some combinations (their weights of the columns, and a factor each) of factor * square of the combined defect.
-pub fn weighted_indicators(mesh: &Mesh, complex: &Complex, field: &Field, loads: &[Load], combinations: &[(Vec<f64>, f64)]) -> Vec<f64> {
-    let parts: Vec<Vec<(u32, f64)>> = chunks(complex)
-        .into_par_iter()
-        .map(|range| {
-            let mut indicator = Vec::with_capacity(range.len());
-            Chunk::new(mesh, complex, field, loads, range).defects(|triangle, rows| {
-                let square = |row: &[f64]| -> f64 {
-                    let dot = |weights: &[f64]| -> f64 { row.iter().zip(weights).map(|(r, w)| r * w).sum() };
-                    combinations.iter().map(|(weights, factor)| factor * dot(weights).powi(2)).sum()
-                };
-                indicator.push((triangle, rows.chunks_exact(field.width.max(1)).map(square).sum()));
-            });
-            indicator
-        })
-        .collect();
-    let mut result = vec![0.0; mesh.triangles.len()];
-    for (t, eta) in parts.into_iter().flatten() {
-        result[t as usize] += eta;
-    }
-    result
+/// Per triangle: the sum over some combinations of the columns (their weights) of the square of the combined defect. `loads` are sorted by element.
+pub fn weighted_indicators(mesh: &Mesh, complex: &Complex, field: &Field, loads: &[Load], combinations: &[Vec<f64>]) -> Vec<f64> {
+    let combined = |load: &Load| -> Vec<Load> {
+        let weights = combinations.iter().map(|w| w[load.column as usize]).enumerate();
+        weights.map(|(c, w)| Load { element: load.element, column: c as u32, per_area: w * load.per_area }).collect()
+    };
+    let loads: Vec<Load> = loads.iter().flat_map(combined).collect();
+    fluxes(mesh, complex, &field.combined(combinations), &loads).1
 }
 
 /// The local mass matrix of the edge fluxes, times 1 / conductance: entry (i, j) is ∫ w_i . w_j with w_i = (p - p_i) / (2 |T|).
@@ -233,14 +228,15 @@ impl<'a> Chunk<'a> {
         let vertex_unknown = |corner: u32| self.complex.unknowns[corner as usize / 3][corner as usize % 3];
         let here = corners.first().map_or(NONE, |&c| vertex_unknown(c));
         for spoke in 0..work.links.len() {
-            for &(_, x) in lines.on(work.links[spoke]) {
+            for &(_, x, side) in lines.on(work.links[spoke]) {
                 let x = &self.complex.edge_exchanges[x as usize];
-                let (i, j, length) = edge_ends(self.mesh, self.complex, x.element as usize, x.edge as usize);
-                let other = if i == here as usize { j } else { i };
-                let weight = x.per_length * length / 6.0;
-                let (near, far, pole) = (self.field.at(here as usize), self.field.at(other), self.field.at(x.pole as usize));
+                let [first, second] = self.complex.across_edge(self.mesh, x);
+                // Unknowns on this side and on the other one, at this vertex and at the edge's other end.
+                let (at, to) = if first[side] == here as usize { (first, second) } else { (second, first) };
+                let weight = x.per_length * self.complex.edge_length(self.mesh, x) / 6.0;
+                let [at, at_far, to, to_far] = [at[side], at[1 - side], to[side], to[1 - side]].map(|u| self.field.at(u));
                 for col in 0..width {
-                    work.given[spoke * width + col] += weight * (2.0 * (near[col] - pole[col]) + far[col] - pole[col]);
+                    work.given[spoke * width + col] += weight * (2.0 * (at[col] - at_far[col]) + to[col] - to_far[col]);
                 }
             }
         }
@@ -299,9 +295,9 @@ impl<'a> Chunk<'a> {
         }
         // Few lines: each is looked at once per chunk.
         for x in self.complex.edge_exchanges.iter().filter(|x| self.range.contains(&(x.element as usize))) {
-            let (i, j, length) = edge_ends(self.mesh, self.complex, x.element as usize, x.edge as usize);
-            let weight = (x.per_length * length / 12.0).sqrt();
-            let row: Vec<f64> = self.field.at(i).iter().zip(self.field.at(j)).map(|(a, b)| weight * (a - b)).collect();
+            let weight = (x.per_length * self.complex.edge_length(self.mesh, x) / 12.0).sqrt();
+            let [near, far] = self.complex.across_edge(self.mesh, x).map(|[near, far]| (self.field.at(near), self.field.at(far)));
+            let row: Vec<f64> = (0..width).map(|c| weight * ((near.0[c] - near.1[c]) - (far.0[c] - far.1[c]))).collect();
             take(self.complex.elements[x.element as usize].triangle, &row);
         }
     }
@@ -321,25 +317,30 @@ fn square_root(m: [[f64; 3]; 3]) -> [[f64; 3]; 3] {
     l
 }
 
-/// Edge exchanges by the link they lie on.
+/// Edge exchanges by the links they lie on.
 struct LinesByLink {
-    sorted: Vec<(u32, u32)>,
+    /// Link, exchange, and which of its two ends lies there.
+    sorted: Vec<(u32, u32, usize)>,
 }
 
 impl LinesByLink {
     fn new(complex: &Complex) -> Self {
-        let mut sorted: Vec<(u32, u32)> = complex
+        let mut sorted: Vec<(u32, u32, usize)> = complex
             .edge_exchanges
             .iter()
             .enumerate()
-            .map(|(i, x)| (complex.link_of[x.element as usize][x.edge as usize], i as u32))
-            .filter(|(link, _)| complex.links[*link as usize] == Link::Closed)
+            .flat_map(|(i, x)| {
+                let far = if let FarEnd::Leaf(element, edge) = x.far { Some((element, edge, 1)) } else { None };
+                let ends = [Some((x.element, x.edge, 0)), far].into_iter().flatten();
+                ends.map(move |(element, edge, side)| (complex.link_of[element as usize][edge as usize], i as u32, side))
+            })
+            .filter(|(link, ..)| complex.links[*link as usize] == Link::Closed)
             .collect();
         sorted.sort_unstable();
         Self { sorted }
     }
 
-    fn on(&self, link: u32) -> &[(u32, u32)] {
+    fn on(&self, link: u32) -> &[(u32, u32, usize)] {
         let from = self.sorted.partition_point(|x| x.0 < link);
         let to = from + self.sorted[from..].partition_point(|x| x.0 == link);
         &self.sorted[from..to]

@@ -1,5 +1,7 @@
 //! Values of one or several potential fields at all unknowns.
 
+use rayon::prelude::*;
+
 /// Fields side by side: the value of column `c` at unknown `u` is `values[u * width + c]`.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Field {
@@ -34,13 +36,18 @@ impl Field {
         &self.values[unknown * self.width..(unknown + 1) * self.width]
     }
 
-    /// The weighted sum of the columns.
-    pub fn combined(&self, weights: &[f64]) -> Self {
-        let values = if self.width == 0 {
-            Vec::new()
-        } else {
-            self.values.chunks(self.width).map(|row| row.iter().zip(weights).map(|(v, w)| v * w).sum()).collect()
-        };
-        Self::single(values)
+    /// Weighted sums of the columns, one column each.
+    pub fn combined(&self, combinations: &[Vec<f64>]) -> Self {
+        let (unknowns, width) = (self.values.len().checked_div(self.width).unwrap_or(0), combinations.len());
+        let mut values = vec![0.0; unknowns * width];
+        if width > 0 && self.width > 0 {
+            let weights: Vec<f64> = (0..self.width).flat_map(|c| combinations.iter().map(move |w| w[c])).collect();
+            values.par_chunks_mut(width).zip(self.values.par_chunks(self.width)).with_min_len(1024).for_each(|(sums, row)| {
+                for (value, weights) in row.iter().zip(weights.chunks_exact(width)) {
+                    sums.iter_mut().zip(weights).for_each(|(s, w)| *s += value * w);
+                }
+            });
+        }
+        Self { width, values }
     }
 }

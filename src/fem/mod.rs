@@ -10,6 +10,6 @@ pub mod equilibrate;
 pub mod field;
 
 pub use assemble::{assembled, conduction};
-pub use complex::{CellPlan, Complex, ComplexFault, End, ExchangePlan, Hold, LeafPlan, LinePlan, Link};
+pub use complex::{CellPlan, Complex, ComplexFault, End, ExchangePlan, FarEnd, Hold, LeafPlan, LinePlan, Link, Touch};
 pub use equilibrate::{Equilibrated, Load, equilibrated, flux_mass, gram, weighted_indicators};
 pub use field::Field;

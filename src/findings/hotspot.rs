@@ -20,6 +20,9 @@ pub const MOST_ROWS: usize = 20;
 /// A row's gauge peak exceeds its section's mean (at a weld rim: its surroundings) by this factor, unless it is a neck.
 const CROWDING: f64 = 1.05;
 
+/// From here on a place may turn out to be a row when the mesh under it is finer.
+const NEARLY: f64 = 1.03;
+
 /// Width of a spot's surroundings in gauge diameters.
 const AROUND: f64 = 4.0;
 
@@ -114,7 +117,12 @@ impl Candidate {
                 let centres = std::iter::once(self.place.point).chain(corners.clone());
                 fine.extend(centres.map(|centre| FineDisc { layer: metal.layer, centre, diameter, longest }));
                 // The field is steepest in the middle of a disc that stands in a sharp corner.
-                fine.extend(corners.map(|centre| FineDisc { layer: metal.layer, centre, diameter: 0.5 * diameter, longest: 0.5 * longest }));
+                fine.extend(corners.map(|centre| FineDisc {
+                    layer: metal.layer,
+                    centre,
+                    diameter: 0.5 * diameter,
+                    longest: 0.5 * longest,
+                }));
             }
         }
         fine
@@ -156,7 +164,7 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
             survey.doubtful |= highest.is_doubtful();
         }
         // On a coarse mesh a row to be may still look flat.
-        found.extend(candidates.into_iter().filter(|c| c.excess >= 1.0).map(|c| (metal.layer, c)));
+        found.extend(candidates.into_iter().filter(|c| c.excess >= NEARLY).map(|c| (metal.layer, c)));
     }
     let limit = |l: LayerId| problem.limits.density_a_mm2.get(l.index()).copied().flatten();
     // Rows with a limit come first: peaks and parts of a limit cannot be compared.

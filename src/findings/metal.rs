@@ -1,6 +1,6 @@
 //! The metal of one sheet as it was meshed: triangles with their currents and neighbours, finding a point, and walking along straight lines.
 
-use crate::fem::Link;
+use crate::fem::{FarEnd, Link};
 use crate::geometry::{BoundingBox, Point};
 use crate::index::LayerId;
 use crate::mesh::NONE;
@@ -157,14 +157,17 @@ impl LayerMetal {
         };
         let mut triangles: Vec<MetalTriangle> = own.par_iter().map(build).collect();
         for x in &complex.edge_exchanges {
-            let first = complex.elements[x.element as usize].triangle as usize;
-            let second = mesh.edges.across(first, x.edge as usize);
-            for (t, k) in [(first, x.edge as usize), (second as usize / 3, second as usize % 3)] {
-                if let Some(&place) = local.get(t)
-                    && place != NONE
-                    && complex.elements[x.element as usize].leaf.layers & bit != 0
-                {
-                    triangles[place as usize].open[k] = true;
+            let far = if let FarEnd::Leaf(element, edge) = x.far { Some((element, edge)) } else { None };
+            for (element, edge) in [Some((x.element, x.edge)), far].into_iter().flatten() {
+                let first = complex.elements[element as usize].triangle as usize;
+                let second = mesh.edges.across(first, edge as usize);
+                for (t, k) in [(first, edge as usize), (second as usize / 3, second as usize % 3)] {
+                    if let Some(&place) = local.get(t)
+                        && place != NONE
+                        && complex.elements[element as usize].leaf.layers & bit != 0
+                    {
+                        triangles[place as usize].open[k] = true;
+                    }
                 }
             }
         }

@@ -44,10 +44,9 @@ pub fn account(
         }
     }
     for x in &complex.edge_exchanges {
-        let corners = mesh.corners(complex.elements[x.element as usize].triangle as usize);
-        let (i, j) = ((x.edge as usize + 1) % 3, (x.edge as usize + 2) % 3);
-        let length = corners[i].distance(corners[j]);
-        let d = [i, j].map(|k| potential.values[x.pole as usize] - value(End::Leaf(x.element), k));
+        let length = complex.edge_length(mesh, x);
+        // + from the outside into the sheet.
+        let d = complex.across_edge(mesh, x).map(|[near, far]| potential.values[far] - potential.values[near]);
         let mean = 0.5 * (d[0] + d[1]);
         let entry = passed.entry(plan.marks[x.mark as usize]).or_default();
         entry.current += x.per_length * length * mean;

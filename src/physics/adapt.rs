@@ -7,7 +7,7 @@ use super::network;
 use super::pieces::{check_attached, given_currents, layout};
 use super::plan::Plan;
 use super::solution::{Fault, Round, RunRecord, Solution};
-use crate::fem::{self, CellPlan, Complex, ComplexFault, LinePlan};
+use crate::fem::{self, CellPlan, Complex, ComplexFault};
 use crate::geometry::Point;
 use crate::index::{ElectrodeId, LayerId};
 use crate::mesh::{Mesh, bisected, triangulated};
@@ -22,7 +22,6 @@ pub struct Rounds<'a> {
     problem: &'a Problem,
     plan: Plan<'a>,
     cells: Vec<CellPlan>,
-    lines: Vec<LinePlan>,
     record: RunRecord,
     listener: &'a Listener<'a>,
     /// Whether the voltages' intervals are so much wider than the loss's that every round has to look at them.
@@ -67,9 +66,8 @@ impl<'a> Started<'a> {
         let (mesh, quality) =
             triangulated(&drawing, problem.accuracy.max_vertices, &|cover| plan.is_metal(cover)).map_err(|f| vec![Fault::Mesh(f)])?;
         let cells = cells(&plan, &mesh)?;
-        let lines = plan.line_plans();
         let record = RunRecord { moves: drawing.moves, angles_reached: quality.angles_reached, ..RunRecord::default() };
-        let mut rounds = Rounds { problem, plan, cells, lines, record, listener, voltages_lead: false };
+        let mut rounds = Rounds { problem, plan, cells, record, listener, voltages_lead: false };
         match rounds.round(mesh)? {
             Outcome { solution: Some(first), wanted, .. } => Ok(Self { rounds, first, wanted }),
             _ => Err(without_answer()),
@@ -116,7 +114,8 @@ impl Rounds<'_> {
         let (problem, plan) = (self.problem, &self.plan);
         let gap = self.record.rounds.last().map(|r| r.gap);
         (self.listener)(Stage::Round { number: self.record.rounds.len() + 1, triangles: mesh.triangles.len(), gap });
-        let complex = Complex::new(&mesh, &self.cells, &self.lines, problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
+        let complex =
+            Complex::new(&mesh, &self.cells, self.plan.line_plans(), problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
         let is_first = self.record.rounds.is_empty();
         if is_first {
             check_attached(problem, &complex, plan)?;
@@ -133,7 +132,7 @@ impl Rounds<'_> {
             }
         };
         let potential = match &ports {
-            Some(ports) => ports.field.combined(&currents),
+            Some(ports) => ports.field.combined(std::slice::from_ref(&currents)),
             None => bar.driven(&currents)?,
         };
         let flux = fem::equilibrated(&mesh, &complex, &potential);
@@ -250,24 +249,25 @@ fn refined(mesh: &Mesh, mut indicator: Vec<f64>, goal: f64, room: usize) -> Opti
 const MOST_PROBES: usize = 16;
 
 /// Few combinations with, in the mean over signs, the same sum of squares as many (Hutchinson 1990): enough to tell where to refine.
-fn probed(combinations: &[(Vec<f64>, f64)]) -> Vec<(Vec<f64>, f64)> {
+fn probed(combinations: &[Vec<f64>]) -> Vec<Vec<f64>> {
     if combinations.len() <= MOST_PROBES {
         return combinations.to_vec();
     }
-    let width = combinations.first().map_or(0, |c| c.0.len());
+    let width = combinations.first().map_or(0, Vec::len);
     // Signs from a linear congruence (Knuth's constants, from memory): the same on every run.
     let mut state = 1u64;
+    let scale = (MOST_PROBES as f64).sqrt().recip();
     let mut sign = || {
         state = state.wrapping_mul(6364136223846793005).wrapping_add(1442695040888963407);
-        if state >> 63 == 0 { 1.0 } else { -1.0 }
+        if state >> 63 == 0 { scale } else { -scale }
     };
     let mut probe = || {
         let mut sum = vec![0.0; width];
-        for (weights, factor) in combinations {
-            let scale = sign() * factor.sqrt();
-            sum.iter_mut().zip(weights).for_each(|(s, w)| *s += scale * w);
+        for weights in combinations {
+            let sign = sign();
+            sum.iter_mut().zip(weights).for_each(|(s, w)| *s += sign * w);
         }
-        (sum, 1.0 / MOST_PROBES as f64)
+        sum
     };
     (0..MOST_PROBES).map(|_| probe()).collect()
 }
@@ -295,7 +295,7 @@ pub fn sharpened(problem: &Problem, old: Solution, discs: &[FineDisc]) -> Result
     let blank = vec![0.0; old.mesh.triangles.len()];
     let (mesh, _) = resolved_under(old.mesh, blank, discs, problem.accuracy.max_vertices);
     let complex =
-        Complex::new(&mesh, &cells(plan, &mesh)?, &plan.line_plans(), problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
+        Complex::new(&mesh, &cells(plan, &mesh)?, plan.line_plans(), problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
     let layout = layout(problem, plan, &mesh, &complex)?;
     let bar = Bar::new(problem, plan, &mesh, &complex, &layout)?;
     let mut currents: Vec<f64> = old.electrodes.iter().map(|e| e.current).collect();

@@ -139,7 +139,7 @@ mod tests {
         let plan = Plan::new(&problem).unwrap();
         let (mesh, _) = triangulated(&plan.drawing().unwrap(), 10_000, &|cover| plan.is_metal(cover)).unwrap();
         let cells: Vec<CellPlan> = mesh.covers.iter().map(|cover| plan.cell(cover).unwrap()).collect();
-        let complex = Complex::new(&mesh, &cells, &plan.line_plans(), problem.electrodes.len()).unwrap();
+        let complex = Complex::new(&mesh, &cells, plan.line_plans(), problem.electrodes.len()).unwrap();
         let layout = layout(&problem, &plan, &mesh, &complex).unwrap();
         let bar = Bar::new(&problem, &plan, &mesh, &complex, &layout).unwrap();
         let ports = bar.ports().unwrap();

@@ -19,7 +19,7 @@ pub fn check(problem: &Problem) -> Result<(), Vec<Fault>> {
     let (mesh, _) =
         triangulated(&drawing, problem.accuracy.max_vertices, &|cover| plan.is_metal(cover)).map_err(|f| vec![Fault::Mesh(f)])?;
     let cells: Vec<CellPlan> = mesh.covers.iter().map(|cover| plan.cell(cover)).collect::<Result<_, _>>().map_err(|f| vec![f])?;
-    let complex = Complex::new(&mesh, &cells, &plan.line_plans(), problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
+    let complex = Complex::new(&mesh, &cells, plan.line_plans(), problem.electrodes.len()).map_err(|f| vec![from_complex(f)])?;
     check_attached(problem, &complex, &plan)?;
     layout(problem, &plan, &mesh, &complex).map(|_| ())
 }

@@ -19,9 +19,9 @@ pub struct Enclosed {
     pub probes: Vec<Interval>,
     /// How many times wider than asked the widest interval is.
     pub excess: f64,
-    /// Port currents whose fields make the voltages and found currents too wide, and the weight of their indicators;
-    /// empty where the loss alone is.
-    pub wide: Vec<(Vec<f64>, f64)>,
+    /// Port currents whose fields make the voltages and found currents too wide, in the size in which their defects count;
+    /// empty where the loss alone is too wide.
+    pub wide: Vec<Vec<f64>>,
     /// Largest half-width of a voltage over the largest difference.
     pub voltage_spread: f64,
     /// Level of every piece, V.
@@ -129,7 +129,11 @@ pub fn enclose(
     });
     // Every interval's width is the product of its own field's defect and that of the currents, which so counts as often as all of them.
     let last = wide.len().saturating_sub(1);
-    let wide = wide.into_iter().enumerate().map(|(i, w)| (w.unit, if i == last { last as f64 } else { 1.0 } / w.own)).collect();
+    let scaled = |(i, w): (usize, Wide)| -> Vec<f64> {
+        let scale = (if i == last { last as f64 } else { 1.0 } / w.own).sqrt();
+        w.unit.iter().map(|u| u * scale).collect()
+    };
+    let wide = wide.into_iter().enumerate().map(scaled).collect();
     let levels = (0..layout.pieces).map(|p| response.voltages[layout.reference_of[p]]).collect();
     let electrodes =
         (0..count).map(|k| ElectrodeSolution { current: currents[k], current_range: ranges[k], voltage: voltages[k] }).collect();

@@ -1,7 +1,7 @@
 //! From the problem to labelled areas and lines, and from the areas that cover a cell to what conducts there.
 
 use super::Fault;
-use crate::fem::{CellPlan, End, ExchangePlan, Hold, LeafPlan, LinePlan};
+use crate::fem::{CellPlan, End, ExchangePlan, Hold, LeafPlan, LinePlan, Touch};
 use crate::geometry::{Point, ring};
 use crate::index::{ContactId, ElectrodeId, JoinId, LayerId};
 use crate::mesh::{Arrangement, arrange};
@@ -44,8 +44,7 @@ pub struct Plan<'a> {
     /// Meaning of the areas, in the drawing's order.
     pub areas: Vec<Area>,
     loops: Vec<Vec<Vec<Point>>>,
-    /// Per line: electrode and spot.
-    pub lines: Vec<(ElectrodeId, u32)>,
+    lines: Vec<LinePlan>,
     polylines: Vec<Vec<Point>>,
     /// Marks by number.
     pub marks: Vec<Mark>,
@@ -75,19 +74,14 @@ impl<'a> Plan<'a> {
                 }
             }
         }
+        let mut lines = Vec::new();
         for (k, electrode) in problem.electrodes.iter().enumerate() {
             for (i, spot) in electrode.spots.iter().enumerate() {
                 let (k, i) = (ElectrodeId::new(k), i as u32);
                 plan.marks.extend([Mark::Spot(k, i), Mark::Within(k, i)]);
                 match &spot.footprint {
                     Footprint::Area { region, .. } => plan.area(Area::Spot(k, i), region.loops.clone()),
-                    Footprint::Line { points } => {
-                        if electrode.through.len() > 1 {
-                            return Err(vec![Fault::LineThroughSheets(k)]);
-                        }
-                        plan.lines.push((k, i));
-                        plan.polylines.push(points.clone());
-                    }
+                    Footprint::Line { points } => lines.push((k, i, points, spot.joint_ohm)),
                 }
             }
         }
@@ -97,7 +91,34 @@ impl<'a> Plan<'a> {
             }
         }
         plan.marks.sort_unstable();
+        for (k, i, points, joint) in lines {
+            plan.line(k, i, points, joint);
+        }
         Ok(plan)
+    }
+
+    /// Draws a line joint: once for every interface that it passes on its way from the first sheet to the outside; a solid one joins all at once.
+    fn line(&mut self, k: ElectrodeId, i: u32, points: &[Point], joint: f64) {
+        let through = &self.problem.electrodes[k.index()].through;
+        let length: f64 = points.windows(2).map(|p| p[0].distance(p[1])).sum();
+        let per_length = 1.0 / (joint * length);
+        let bit = |l: &LayerId| 1u64 << l.0;
+        let (spot, within) = (self.mark(Mark::Spot(k, i)), self.mark(Mark::Within(k, i)));
+        let plans: Vec<LinePlan> = if joint == 0.0 {
+            vec![LinePlan { layers: through.iter().map(bit).fold(0, |all, b| all | b), touch: Touch::Held(k.0), mark: spot }]
+        } else {
+            let between = through.windows(2).map(|pair| LinePlan {
+                layers: bit(&pair[0]),
+                touch: Touch::Layer(bit(&pair[1]), per_length),
+                mark: within,
+            });
+            let outside = through.last().map(|last| LinePlan { layers: bit(last), touch: Touch::Pole(k.0, per_length), mark: spot });
+            between.chain(outside).collect()
+        };
+        for plan in plans {
+            self.lines.push(plan);
+            self.polylines.push(points.to_vec());
+        }
     }
 
     fn area(&mut self, meaning: Area, loops: Vec<Vec<Point>>) {
@@ -122,19 +143,8 @@ impl<'a> Plan<'a> {
     }
 
     /// What the lines do.
-    pub fn line_plans(&self) -> Vec<LinePlan> {
-        let plan = |(&(k, i), points): (&(ElectrodeId, u32), &Vec<Point>)| {
-            let electrode = &self.problem.electrodes[k.index()];
-            let length: f64 = points.windows(2).map(|p| p[0].distance(p[1])).sum();
-            let joint = electrode.spots[i as usize].joint_ohm;
-            LinePlan {
-                layer: electrode.through.last().map_or(0, |l| 1 << l.0),
-                pole: k.0,
-                per_length: (joint > 0.0).then(|| 1.0 / (joint * length)),
-                mark: self.mark(Mark::Spot(k, i)),
-            }
-        };
-        self.lines.iter().zip(&self.polylines).map(plan).collect()
+    pub fn line_plans(&self) -> &[LinePlan] {
+        &self.lines
     }
 
     /// What a cell with this cover consists of.

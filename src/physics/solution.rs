@@ -99,8 +99,6 @@ pub enum Fault {
     TooManyLayers(usize),
     /// More electrodes and tips than can be solved together.
     TooManyPorts(usize),
-    /// A line joint of a cell that passes several sheets.
-    LineThroughSheets(ElectrodeId),
     /// Two electrodes hold or touch one place.
     ElectrodesMeet([ElectrodeId; 2]),
     /// Metal that no electrode reaches.
@@ -148,7 +146,6 @@ impl fmt::Display for Fault {
             Self::TooManyPorts(n) => {
                 write!(f, "{n} electrodes and meter tips; at most {} can be solved together", super::pieces::MOST_PORTS)
             }
-            Self::LineThroughSheets(_) => write!(f, "a line cannot pass through several sheets"),
             Self::ElectrodesMeet(_) => write!(f, "two electrodes overlap or touch"),
             Self::Loose { at, .. } => write!(f, "the metal at ({}, {}) is connected to no electrode", at.x, at.y),
             Self::Unbalanced { sum, .. } => write!(f, "the currents on one connected piece add up to {sum} A, not to zero"),

@@ -218,7 +218,10 @@ pub fn job_of_all_kinds(rng: &mut Rng, bracket: f64) -> Problem {
             through.reverse();
         }
         let joint_ohm = joint(rng);
-        let spots = (0..rng.usize(1..3)).map(|i| Spot { footprint: disc(1.1 * i as f64, -3.4, 0.9), joint_ohm }).collect();
+        let line = |x: f64| Footprint::Line { points: vec![Point::new(x - 0.4, -3.4), Point::new(x + 0.4, -3.2)] };
+        let as_lines = rng.u8(0..3) == 0;
+        let footprint = |x: f64| if as_lines { line(x) } else { disc(x, -3.4, 0.9) };
+        let spots = (0..rng.usize(1..3)).map(|i| Spot { footprint: footprint(1.1 * i as f64), joint_ohm }).collect();
         let drive = current(rng);
         problem.electrodes.push(Electrode { name: "nugget".into(), kind: ElectrodeKind::Cell, group: None, through, spots, drive });
     }

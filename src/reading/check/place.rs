@@ -28,16 +28,19 @@ pub fn place(drawn: &[Drawn], layers: &[LayerId], stack: &Stack, who: &str, note
             Form::Disc(centre, diameter) => {
                 let area_mm2 = 0.25 * std::f64::consts::PI * diameter * diameter;
                 let region = disc(*centre, *diameter, stack);
-                area(spot, region, area_mm2, Some((*centre, *diameter)), layers, stack, &mut partly, notes)
+                let spread = Footprint::Area { region, area_mm2, centre: *centre, diameter_mm: Some(*diameter) };
+                area(spot, spread, layers, stack, &mut partly, notes)
             }
             Form::Seam(a, b, width) => {
                 let ring = Ring::seam(*a, *b, *width);
                 let (region, area_mm2) = (Region::from_rings([&ring]), ring.signed_area());
-                area(spot, region, area_mm2, Some((a.midpoint(*b), *width)), layers, stack, &mut partly, notes)
+                let spread = Footprint::Area { region, area_mm2, centre: a.midpoint(*b), diameter_mm: Some(*width) };
+                area(spot, spread, layers, stack, &mut partly, notes)
             }
             Form::Area(ring) => {
                 let (region, area_mm2) = (Region::from_rings([ring]), ring.signed_area().abs());
-                area(spot, region, area_mm2, None, layers, stack, &mut partly, notes)
+                let spread = Footprint::Area { centre: centroid(&region), region, area_mm2, diameter_mm: None };
+                area(spot, spread, layers, stack, &mut partly, notes)
             }
             Form::Line(points) => on_all(layers, stack, |metal, name| line(spot, points, metal, name, &mut moved, notes)),
             Form::Edge(points) => on_all(layers, stack, |metal, name| edge(spot, points, metal, name, &mut moved, notes)),
@@ -83,26 +86,17 @@ pub fn disc(centre: Point, diameter: f64, stack: &Stack) -> Region {
     }
 }
 
-fn area(
-    spot: &Drawn,
-    region: Region,
-    area_mm2: f64,
-    round: Option<(Point, f64)>,
-    layers: &[LayerId],
-    stack: &Stack,
-    partly: &mut Vec<f64>,
-    notes: &Notes,
-) -> Option<Footprint> {
-    let centre = round.map_or_else(|| centroid(&region), |r| r.0);
+fn area(spot: &Drawn, spread: Footprint, layers: &[LayerId], stack: &Stack, partly: &mut Vec<f64>, notes: &Notes) -> Option<Footprint> {
+    let Footprint::Area { region, centre, diameter_mm, .. } = &spread else { return Some(spread) };
     let mut least: f64 = 1.0;
     for &layer in layers {
         let (metal, name) = (stack.metal(layer)?, stack.name(layer));
-        if round.is_some() && !metal.contains(centre) && metal.rim_distance(centre) > ON {
+        if diameter_mm.is_some() && !metal.contains(*centre) && metal.rim_distance(*centre) > ON {
             let message = format!("the spot's centre ({}, {}) is off the metal of `{name}`", centre.x, centre.y);
             notes.fault(message, &spot.span, "a centre on the metal", "move the spot, or name the layer it stands on");
             return None;
         }
-        let part = metal.part_inside(&region);
+        let part = metal.part_inside(region);
         if part < 0.5 - 1e-6 {
             let message = format!("only {:.1} % of the spot at ({}, {}) is on the metal of `{name}`", 100.0 * part, centre.x, centre.y);
             notes.fault(message, &spot.span, "at least half of it on the metal", "move the spot, or make it smaller");
@@ -113,7 +107,7 @@ fn area(
     if least < 1.0 - 1e-6 {
         partly.push(least);
     }
-    Some(Footprint::Area { region, area_mm2, centre, diameter_mm: round.map(|r| r.1) })
+    Some(spread)
 }
 
 fn centroid(region: &Region) -> Point {
