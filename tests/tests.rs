@@ -7,6 +7,7 @@ mod demos;
 mod inventory;
 mod laws;
 mod network;
+mod outputs;
 mod pictures;
 mod published;
 mod refusals;
