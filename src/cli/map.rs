@@ -3,6 +3,7 @@
 use super::{Ending, explain, files, late, progress::Progress, terminal};
 use crate::diagnostic::{Fault, Remark};
 use crate::findings::{self, Findings, Verdict};
+use crate::physics;
 use crate::problem::Problem;
 use crate::progress::Stage;
 use crate::reading::{self, Reading};
@@ -82,7 +83,8 @@ fn mapped(request: &Request) -> Result<Mapped, Stop> {
     if let Some(percent) = request.bracket_percent {
         problem.accuracy.bracket = percent / 100.0;
     }
-    let found = findings::find_with(&problem, &|stage| progress.show(stage));
+    let listener = |stage| progress.show(stage);
+    let found = physics::fit(&mut problem, &listener).and_then(|()| findings::find_with(&problem, &listener));
     let mut found = found.map_err(|faults| match faults.iter().find(|f| late::is_ours(f)) {
         Some(ours) => Stop::Failed(ours.to_string()),
         None => Stop::Refused(faults.iter().map(|f| late::placed(f, &problem, &origins)).collect()),

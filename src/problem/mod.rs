@@ -6,7 +6,7 @@ pub mod material;
 pub mod stack;
 
 pub use electrode::{Drive, Electrode, ElectrodeKind, Source, Spot};
-pub use joint::{Contact, Footprint, Interface, Join};
+pub use joint::{Contact, Footprint, Interface, Join, Measured, MeasuredJoint};
 pub use material::{Material, Resistivity};
 pub use stack::Layer;
 
@@ -32,6 +32,8 @@ pub struct Problem {
     pub electrodes: Vec<Electrode>,
     /// Cells as voltage sources. Indexed by [`crate::index::SourceId`].
     pub sources: Vec<Source>,
+    /// Joints whose resistance is to be fitted to a reading.
+    pub measured: Vec<Measured>,
     /// Pairs of meter tips.
     pub probes: Vec<Probe>,
     /// Lines across which current is counted.
