@@ -213,7 +213,15 @@ fn sheets() -> Vec<(&'static str, Sheet)> {
     let mut crowded = necked(30);
     crowded.hotspots = (0..12).map(|k| hotspot(k + 1, 57.0 + 1.1 * (k % 4) as f64, 9.0 + 2.0 * (k / 4) as f64)).collect();
     crowded.names = (0..12).map(|k| (Point::new(60.0, 12.0), format!("electrode {k}"))).collect();
+    let mut bench = bar(120.0, 16.0, 20);
+    bench.tips = [(20.0, "middle +"), (70.0, "middle −"), (90.0, "half +"), (118.0, "half −")]
+        .map(|(x, words)| (Point::new(x, 8.0), words.to_string()))
+        .to_vec();
+    bench.crossings = vec![([Point::new(80.0, -40.0), Point::new(80.0, 60.0)], "line 6.00 A".to_string())];
+    bench.contacts = vec![rectangle(94.0, 2.0, 12.0, 12.0)];
+    bench.regions = bench.triangles.iter().map(|t| u32::from(bench.points[t[0] as usize].x >= 60.0)).collect();
     vec![
+        ("bench", sheet("Bench, tips and a line", vec![bench])),
         ("neck", sheet("Orchard sprayer 10s6p, link 4–5", vec![necked(35)])),
         ("two-layers", sheet("Orchard sprayer 10s6p, link 4–5, with a copper overlay", vec![necked(35), overlay()])),
         ("square", sheet("Square plate with a round hole", vec![holed(40.0, 7.0, 50)])),
@@ -262,7 +270,14 @@ fn what_matters_is_written() {
             }
         }
     }
-    let (_, neck) = sheets().swap_remove(0);
+    let named = |wanted: &str| sheets().into_iter().find(|(name, _)| *name == wanted).map(|(_, sheet)| sheet).unwrap();
+    let bench = layout(&named("bench")).unwrap();
+    for text in ["middle +", "middle −", "half +", "half −", "line 6.00 A", "dashed: area of contact"] {
+        assert!(bench.boxes.iter().any(|b| b.text == text), "{text}");
+    }
+    let line = bench.boxes.iter().find(|b| b.text == "line 6.00 A").unwrap().area;
+    assert!(line.top > 0.0 && line.bottom < 420.0, "a line drawn far beyond the metal has its words near the metal: {line:?}");
+    let neck = named("neck");
     let placed = layout(&neck).unwrap();
     for text in ["9.8 A", "10.0 A", "10.2 A", "lug", "cell 1"] {
         assert!(placed.boxes.iter().any(|b| b.text == text), "{text}");
@@ -271,7 +286,7 @@ fn what_matters_is_written() {
 
 #[test]
 fn amperes_of_very_many_spots_are_left_to_the_table() {
-    let (_, many) = sheets().swap_remove(3);
+    let (_, many) = sheets().into_iter().find(|(name, _)| *name == "200-spots").unwrap();
     let placed = layout(&many).unwrap();
     assert!(!placed.boxes.iter().any(|b| b.text == "1.50 A"));
 }

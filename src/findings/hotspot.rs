@@ -5,9 +5,11 @@ use super::kind::{self, Character, Outline};
 use super::metal::{LayerMetal, Place};
 use super::section::{self, Section};
 use super::summit;
+use super::verdict::TIGHT_FROM;
 use super::{Hotspot, HotspotKind};
 use crate::geometry::Point;
 use crate::index::LayerId;
+use crate::mesh::NONE;
 use crate::physics::Solution;
 use crate::physics::adapt::{FineDisc, RESOLVED};
 use crate::physics::plan::Plan;
@@ -26,8 +28,11 @@ const NEARLY: f64 = 1.03;
 /// Width of a spot's surroundings in gauge diameters.
 const AROUND: f64 = 4.0;
 
-/// Places below this part of their sheet's highest are not looked at.
+/// Places below this part of their sheet's highest are not looked at, unless they come near the sheet's limit.
 const FLOOR: f64 = 0.25;
+
+/// A strip's row stands where |J| is above this part of its piece's highest.
+const LEVEL: f64 = 0.95;
 
 /// Peaks nearer to each other than this are ranked by place, so that the two sides of a symmetric part do not change places with the mesh.
 const EQUAL: f64 = 0.01;
@@ -166,7 +171,7 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
         // On a coarse mesh a row to be may still look flat.
         found.extend(candidates.into_iter().filter(|c| c.excess >= NEARLY).map(|c| (metal.layer, c)));
     }
-    let limit = |l: LayerId| problem.limits.density_a_mm2.get(l.index()).copied().flatten();
+    let limit = |l: LayerId| limit_of(problem, l);
     // Rows with a limit come first: peaks and parts of a limit cannot be compared.
     let score = |(l, c): &(LayerId, Candidate)| limit(*l).map_or((1, c.peak), |limit| (0, c.peak / limit));
     found.sort_by(|a, b| score(a).0.cmp(&score(b).0).then(score(b).1.total_cmp(&score(a).1)));
@@ -192,22 +197,27 @@ pub fn survey(problem: &Problem, solution: &Solution, density: &DensityField) ->
     survey
 }
 
-/// Places of one sheet that differ, highest first, whether they exceed their surroundings or not.
+fn limit_of(problem: &Problem, layer: LayerId) -> Option<f64> {
+    problem.limits.density_a_mm2.get(layer.index()).copied().flatten()
+}
+
+/// Places of one sheet that differ, highest first, whether they exceed their surroundings or not; at least one per connected piece that carries
+/// current worth a row.
 fn candidates_of(setting: &Setting, metal: &LayerMetal) -> Vec<Candidate> {
     let (total, area) = metal.triangles.iter().filter(|t| !t.held).fold((0.0, 0.0), |(s, a), t| (s + t.area * t.magnitude, a + t.area));
     if total <= 0.0 {
         return Vec::new();
     }
-    let starts = match summit::starts(setting, metal, total / area, FLOOR) {
-        Some(starts) => starts,
-        None => return strip(setting, metal).into_iter().collect(),
-    };
+    // What breaks a limit or comes near it has a row, however much higher the sheet's highest place is.
+    let near_limit = limit_of(setting.problem, metal.layer).map_or(f64::INFINITY, |limit| TIGHT_FROM * limit);
+    let least = |highest: f64| (FLOOR * highest).min(near_limit);
+    let starts = summit::starts(setting, metal, total / area, &least).unwrap_or_default();
     let mut climbed: Vec<(f64, Place)> =
         starts.par_iter().map_init(|| Disc::new(metal), |disc, &start| disc.climb(start, &|_| true)).collect();
     climbed.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.triangle.cmp(&b.1.triangle)));
     let mut apart: Vec<(f64, Place)> = Vec::new();
     for c in climbed {
-        if c.0 >= FLOOR * apart.first().map_or(0.0, |f| f.0) && apart.iter().all(|a| a.1.point.distance(c.1.point) >= metal.gauge) {
+        if c.0 >= least(apart.first().map_or(0.0, |f| f.0)) && apart.iter().all(|a| a.1.point.distance(c.1.point) >= metal.gauge) {
             apart.push(c);
         }
     }
@@ -231,31 +241,84 @@ fn candidates_of(setting: &Setting, metal: &LayerMetal) -> Vec<Candidate> {
             row.twins = twins;
         }
     }
-    if !kept.iter().any(|c| c.excess >= CROWDING) {
-        // Nothing stands out: the sheet is a strip, or crowds current in a way that has no name.
-        if let Some(mut strip) = strip(setting, metal) {
-            let peak = kept.first().map_or(strip.peak, |c| c.peak);
-            if peak <= 1.1 * strip.peak {
-                strip.peak = strip.peak.max(peak.min(strip.peak * CROWDING));
-                return vec![strip];
-            }
+    let everywhere: Vec<u32> = (0..metal.triangles.len() as u32).collect();
+    let pieces = connected(metal, &everywhere);
+    let mut piece_of = vec![0; metal.triangles.len()];
+    for (number, piece) in pieces.iter().enumerate() {
+        piece.iter().for_each(|&t| piece_of[t as usize] = number);
+    }
+    let mut strips: Vec<(usize, Candidate)> = Vec::new();
+    for (number, piece) in pieces.iter().enumerate() {
+        let here = |c: &Candidate| piece_of[c.place.triangle as usize] == number;
+        if kept.iter().any(|c| here(c) && c.excess >= CROWDING) {
+            continue;
         }
-        if let Some(first) = kept.first_mut() {
-            first.excess = f64::INFINITY;
+        // Nothing stands out: the piece is a strip, or crowds current in a way that is not told from its surroundings.
+        let first = kept.iter_mut().find(|c| here(c));
+        match (strip(setting, metal, piece), first) {
+            (Some(mut strip), first) if first.as_ref().is_none_or(|f| f.peak <= 1.1 * strip.peak) => {
+                strip.peak = strip.peak.max(first.map_or(0.0, |f| f.peak.min(strip.peak * CROWDING)));
+                strips.push((number, strip));
+            }
+            (_, Some(first)) => first.excess = f64::INFINITY,
+            _ => {}
         }
     }
+    kept.retain(|c| strips.iter().all(|(number, _)| piece_of[c.place.triangle as usize] != *number));
+    kept.extend(strips.into_iter().map(|s| s.1));
+    let highest = kept.iter().map(|c| c.peak).fold(0.0, f64::max);
+    kept.retain(|c| c.peak >= least(highest));
     kept
 }
 
-/// The one row of a sheet without hotspots: in the middle of its metal.
-fn strip(setting: &Setting, metal: &LayerMetal) -> Option<Candidate> {
-    let free = || metal.triangles.iter().filter(|t| !t.held);
-    let area: f64 = free().map(|t| t.area).sum();
-    let middle = free().fold(Point::default(), |s, t| s + t.middle() * (t.area / area));
-    let place = metal.locate(middle, 1e-6).or_else(|| {
-        let nearest = free().min_by(|a, b| a.middle().distance(middle).total_cmp(&b.middle().distance(middle)))?;
-        metal.locate(nearest.middle(), 1e-6)
-    })?;
+/// The parts of some triangles of a sheet that hang together, in the order of their first triangles.
+fn connected(metal: &LayerMetal, triangles: &[u32]) -> Vec<Vec<u32>> {
+    let mut waiting = vec![false; metal.triangles.len()];
+    triangles.iter().for_each(|&t| waiting[t as usize] = true);
+    let mut parts = Vec::new();
+    for &first in triangles {
+        if !std::mem::take(&mut waiting[first as usize]) {
+            continue;
+        }
+        let mut part = vec![first];
+        let mut next = 0;
+        while next < part.len() {
+            let neighbours = metal.at(part[next]).neighbours;
+            part.extend(neighbours.into_iter().filter(|&n| n != NONE && std::mem::take(&mut waiting[n as usize])));
+            next += 1;
+        }
+        parts.push(part);
+    }
+    parts
+}
+
+/// The one row of a piece without hotspots: in the middle of the stretch that carries most; `None` where no current flows.
+fn strip(setting: &Setting, metal: &LayerMetal, piece: &[u32]) -> Option<Candidate> {
+    let magnitude = |t: u32| if metal.at(t).held { 0.0 } else { metal.at(t).magnitude };
+    let area = |part: &[u32]| part.iter().map(|&t| metal.at(t).area).sum::<f64>();
+    let highest = piece.iter().map(|&t| magnitude(t)).fold(0.0, f64::max);
+    if highest <= 0.0 {
+        return None;
+    }
+    let level: Vec<u32> = piece.iter().copied().filter(|&t| magnitude(t) >= LEVEL * highest).collect();
+    let stretches: Vec<(Vec<u32>, f64)> = connected(metal, &level)
+        .into_iter()
+        .map(|part| {
+            let a = area(&part);
+            (part, a)
+        })
+        .collect();
+    let middle =
+        |(part, area): &(Vec<u32>, f64)| part.iter().fold(Point::default(), |s, &t| s + metal.at(t).middle() * (metal.at(t).area / area));
+    let largest = stretches.iter().map(|s| s.1).fold(0.0, f64::max);
+    // Of equal stretches the one to the left.
+    let equals = stretches.iter().filter(|s| s.1 >= 0.99 * largest);
+    let stretch = equals.min_by(|a, b| middle(a).x.total_cmp(&middle(b).x))?;
+    let middle = middle(stretch);
+    let nearest =
+        *stretch.0.iter().min_by(|&&a, &&b| metal.at(a).middle().distance(middle).total_cmp(&metal.at(b).middle().distance(middle)))?;
+    let start = Place { triangle: nearest, point: metal.at(nearest).middle() };
+    let place = metal.moved(start, middle);
     let rims = vec![(0.0, 0.0); setting.plan.areas.len()];
     let mut disc = Disc::new(metal);
     let peak = disc.mean(place, metal.gauge).mean;
@@ -282,6 +345,10 @@ fn candidate(setting: &Setting, metal: &LayerMetal, rims: &[(f64, f64)], disc: &
         section = section::best_cut(metal, &places, setting.most, covered.direction);
     }
     let character = kind::character(setting, metal, &touched, place, section.as_ref());
+    if character.kind == HotspotKind::Neck {
+        // The peak lies in the fillet, where the neck is a little wider than at its narrowest.
+        section = section.map(|s| section::narrowest(metal, s));
+    }
     let excess = match character.kind {
         HotspotKind::Neck => f64::INFINITY,
         HotspotKind::WeldRim => peak / around.mean,

@@ -9,7 +9,8 @@
 //!    narrower. Beside a hole it must also be narrow against that hole ([`HOLE_TO_NECK`]); else the hole's edge is what crowds the current;
 //! 5. *inside corner*: a re-entrant corner, or a fillet (an arc with metal outside it) of a radius up to [`FILLET`] section widths;
 //! 6. *hole edge*: the edge of a hole is in reach;
-//! 7. *other*. (*strip* is given where a sheet has no hotspot at all.)
+//! 7. what is left crowds at a polygon drawn for a bend (the outline is in reach: *inside corner*), above the end of another sheet (*overlay end*)
+//!    or around a terminal (*terminal edge*). (*strip* is given where a piece of metal has no hotspot at all.)
 
 use super::HotspotKind;
 use super::gauge::Disc;
@@ -74,6 +75,14 @@ struct OutlineRing {
     hole: bool,
     /// The larger side of its box.
     size: f64,
+}
+
+impl OutlineRing {
+    /// True where a point is this near to it.
+    fn meets(&self, point: Point, within: f64) -> bool {
+        let mut edges = (0..self.points.len()).map(|i| (self.points[i], self.points[(i + 1) % self.points.len()]));
+        edges.any(|(a, b)| nearest_on_segment(a, b, point).distance(point) <= within)
+    }
 }
 
 #[derive(Debug, Clone, Copy)]
@@ -164,6 +173,11 @@ impl Outline {
     /// Those within reach of a point.
     pub fn corners_near(&self, point: Point, reach: f64) -> impl Iterator<Item = Point> + Clone {
         self.sharp_places().filter(move |c| c.distance(point) <= reach)
+    }
+
+    /// True where the edge of the metal is within reach of a point.
+    fn rim_in_reach(&self, point: Point, reach: f64) -> bool {
+        self.rings.iter().any(|r| r.meets(point, reach))
     }
 }
 
@@ -268,7 +282,7 @@ pub fn character(setting: &Setting, metal: &LayerMetal, touched: &Touched, place
     let (problem, outline) = (setting.problem, &setting.outlines[metal.layer.index()]);
     let reach = REACH * metal.gauge;
     let p = place.point;
-    let mut character = Character { kind: HotspotKind::Other, spot: None, ring: None, fillet: None, singular: false, coarse: false };
+    let mut character = Character { kind: HotspotKind::TerminalEdge, spot: None, ring: None, fillet: None, singular: false, coarse: false };
     let small = |length: f64| length < THIN * metal.thickness;
     let line_end = outline.line_ends.iter().find(|e| e.0.distance(p) <= reach);
     let corner =
@@ -283,12 +297,7 @@ pub fn character(setting: &Setting, metal: &LayerMetal, touched: &Touched, place
     };
     character.fillet = outline.fillets.iter().position(on_fillet);
     let fillet = character.fillet.map(|f| &outline.fillets[f]);
-    let on_ring = |point: Point, within: f64| {
-        outline.rings.iter().enumerate().filter(|(_, r)| r.hole).find(|(_, r)| {
-            (0..r.points.len())
-                .any(|i| nearest_on_segment(r.points[i], r.points[(i + 1) % r.points.len()], point).distance(point) <= within)
-        })
-    };
+    let on_ring = |point: Point, within: f64| outline.rings.iter().enumerate().find(|(_, r)| r.hole && r.meets(point, within));
     let hole = on_ring(p, reach).map(|(i, _)| i);
     character.ring = corner.map(|c| c.ring).or(fillet.map(|f| f.ring)).or(hole);
     character.singular = corner.is_some();
@@ -318,10 +327,15 @@ pub fn character(setting: &Setting, metal: &LayerMetal, touched: &Touched, place
             return character;
         }
     }
+    let covered = || problem.contacts.iter().any(|c| c.between.contains(&metal.layer));
     if corner.is_some() || fillet.is_some() {
         character.kind = HotspotKind::InsideCorner;
     } else if hole.is_some() {
         character.kind = HotspotKind::HoleEdge;
+    } else if outline.rim_in_reach(p, reach) {
+        character.kind = HotspotKind::InsideCorner;
+    } else if covered() {
+        character.kind = HotspotKind::OverlayEnd;
     }
     character
 }

@@ -253,12 +253,9 @@ pub enum HotspotKind {
     /// The end of a sheet that lies on another.
     #[serde(rename = "overlay end")]
     OverlayEnd,
-    /// No crowding at all.
+    /// No crowding at all: one row per connected piece.
     #[serde(rename = "strip")]
     Strip,
-    /// None of these.
-    #[serde(rename = "other")]
-    Other,
 }
 
 /// One meter reading.

@@ -103,6 +103,33 @@ pub fn best_cut(metal: &LayerMetal, places: &[Place], most: f64, flow: Point) ->
     Some(section)
 }
 
+/// The narrowest cut of a neck near a cut through it: along the current to at most one width away, while the mean density rises.
+pub fn narrowest(metal: &LayerMetal, start: Section) -> Section {
+    let mean = |s: &Section| s.current.abs() / s.width;
+    let across = start.across();
+    let at = |shift: f64, turn: f64| {
+        let place = metal.moved(start.middle, start.middle.point + across * shift);
+        let angle = start.along.y.atan2(start.along.x) + turn;
+        let mut section = cut(metal, place, angle, 2.0 * start.width)?;
+        section.middle = metal.moved(place, section.ends[0].midpoint(section.ends[1]));
+        Some((section, shift, turn))
+    };
+    let mut best = (start, 0.0, 0.0);
+    let (mut step, mut angle) = (0.25 * start.width, 0.05);
+    while step > 2e-4 * start.width {
+        let (_, shift, turn) = best;
+        let tried =
+            [(step, 0.0), (-step, 0.0), (0.0, angle), (0.0, -angle), (step, angle), (step, -angle), (-step, angle), (-step, -angle)];
+        let tried = tried.into_iter().map(|(s, a)| (shift + s, turn + a)).filter(|(s, _)| s.abs() <= start.width);
+        let better = tried.filter_map(|(s, a)| at(s, a)).find(|(s, ..)| mean(s) > mean(&best.0) * (1.0 + 1e-6));
+        match better {
+            Some(found) => best = found,
+            None => (step, angle) = (0.5 * step, 0.5 * angle),
+        }
+    }
+    best.0
+}
+
 /// Width of the metal through a place along a direction.
 pub fn width_through(metal: &LayerMetal, place: Place, along: Point) -> f64 {
     [along, -along].into_iter().map(|way| metal.walk(place, way, f64::INFINITY, |_| true).length).sum()

@@ -331,3 +331,62 @@ fn the_same_job_gives_the_same_bytes_on_one_and_two_threads() {
     };
     assert_eq!(on(1), on(2));
 }
+
+#[test]
+fn the_width_of_a_neck_is_its_least_and_not_that_at_the_fillet() {
+    // A notch with round inner corners leaves 4 of 10 mm over a length of 3 mm; the peak lies in a fillet, where the metal is wider.
+    let quarter = -(std::f64::consts::PI / 8.0).tan();
+    let ring = bulged(&[
+        (0.0, 0.0, 0.0),
+        (40.0, 0.0, 0.0),
+        (40.0, 10.0, 0.0),
+        (22.5, 10.0, 0.0),
+        (22.5, 5.0, quarter),
+        (21.5, 4.0, 0.0),
+        (18.5, 4.0, quarter),
+        (17.5, 5.0, 0.0),
+        (17.5, 10.0, 0.0),
+        (0.0, 10.0, 0.0),
+    ]);
+    let (.., survey) = surveyed(&strip_job(vec![ring], 40.0, 10.0, 1e-3, 0.5));
+    let row = &survey.rows[0];
+    assert_eq!((survey.rows.len(), row.kind), (1, HotspotKind::Neck));
+    assert!(row.y_mm > 3.9 && (row.x_mm < 18.6 || row.x_mm > 21.4), "the peak is in a fillet: {row:?}");
+    near(row.width_mm.unwrap(), 4.0, 2e-4);
+    near(row.section_a.unwrap(), 10.0, 1e-6);
+}
+
+/// Two strips of one sheet that are not connected, each with a notch that leaves 1 and 8 mm of 10.
+fn two_necks() -> Problem {
+    let strip = |y: f64, left: f64| {
+        let low = y + 10.0 - left;
+        polygon(&[(0.0, y), (14.0, y), (14.0, low), (16.0, low), (16.0, y), (30.0, y), (30.0, y + 10.0), (0.0, y + 10.0)])
+    };
+    let ends = |y: f64| terminals(line(&[(0.0, y), (0.0, y + 10.0)]), line(&[(30.0, y), (30.0, y + 10.0)]), 0, 10.0);
+    let electrodes = ends(0.0).into_iter().chain(ends(20.0)).collect();
+    problem(vec![sheet("a", vec![strip(0.0, 1.0), strip(20.0, 8.0)], 1.0)], electrodes, 1e-3, 0.5)
+}
+
+#[test]
+fn a_place_that_breaks_the_limit_has_a_row_however_high_another_is() {
+    let mut job = two_necks();
+    let widths = |job: &Problem| -> Vec<f64> { surveyed(job).2.rows.iter().map(|r| r.width_mm.unwrap().round()).collect() };
+    assert_eq!(widths(&job), [1.0], "below a quarter of the highest");
+    // The second neck's peak is about 2 A/mm².
+    for (limit, expected) in [(2.0, vec![1.0, 8.0]), (8.0, vec![1.0])] {
+        job.limits.density_a_mm2 = vec![Some(limit)];
+        assert_eq!(widths(&job), expected, "limit {limit}");
+    }
+}
+
+#[test]
+fn every_uniform_piece_of_a_sheet_has_a_strip_row_in_its_middle() {
+    // Two strips of one sheet; the second carries three quarters of what the first does.
+    let strip = |y: f64| polygon(&[(0.0, y), (60.0, y), (60.0, y + 10.0), (0.0, y + 10.0)]);
+    let ends = |y: f64, i: f64| terminals(line(&[(0.0, y), (0.0, y + 10.0)]), line(&[(60.0, y), (60.0, y + 10.0)]), 0, i);
+    let electrodes = ends(0.0, 10.0).into_iter().chain(ends(20.0, 7.5)).collect();
+    let (.., survey) = surveyed(&problem(vec![sheet("a", vec![strip(0.0), strip(20.0)], 1.0)], electrodes, 1e-3, 0.5));
+    let found: Vec<_> = survey.rows.iter().map(|r| (r.kind, r.y_mm.round(), (100.0 * r.peak_a_mm2).round())).collect();
+    assert_eq!(found, [(HotspotKind::Strip, 5.0, 100.0), (HotspotKind::Strip, 25.0, 75.0)]);
+    assert!(survey.rows.iter().all(|r| (r.x_mm - 30.0).abs() < 0.01 && (r.crowding.unwrap() - 1.0).abs() < 1e-6));
+}

@@ -94,8 +94,8 @@ impl Nodes {
 }
 
 /// The places of a sheet to look at closely; `None` where |J| is nowhere above its mean (given) by more than the prominence asked of a place: a strip.
-/// Places below a part (`floor`) of the highest are left out.
-pub fn starts(setting: &Setting, metal: &LayerMetal, mean: f64, floor: f64) -> Option<Vec<Place>> {
+/// Places below `least` of the highest are left out.
+pub fn starts(setting: &Setting, metal: &LayerMetal, mean: f64, least: &dyn Fn(f64) -> f64) -> Option<Vec<Place>> {
     let mesh = &setting.solution.mesh;
     let nodes = Nodes::new(mesh, metal);
     let highest = nodes.value.iter().fold(0.0, |m: f64, &v| m.max(v));
@@ -104,7 +104,7 @@ pub fn starts(setting: &Setting, metal: &LayerMetal, mean: f64, floor: f64) -> O
     }
     // Measured by its gauge mean: the value at a vertex grows without end where triangles get smaller at a corner.
     let top = (0..nodes.value.len()).rfind(|&v| nodes.value[v] == highest).and_then(|v| nodes.place(mesh, metal, v as u32));
-    let least = floor * top.map_or(0.0, |place| Disc::new(metal).mean(place, metal.gauge).mean).min(highest);
+    let least = least(top.map_or(0.0, |place| Disc::new(metal).mean(place, metal.gauge).mean).min(highest));
     Some(thinned(setting, metal, &nodes, nodes.summits(mesh, metal, least)))
 }
 

@@ -6,7 +6,7 @@ use crate::problem::{ElectrodeKind, Problem};
 use std::collections::BTreeMap;
 
 /// Up to this part of the limit a verdict is PASS.
-const TIGHT_FROM: f64 = 0.8;
+pub const TIGHT_FROM: f64 = 0.8;
 
 /// One verdict per limit that a job can have; those without a limit or a figure are NOT CHECKED.
 pub fn verdicts(problem: &Problem, solution: &Solution, findings: &Findings) -> Vec<VerdictFinding> {

@@ -172,7 +172,7 @@ impl Rounds<'_> {
         let Some(answer) = answer.filter(|_| finer.is_none()) else { return Ok(Outcome { solution: None, wanted, finer }) };
         let (passed, layer_loss) = account(problem, plan, &mesh, &complex, &potential, &flux);
         self.record.unknowns = complex.order();
-        self.record.reached = loss_enclosed && answer.excess <= 1.0 && answer.residual <= network::LARGEST_RESIDUAL;
+        self.record.reached = answer.excess <= 1.0 && answer.residual <= network::LARGEST_RESIDUAL;
         self.record.voltage_spread = answer.voltage_spread;
         self.record.residual = answer.residual;
         let solution = Solution {

@@ -10,9 +10,10 @@ use super::legend::{self, GREY, INK, Legend};
 use super::lettering::{Lettering, Weight};
 use super::notes::{Notes, SEA};
 use super::place::Spot;
-use super::scale::Scale;
+use super::scale::{Potentials, Scale};
 use super::view::View;
 use super::{Panel, Sheet};
+use rayon::prelude::*;
 
 /// Lines over light and over dark metal.
 const OVER_LIGHT: Ink = Ink::thin([44, 42, 58], 0.62);
@@ -28,7 +29,7 @@ pub struct Scene<'a> {
 
 /// Composes a sheet whose lists were checked.
 pub fn compose<'a>(sheet: &'a Sheet, lettering: &Lettering) -> Scene<'a> {
-    let scale = Scale::new(&sheet.panels);
+    let scale = Scale::new(&sheet.panels, sheet.peak);
     let ramp = Ramp::new();
     let headings: Vec<f64> = sheet.panels.iter().map(|p| heading_width(p, lettering)).collect();
     // A page to try on: how high title and legend become does not depend on the rest.
@@ -39,13 +40,14 @@ pub fn compose<'a>(sheet: &'a Sheet, lettering: &Lettering) -> Scene<'a> {
         legend.write(&mut Drawing::new(PAGE_WIDTH as u32, 4000), [MARGIN, 100.0], width, beside) - 100.0
     };
     let page = arrange(&sheet.panels, &headings, top, legend_height);
-    let views: Vec<View<'a>> = sheet.panels.iter().zip(&page.frames).map(|(panel, &frame)| View::new(panel, frame, &scale)).collect();
+    let views: Vec<View<'a>> = sheet.panels.par_iter().zip(&page.frames).map(|(panel, &frame)| View::new(panel, frame, &scale)).collect();
 
     let mut drawing = Drawing::new(PAGE_WIDTH as u32, page.height as u32);
     legend::title(&mut drawing, lettering, sheet, MARGIN);
     let per_mm = page.frames.first().map_or(1.0, |frame| frame.scale);
     Legend { sheet, scale: &scale, per_mm, lettering }.write(&mut drawing, page.legend.0, page.legend.1, page.beside);
-    let mut lines: Vec<Vec<Contour>> = views.iter().map(|view| equipotentials(view, &scale)).collect();
+    let mut lines: Vec<Vec<Contour>> =
+        views.par_iter().zip(&scale.potentials).map(|(view, own)| own.map_or(Vec::new(), |own| equipotentials(view, own))).collect();
     for view in &views {
         heading(&mut drawing, lettering, view);
     }
@@ -56,9 +58,10 @@ pub fn compose<'a>(sheet: &'a Sheet, lettering: &Lettering) -> Scene<'a> {
     notes.widths(&mut drawing);
     notes.amperes(&mut drawing);
     notes.names(&mut drawing);
-    if let Some(step) = scale.potential_step {
-        for (view, lines) in views.iter().zip(&mut lines) {
-            notes.potentials(&mut drawing, view, lines, step);
+    notes.readings(&mut drawing);
+    for ((view, lines), own) in views.iter().zip(&mut lines).zip(&scale.potentials) {
+        if let Some(own) = own {
+            notes.potentials(&mut drawing, view, lines, own.step);
         }
     }
     // What lies below the words is drawn first but chosen last: strokes keep off words.
@@ -114,9 +117,8 @@ fn over_metal(drawing: &mut Drawing, view: &View<'_>, ramp: &Ramp, lines: impl I
     }
 }
 
-fn equipotentials(view: &View<'_>, scale: &Scale) -> Vec<Contour> {
-    let Some(step) = scale.potential_step.filter(|_| !view.panel.potential_mv.is_empty()) else { return Vec::new() };
-    let mut lines = contours(&view.corners, &view.panel.triangles, &view.panel.potential_mv, step, scale.potential_levels);
+fn equipotentials(view: &View<'_>, own: Potentials) -> Vec<Contour> {
+    let mut lines = contours(&view.corners, &view.panel.triangles, &view.panel.potential_mv, own.step, own.levels);
     for contour in &mut lines {
         contour.line = thinned(&contour.line, 1.5);
     }
@@ -138,6 +140,11 @@ fn shapes(drawing: &mut Drawing, view: &View<'_>) {
         drawing.marks.push(Mark::Lines(hatch(&rim, 9.0), 1.2, Ink::thin(SEA, 0.8)));
         drawing.marks.push(Mark::Loop(rim, 1.4, Ink::full(SEA)));
     }
+    for contact in &view.panel.contacts {
+        let dashes = dashed(&view.frame.all(contact), 7.0);
+        drawing.marks.push(Mark::Lines(dashes.clone(), 3.0, Ink::thin([255; 3], 0.6)));
+        drawing.marks.push(Mark::Lines(dashes, 1.2, Ink::full(INK)));
+    }
     for rim in &view.panel.loops {
         drawing.marks.push(Mark::Loop(view.frame.all(rim), 2.2, Ink::full(INK)));
     }
@@ -151,6 +158,33 @@ fn shapes(drawing: &mut Drawing, view: &View<'_>) {
         drawing.marks.push(Mark::Loop(rim.clone(), 2.2 * width, Ink::thin([255; 3], 0.75)));
         drawing.marks.push(Mark::Loop(rim, width, Ink::full(SEA)));
     }
+}
+
+/// A closed loop in dashes of about this length in px, as long as the gaps between them.
+fn dashed(rim: &[Spot], length: f64) -> Vec<Vec<Spot>> {
+    let closed: Vec<Spot> = rim.iter().chain(rim.first()).copied().collect();
+    let total: f64 = closed.windows(2).map(|w| (w[1][0] - w[0][0]).hypot(w[1][1] - w[0][1])).sum();
+    let dash = 0.5 * total / (0.5 * total / length).round().clamp(1.0, 5e3);
+    let mut dashes: Vec<Vec<Spot>> = Vec::new();
+    let mut passed = 0.0;
+    for pair in closed.windows(2) {
+        let step = (pair[1][0] - pair[0][0]).hypot(pair[1][1] - pair[0][1]);
+        let at = |s: f64| [0, 1].map(|i| pair[0][i] + (pair[1][i] - pair[0][i]) * ((s - passed) / step).clamp(0.0, 1.0));
+        let mut number = (passed / dash) as usize;
+        while step > 0.0 && number as f64 * dash < passed + step {
+            let (from, to) = (passed.max(number as f64 * dash), (passed + step).min((number + 1) as f64 * dash));
+            if number.is_multiple_of(2) && to > from {
+                match dashes.last_mut() {
+                    // A dash goes on around a corner.
+                    Some(last) if from == passed && passed > number as f64 * dash => last.push(at(to)),
+                    _ => dashes.push(vec![at(from), at(to)]),
+                }
+            }
+            number += 1;
+        }
+        passed += step;
+    }
+    dashes
 }
 
 /// Slanting lines inside a loop, at this distance in px.
@@ -180,6 +214,16 @@ fn hatch(rim: &[Spot], distance: f64) -> Vec<Vec<Spot>> {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn dashes_cover_half_of_a_loop_and_go_around_its_corners() {
+        let rim = [[0.0, 0.0], [90.0, 0.0], [90.0, 60.0], [0.0, 60.0]];
+        let dashes = dashed(&rim, 7.0);
+        let length = |line: &Vec<Spot>| line.windows(2).map(|w| (w[1][0] - w[0][0]).hypot(w[1][1] - w[0][1])).sum::<f64>();
+        assert!((dashes.iter().map(length).sum::<f64>() - 150.0).abs() < 1e-9);
+        assert!(dashes.iter().all(|d| (length(d) - length(&dashes[0])).abs() < 1e-9), "{dashes:?}");
+        assert!(dashed(&[], 7.0).is_empty());
+    }
 
     #[test]
     fn hatching_stays_inside_and_covers_a_notched_loop() {

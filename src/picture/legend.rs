@@ -149,15 +149,18 @@ impl Legend<'_> {
         drawing.marks.push(Mark::Lines(ends.to_vec(), 1.6, Ink::full(INK)));
         drawing.left_aligned(self.lettering, &format!("{} mm", with_step(length, length)), [right + 12.0, y + 5.5], plain(16.0, INK));
         let mut lines = vec!["seen from above, drawing y up".to_string()];
-        let with_lines = self.sheet.panels.iter().any(|p| !p.potential_mv.is_empty());
-        if let Some(step) = self.scale.potential_step.filter(|_| with_lines) {
-            lines.push(format!("thin lines: equal potential, every {} mV", with_step(step, step)));
-        }
+        lines.extend(self.equipotentials());
         if self.sheet.panels.iter().any(|p| !p.flow.is_empty()) {
             lines.push("arrows: direction of the current".to_string());
         }
         if self.sheet.panels.iter().flat_map(|p| &p.hotspots).any(|h| h.neck.is_some()) {
             lines.push("widths of necks in mm".to_string());
+        }
+        if self.sheet.panels.iter().any(|p| !p.contacts.is_empty()) {
+            lines.push("dashed: area of contact".to_string());
+        }
+        if self.sheet.panels.iter().any(|p| !p.tips.is_empty()) {
+            lines.push("crosses: tips of meters, + and − with their names".to_string());
         }
         let mut base = y + 12.0;
         for line in lines.iter().flat_map(|l| self.lettering.wrapped(l, 15.0, Weight::Regular, width)) {
@@ -165,6 +168,23 @@ impl Legend<'_> {
             drawing.left_aligned(self.lettering, &line, [left, base], plain(15.0, GREY));
         }
         base + 4.0
+    }
+
+    /// The step of the equipotentials, of each panel where they differ.
+    fn equipotentials(&self) -> Option<String> {
+        let steps: Vec<(&str, String)> = self
+            .sheet
+            .panels
+            .iter()
+            .zip(&self.scale.potentials)
+            .filter_map(|(p, own)| own.map(|own| (p.name.as_str(), with_step(own.step, own.step))))
+            .collect();
+        let (_, first) = steps.first()?;
+        if steps.iter().all(|(_, step)| step == first) {
+            return Some(format!("thin lines: equal potential, every {first} mV"));
+        }
+        let each: Vec<String> = steps.iter().take(4).map(|(name, step)| format!("{step} mV on {name}")).collect();
+        Some(format!("thin lines: equal potential, every {}", each.join(", ")))
     }
 
     fn footer(&self, drawing: &mut Drawing, at: Spot, width: f64) -> f64 {

@@ -57,6 +57,8 @@ pub struct Panel {
     pub triangles: Vec<[u32; 3]>,
     /// Per triangle: what the colour shows, usually the current density in A/mm².
     pub values: Vec<f64>,
+    /// Per triangle: the region it lies in; the colour jumps where regions meet and is smooth elsewhere. Empty for one region.
+    pub regions: Vec<u32>,
     /// Per point: potential, mV; empty for no equipotentials.
     pub potential_mv: Vec<f64>,
     /// Per triangle: the current's direction; only the direction is used. Empty for no arrows.
@@ -67,6 +69,12 @@ pub struct Panel {
     pub lines: Vec<Vec<Point>>,
     /// Terminals that are areas; hatched.
     pub patches: Vec<Vec<Point>>,
+    /// Areas of contact with another sheet; dashed.
+    pub contacts: Vec<Vec<Point>>,
+    /// Tips of meters with their words: `middle +`.
+    pub tips: Vec<(Point, String)>,
+    /// Lines across which current is counted, with their words: `one 16.8 A`.
+    pub crossings: Vec<([Point; 2], String)>,
     /// Names of electrodes and where they belong.
     pub names: Vec<(Point, String)>,
     /// Hotspots, worst first.
@@ -192,14 +200,16 @@ fn check(sheet: &Sheet) -> Result<(), PictureFault> {
         if p.values.len() != p.triangles.len()
             || !fits(p.potential_mv.len(), known)
             || !fits(p.flow.len(), p.triangles.len())
+            || !fits(p.regions.len(), p.triangles.len())
             || p.triangles.iter().flatten().any(|&corner| corner as usize >= known)
         {
             return Err(PictureFault::Lists { panel });
         }
         let spots = p.spots.iter().flat_map(|s| &s.outline);
         let marks = p.hotspots.iter().flat_map(|h| h.neck.iter().flatten().chain([&h.at]));
-        let shapes = p.loops.iter().chain(&p.lines).chain(&p.patches).flatten();
-        let mut places = shapes.chain(spots).chain(marks).chain(&p.points).chain(p.names.iter().map(|(at, _)| at));
+        let shapes = p.loops.iter().chain(&p.lines).chain(&p.patches).chain(&p.contacts).flatten();
+        let readings = p.tips.iter().map(|(at, _)| at).chain(p.crossings.iter().flat_map(|(ends, _)| ends));
+        let mut places = shapes.chain(readings).chain(spots).chain(marks).chain(&p.points).chain(p.names.iter().map(|(at, _)| at));
         let numbers = p.values.iter().chain(&p.potential_mv).chain(p.flow.iter().flatten());
         // Beyond this, differences of coordinates lose the part itself.
         if places.any(|q| !(q.x.abs() < 1e9 && q.y.abs() < 1e9)) || !numbers.copied().all(|v| v.abs() < 1e30) {
@@ -234,6 +244,9 @@ mod tests {
         assert_eq!(heat_map(&Sheet::default()), Err(PictureFault::Empty));
         let mut sheet = square();
         sheet.panels[0].triangles[1] = [0, 2, 9];
+        assert_eq!(heat_map(&sheet), Err(PictureFault::Lists { panel: 0 }));
+        let mut sheet = square();
+        sheet.panels[0].regions = vec![0; 3];
         assert_eq!(heat_map(&sheet), Err(PictureFault::Lists { panel: 0 }));
         let mut sheet = square();
         sheet.panels[0].values.pop();

@@ -9,6 +9,7 @@ use super::lettering::{ABOVE, BELOW, CAPITAL, Lettering, Weight};
 use super::place::{Area, Spot};
 use super::scale::with_step;
 use super::view::View;
+use crate::geometry::Point;
 
 /// Words over dark metal.
 const PAPER: Rgb = [255, 248, 238];
@@ -64,6 +65,12 @@ impl Notes<'_> {
             }
             for mark in &view.panel.hotspots {
                 drawing.occupied.take(Area::around(view.frame.at(mark.at), 11.0, 11.0));
+            }
+            for (at, _) in &view.panel.tips {
+                drawing.occupied.take(tip(view.frame.at(*at)));
+            }
+            for line in view.panel.crossings.iter().filter_map(|(ends, _)| over_metal(view, *ends)) {
+                bar(drawing, line, 4.0);
             }
         }
     }
@@ -121,14 +128,24 @@ impl Notes<'_> {
             .count()
     }
 
+    /// True where the colour below a box changes little.
+    fn is_even(&self, area: &Area) -> bool {
+        let [x, y] = area.centre();
+        let below = [[x, y], [area.left, y], [area.right, y], [x, area.top], [x, area.bottom]].map(|p| self.share(p).unwrap_or(0.0));
+        let (low, high) = below.iter().fold((f32::INFINITY, f32::NEG_INFINITY), |(l, h), &v| (l.min(v), h.max(v)));
+        high - low < 0.3
+    }
+
     /// Numbered balloons with leaders, outside the metal where there is room.
     pub fn balloons(&self, drawing: &mut Drawing) {
         let mut leaders: Vec<[Spot; 2]> = Vec::new();
+        let names = self.name_places();
         let mut numbers: Vec<String> = Vec::new();
         for view in self.views {
+            let spots: Vec<Spot> = view.panel.spots.iter().filter_map(|s| Some(around(&view.frame.all(&s.outline))?.centre())).collect();
             for mark in &view.panel.hotspots {
                 let at = view.frame.at(mark.at);
-                if let Some(place) = self.balloon_place(drawing, at, &leaders) {
+                if let Some(place) = self.balloon_place(drawing, &spots, at, &leaders, &names) {
                     let number = mark.number.to_string();
                     drawing.claim(balloon(place), &number);
                     leaders.push([place, at]);
@@ -160,7 +177,7 @@ impl Notes<'_> {
     }
 
     /// The place with the least cost: near, off the metal, its leader short over metal and across nothing.
-    fn balloon_place(&self, drawing: &Drawing, at: Spot, leaders: &[[Spot; 2]]) -> Option<Spot> {
+    fn balloon_place(&self, drawing: &Drawing, spots: &[Spot], at: Spot, leaders: &[[Spot; 2]], names: &[Area]) -> Option<Spot> {
         let mut best: Option<(f64, Spot)> = None;
         for distance in [40.0, 52.0, 66.0, 84.0, 106.0, 134.0, 170.0, 215.0, 270.0, 340.0] {
             // Nothing farther can be cheaper.
@@ -174,15 +191,24 @@ impl Notes<'_> {
                 if !drawing.occupied.is_free(&area.widened(3.0)) {
                     continue;
                 }
+                // What is quick to know first: most places are out of the question by then.
+                let dearer = |cost: f64| best.is_some_and(|(known, _)| cost >= known);
+                let named = names.iter().filter(|name| name.overlaps(&area)).count() as f64;
+                let mut cost = distance + 60.0 * named + 60.0 * surrounded(place, spots) + 26.0 * self.metal_below(&area) as f64;
+                if dearer(cost) {
+                    continue;
+                }
                 let steps = (distance / 8.0).ceil();
                 let along = |k: f64| [at[0] + (place[0] - at[0]) * k / steps, at[1] + (place[1] - at[1]) * k / steps];
-                let over = (0..steps as usize).filter(|&k| self.share(along(k as f64)).is_some()).count() as f64 * 8.0;
+                cost += 3.2 * (0..steps as usize).filter(|&k| self.share(along(k as f64)).is_some()).count() as f64;
                 let entangled = |&[other, spot]: &[Spot; 2]| {
                     cross([other, spot], [at, place]) || balloon(other).crossed_by(at, place) || area.widened(2.0).crossed_by(other, spot)
                 };
-                let crossed = leaders.iter().filter(|&leader| entangled(leader)).count() as f64;
-                let blocked = drawing.occupied.crossed_by(at, place) as f64;
-                let cost = distance + 0.4 * over + 26.0 * self.metal_below(&area) as f64 + 400.0 * crossed + 30.0 * blocked;
+                cost += 400.0 * leaders.iter().filter(|&leader| entangled(leader)).count() as f64;
+                if dearer(cost) {
+                    continue;
+                }
+                cost += 30.0 * drawing.occupied.crossed_by(at, place) as f64;
                 if best.is_none_or(|(known, _)| cost < known) {
                     best = Some((cost, place));
                 }
@@ -200,8 +226,9 @@ impl Notes<'_> {
                 continue;
             }
             let (marks, labels, places) = (drawing.marks.len(), drawing.labels.len(), drawing.occupied.count());
-            let written = labelled.iter().filter(|(text, area)| self.beside(drawing, text, area)).count();
-            if 4 * written < 3 * labelled.len() {
+            let rims: Vec<Area> = labelled.iter().map(|l| l.1).collect();
+            let written = labelled.iter().filter(|(text, area)| self.beside(drawing, text, SIZE, area, &rims)).count();
+            if 2 * written < labelled.len() {
                 drawing.marks.truncate(marks);
                 drawing.labels.truncate(labels);
                 drawing.occupied.forget(places);
@@ -209,11 +236,11 @@ impl Notes<'_> {
         }
     }
 
-    /// Words right, left, above or below a box.
-    fn beside(&self, drawing: &mut Drawing, text: &str, area: &Area) -> bool {
-        let half = 0.5 * self.lettering.width(text, SIZE, Weight::Regular) + 2.0;
+    /// Words right, left, above or below a box, where none of the others is as near.
+    fn beside(&self, drawing: &mut Drawing, text: &str, size: f64, area: &Area, others: &[Area]) -> bool {
+        let half = 0.5 * self.lettering.width(text, size, Weight::Regular) + 2.0;
         let ([x, y], gap) = (area.centre(), 4.0);
-        let high = 0.5 * (ABOVE + BELOW) * SIZE + 2.0;
+        let high = 0.5 * (ABOVE + BELOW) * size + 2.0;
         let right = area.right + gap + half;
         let left = area.left - gap - half;
         let places = [
@@ -226,7 +253,63 @@ impl Notes<'_> {
             [left, y - high],
             [left, y + high],
         ];
-        places.into_iter().any(|p| drawing.centred(self.lettering, text, p, 0.0, self.style(p, SIZE, Weight::Regular, DEEP)))
+        let belongs = |p: Spot| {
+            let words = Area::around(p, 2.0 * half, 2.0 * high - 4.0);
+            others.iter().all(|other| other == area || words.gap(other) > 2.0 * words.gap(area) + 8.0)
+        };
+        let mut places: Vec<Spot> = places.into_iter().filter(|&p| belongs(p)).collect();
+        // Words over a steep change of colour read badly; the order is stable otherwise.
+        places.sort_by_key(|&p| !self.is_even(&Area::around(p, 2.0 * half, size)));
+        let style = |p: Spot| {
+            let style = self.style(p, size, Weight::Regular, DEEP);
+            let even = self.is_even(&Area::around(p, 2.0 * half, size));
+            if even { style } else { Style { ink: Ink::full(DEEP), halo: Some((2.6, WHITE)), ..style } }
+        };
+        places.into_iter().any(|p| drawing.centred(self.lettering, text, p, 0.0, style(p)))
+    }
+
+    /// Where names would like to stand.
+    fn name_places(&self) -> Vec<Area> {
+        let of = |view: &View<'_>, (at, name): &(Point, String)| {
+            Area::around(view.frame.at(*at), self.lettering.width(name, SIZE + 1.0, Weight::Strong) + 8.0, SIZE + 6.0)
+        };
+        self.views.iter().flat_map(|view| view.panel.names.iter().map(|name| of(view, name))).collect()
+    }
+
+    /// Tips of meters and lines across which current is counted, with their words.
+    pub fn readings(&self, drawing: &mut Drawing) {
+        let size = 13.0;
+        for view in self.views {
+            patches_of(view).into_iter().for_each(|patch| drawing.occupied.take(patch));
+            let tips: Vec<Area> = view.panel.tips.iter().map(|(at, _)| tip(view.frame.at(*at))).collect();
+            for ((_, text), area) in view.panel.tips.iter().zip(&tips) {
+                let _ = self.beside(drawing, text, size, area, &[]);
+                let ([x, y], arm) = (area.centre(), 4.5);
+                let cross = vec![vec![[x - arm, y], [x + arm, y]], vec![[x, y - arm], [x, y + arm]]];
+                drawing.marks.push(Mark::Lines(cross.clone(), 4.6, WHITE));
+                drawing.marks.push(Mark::Lines(cross, 1.6, Ink::full(INK)));
+            }
+            for (ends, text) in &view.panel.crossings {
+                let Some([a, b]) = over_metal(view, *ends) else { continue };
+                drawing.marks.push(Mark::Lines(vec![vec![a, b]], 3.6, Ink::thin([255; 3], 0.7)));
+                drawing.marks.push(Mark::Lines(vec![vec![a, b]], 1.4, Ink::full(SEA)));
+                let half = 0.5 * self.lettering.width(text, size, Weight::Regular) + 3.0;
+                let along = unit(a, b);
+                let mut places = Vec::new();
+                for (end, way) in [(a, [-along[0], -along[1]]), (b, along)] {
+                    let away = half * way[0].abs() + 10.0 * way[1].abs() + 3.0;
+                    places.push([end[0] + away * way[0], end[1] + away * way[1]]);
+                }
+                for share in [0.5, 0.25, 0.75] {
+                    for side in [1.0, -1.0] {
+                        let normal = [-along[1] * side, along[0] * side];
+                        let away = half * normal[0].abs() + 10.0 * normal[1].abs() + 4.0;
+                        places.push([a[0] + share * (b[0] - a[0]) + away * normal[0], a[1] + share * (b[1] - a[1]) + away * normal[1]]);
+                    }
+                }
+                let _ = places.iter().any(|&p| drawing.centred(self.lettering, text, p, 0.0, self.style(p, size, Weight::Regular, DEEP)));
+            }
+        }
     }
 
     /// Names of electrodes, at or near where they belong.
@@ -246,8 +329,13 @@ impl Notes<'_> {
                 let whole = |p: Spot| [0, 5].contains(&self.metal_below(&Area::around(p, 2.0 * half, size)));
                 let style = |p: Spot| {
                     let on_patch = patches.iter().any(|patch| patch.overlaps(&Area::around(p, 2.0, 2.0)));
+                    let uneven = !self.is_even(&Area::around(p, 2.0 * half, size));
                     let style = self.style(p, size, Weight::Strong, DEEP);
-                    if on_patch { Style { ink: Ink::full(DEEP), halo: Some((3.5, Ink::thin([255; 3], 0.9))), ..style } } else { style }
+                    if on_patch || uneven {
+                        Style { ink: Ink::full(DEEP), halo: Some((3.5, Ink::thin([255; 3], 0.9))), ..style }
+                    } else {
+                        style
+                    }
                 };
                 let _ = places.iter().any(|&p| whole(p) && drawing.centred(self.lettering, name, p, 0.0, style(p)));
             }
@@ -367,6 +455,34 @@ fn balloon(centre: Spot) -> Area {
     Area::around(centre, 2.0 * BALLOON + 4.0, 2.0 * BALLOON + 4.0)
 }
 
+/// The box of a meter's tip.
+fn tip(at: Spot) -> Area {
+    Area::around(at, 12.0, 12.0)
+}
+
+/// A line across the metal, cut off a little beyond the panel's first and last metal on it; `None` where it meets none.
+fn over_metal(view: &View<'_>, ends: [Point; 2]) -> Option<[Spot; 2]> {
+    const BEYOND: f64 = 9.0;
+    let [a, b] = ends.map(|p| view.frame.at(p));
+    let length = (b[0] - a[0]).hypot(b[1] - a[1]).clamp(1.0, 1e4);
+    let way = unit(a, b);
+    let at = |s: f64| [a[0] + s * way[0], a[1] + s * way[1]];
+    let mut met = (0..=length as usize).map(|s| s as f64).filter(|&s| view.share(at(s)).is_some());
+    let first = met.next()?;
+    let last = met.next_back().unwrap_or(first);
+    Some([at((first - BEYOND).max(0.0)), at((last + BEYOND).min(length))])
+}
+
+/// How much a place lies in the middle of spots near it: 0 beside all of them, 1 where they pull evenly to all sides.
+fn surrounded(place: Spot, spots: &[Spot]) -> f64 {
+    let near: Vec<Spot> = spots.iter().filter(|s| (s[0] - place[0]).hypot(s[1] - place[1]) < 75.0).map(|&s| unit(place, s)).collect();
+    if near.len() < 2 {
+        return 0.0;
+    }
+    let (x, y) = near.iter().fold((0.0, 0.0), |(x, y), way| (x + way[0], y + way[1]));
+    1.0 - x.hypot(y) / near.len() as f64
+}
+
 /// Unit vector from one place to another; to the right where they are the same.
 fn unit(a: Spot, b: Spot) -> Spot {
     let (x, y) = (b[0] - a[0], b[1] - a[1]);
@@ -434,10 +550,10 @@ fn piece(line: &[Spot], lengths: &[f64], from: f64, to: f64) -> Vec<Spot> {
 
 #[cfg(test)]
 mod tests {
+    use super::super::Panel;
     use super::super::arrange::arrange;
     use super::super::contour::contours;
     use super::super::scale::Scale;
-    use super::super::{Panel, Point};
     use super::*;
 
     #[test]
@@ -452,7 +568,7 @@ mod tests {
             ..Panel::default()
         }];
         let frame = arrange(&panels, &[0.0], 0.0, |_, _| 100.0).frames[0];
-        let views = [View::new(&panels[0], frame, &Scale::new(&panels))];
+        let views = [View::new(&panels[0], frame, &Scale::new(&panels, None))];
         let (lettering, ramp) = (Lettering::new().unwrap(), Ramp::new());
         let mut drawing = Drawing::new(1600, 1200);
         let mut lines = contours(&views[0].corners, &panels[0].triangles, &panels[0].potential_mv, 2.0, (-9, 9));
@@ -479,6 +595,14 @@ mod tests {
         let [one, two] = arrows([[0.0, 10.0], [0.0, 30.0]]);
         assert_eq!(one, [[0.0, 8.0], [0.0, -24.0]]);
         assert_eq!(two, [[0.0, 32.0], [0.0, 64.0]]);
+    }
+
+    #[test]
+    fn the_middle_of_four_spots_is_surrounded_and_a_place_beside_them_is_not() {
+        let spots = [[0.0, 0.0], [40.0, 0.0], [40.0, 40.0], [0.0, 40.0]];
+        assert!(surrounded([20.0, 20.0], &spots) > 0.99);
+        assert!(surrounded([70.0, 20.0], &spots) < 0.15);
+        assert_eq!(surrounded([200.0, 20.0], &spots), 0.0);
     }
 
     #[test]

@@ -42,6 +42,13 @@ impl Area {
         self.left < other.right && other.left < self.right && self.top < other.bottom && other.top < self.bottom
     }
 
+    /// Distance between two boxes; 0 where they overlap.
+    pub fn gap(&self, other: &Self) -> f64 {
+        let x = (self.left - other.right).max(other.left - self.right).max(0.0);
+        let y = (self.top - other.bottom).max(other.top - self.bottom).max(0.0);
+        x.hypot(y)
+    }
+
     /// True when the other lies within.
     pub fn holds(&self, other: &Self) -> bool {
         self.left <= other.left && self.top <= other.top && self.right >= other.right && self.bottom >= other.bottom
@@ -159,6 +166,14 @@ mod tests {
         assert!(!occupied.is_free(&second));
         occupied.forget(count);
         assert!(occupied.is_free(&second) && !occupied.is_free(&first));
+    }
+
+    #[test]
+    fn the_gap_between_boxes_is_the_shortest_way() {
+        let area = Area::around([10.0, 10.0], 4.0, 4.0);
+        assert_eq!(area.gap(&Area::around([11.0, 11.0], 4.0, 4.0)), 0.0);
+        assert_eq!(area.gap(&Area::around([20.0, 10.0], 4.0, 4.0)), 6.0);
+        assert_eq!(area.gap(&Area::around([17.0, 18.0], 4.0, 4.0)), 5.0);
     }
 
     #[test]

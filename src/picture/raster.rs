@@ -17,13 +17,13 @@ pub struct Raster {
 }
 
 impl Raster {
-    /// Fills `width` x `height` pixels. `corners` are in pixels of this raster, `values` per corner; a pixel shows the triangle that holds its centre.
+    /// Fills `width` x `height` pixels. `corners` are in pixels of this raster, `values` per triangle and corner; a pixel shows the triangle that holds its centre.
     /// Triangle numbers must be valid.
-    pub fn new(width: usize, height: usize, corners: &[Spot], triangles: &[[u32; 3]], values: &[f32]) -> Self {
+    pub fn new(width: usize, height: usize, corners: &[Spot], triangles: &[[u32; 3]], values: &[[f32; 3]]) -> Self {
         let mut raster = Self { width, height, values: vec![0.0; width * height], owners: vec![NONE; width * height] };
-        for (number, corner) in triangles.iter().enumerate() {
+        for (number, (corner, values)) in triangles.iter().zip(values).enumerate() {
             let at = corner.map(|c| corners[c as usize]);
-            raster.fill(number as u32, at, corner.map(|c| f64::from(values[c as usize])));
+            raster.fill(number as u32, at, values.map(f64::from));
         }
         raster
     }
@@ -100,7 +100,8 @@ mod tests {
     fn two_triangles_cover_a_square_once_and_a_linear_value_is_kept() {
         let corners = [[1.0, 1.0], [9.0, 1.0], [9.0, 9.0], [1.0, 9.0]];
         let values = corners.map(|[x, y]| (2.0 * x - 3.0 * y) as f32);
-        let raster = Raster::new(10, 10, &corners, &[[0, 1, 2], [0, 2, 3]], &values);
+        let triangles = [[0, 1, 2], [0, 2, 3]];
+        let raster = Raster::new(10, 10, &corners, &triangles, &triangles.map(|t| t.map(|c| values[c as usize])));
         let mut covered = 0;
         for row in 0..10 {
             for (column, value) in raster.row(row).enumerate() {
@@ -121,7 +122,7 @@ mod tests {
     #[test]
     fn what_lies_outside_is_cut_and_flat_triangles_are_nothing() {
         let corners = [[-50.0, -50.0], [50.0, -50.0], [0.0, 80.0], [3.0, 3.0], [3.0, 3.0], [3.0, 3.0]];
-        let raster = Raster::new(4, 4, &corners, &[[0, 1, 2], [3, 4, 5]], &[1.0; 6]);
+        let raster = Raster::new(4, 4, &corners, &[[0, 1, 2], [3, 4, 5]], &[[1.0; 3]; 2]);
         assert!((0..4).all(|row| raster.row(row).all(|v| v.is_some())));
         assert_eq!(raster.triangle([3.0, 3.0]), Some(0));
     }

@@ -1,6 +1,7 @@
 //! Round steps, the colour scale's end, the steps of potential, and numbers as a reader writes them.
 
 use super::Panel;
+use rayon::prelude::*;
 
 /// Bins of the area count from which quantiles are read.
 const BINS: usize = 4096;
@@ -14,48 +15,92 @@ pub struct Scale {
     pub tick: f64,
     /// The greatest value of all.
     pub peak: f64,
-    /// Step of the equipotentials, mV; `None` when the potential is the same everywhere.
-    pub potential_step: Option<f64>,
-    /// First and last number of the equipotentials drawn.
-    pub potential_levels: (i64, i64),
+    /// Per panel: its equipotentials; `None` where the potential is the same everywhere.
+    pub potentials: Vec<Option<Potentials>>,
+}
+
+/// The equipotentials of one panel.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Potentials {
+    /// Their step, mV.
+    pub step: f64,
+    /// First and last number of those drawn.
+    pub levels: (i64, i64),
 }
 
 impl Scale {
-    /// The common scale of panels whose lists were checked.
-    pub fn new(panels: &[Panel]) -> Self {
-        let sized = |panel: &Panel, triangle: &[u32; 3]| {
-            let [a, b, c] = triangle.map(|corner| panel.points[corner as usize]);
-            0.5 * (b - a).cross(c - a).abs()
-        };
+    /// The scales of panels whose lists were checked. `peak` stands for the greatest value, which depends on the mesh.
+    pub fn new(panels: &[Panel], peak: Option<f64>) -> Self {
         let values = || panels.iter().flat_map(|p| p.triangles.iter().zip(&p.values).map(move |(t, &v)| (v, sized(p, t))));
-        let peak = values().fold(0.0f64, |most, (v, _)| most.max(v));
+        let peak = peak.unwrap_or_else(|| values().fold(0.0f64, |most, (v, _)| most.max(v)));
         let usual = quantile(values(), 0.995).max(0.0);
         let tick = round_step(usual / 5.0);
         // A peak little above the usual top is shown in full: a clipped scale needs a reason.
-        let wanted = if peak <= 1.3 * usual { peak } else { usual };
+        let wanted = if peak <= 1.3 * usual { peak.max(usual) } else { usual };
         let top = if wanted > 0.0 { 0.5 * tick * (wanted / (0.5 * tick) - 1e-9).ceil() } else { 1.0 };
-        let with_potential = || panels.iter().filter(|p| !p.potential_mv.is_empty());
-        let potentials = || {
-            with_potential().flat_map(|p| {
-                p.triangles.iter().map(move |t| {
-                    let sum: f64 = t.iter().map(|&corner| p.potential_mv[corner as usize]).sum();
-                    (sum / 3.0, sized(p, t))
-                })
-            })
-        };
-        let (low, high) = (quantile(potentials(), 0.002), quantile(potentials(), 0.998));
-        let magnitude = low.abs().max(high.abs());
-        let step = (high - low > 1e-9 * magnitude).then(|| round_step((high - low) / 16.0));
-        let level = |v: f64, step: f64| (v / step).clamp(-1e12, 1e12) as i64;
-        // Near a small spot the potential runs away from what the rest of the metal has; a few lines tell that.
-        let levels = step.map_or((1, 0), |step| (level(low, step) - 8, level(high, step) + 8));
-        Self { top, tick: if wanted > 0.0 { tick } else { 0.5 }, peak, potential_step: step, potential_levels: levels }
+        Self { top, tick: if wanted > 0.0 { tick } else { 0.5 }, peak, potentials: potentials(panels) }
     }
 
     /// True when values lie beyond the last colour.
     pub fn is_clipped(&self) -> bool {
         self.peak > self.top * (1.0 + 1e-9)
     }
+}
+
+fn sized(panel: &Panel, triangle: &[u32; 3]) -> f64 {
+    let [a, b, c] = triangle.map(|corner| panel.points[corner as usize]);
+    0.5 * (b - a).cross(c - a).abs()
+}
+
+/// Equipotentials that divide what drops in the metal: the drop over a joint from one piece of metal to another would leave none of them in either.
+/// All panels share a step where it leaves each of them some lines.
+fn potentials(panels: &[Panel]) -> Vec<Option<Potentials>> {
+    let ranges: Vec<Option<(f64, f64, f64)>> = panels.par_iter().map(range).collect();
+    let widest = ranges.iter().flatten().map(|r| r.2).fold(0.0, f64::max);
+    let of = |&range: &Option<(f64, f64, f64)>| {
+        let (low, high, span) = range?;
+        let step = round_step(if span >= 0.15 * widest { widest } else { span } / 16.0);
+        let level = |v: f64| (v / step).clamp(-1e12, 1e12) as i64;
+        // Near a small spot the potential runs away from what the rest of the metal has; a few lines tell that.
+        Some(Potentials { step, levels: (level(low) - 8, level(high) + 8) })
+    };
+    ranges.iter().map(of).collect()
+}
+
+/// What the potential of a panel covers, but for the little metal at its extremes, and the most that drops within one piece of metal.
+fn range(panel: &Panel) -> Option<(f64, f64, f64)> {
+    if panel.potential_mv.is_empty() {
+        return None;
+    }
+    let mut pieces: Vec<Vec<(f64, f64)>> = Vec::new();
+    let mut number: Vec<Option<usize>> = vec![None; panel.points.len()];
+    let mut parent: Vec<u32> = (0..panel.points.len() as u32).collect();
+    let root = |parent: &mut Vec<u32>, mut v: u32| {
+        while parent[v as usize] != v {
+            parent[v as usize] = parent[parent[v as usize] as usize];
+            v = parent[v as usize];
+        }
+        v
+    };
+    for &[a, b, c] in &panel.triangles {
+        for (p, q) in [(a, b), (b, c)] {
+            let (p, q) = (root(&mut parent, p), root(&mut parent, q));
+            parent[p.max(q) as usize] = p.min(q);
+        }
+    }
+    for triangle in &panel.triangles {
+        let piece = *number[root(&mut parent, triangle[0]) as usize].get_or_insert_with(|| {
+            pieces.push(Vec::new());
+            pieces.len() - 1
+        });
+        let sum: f64 = triangle.iter().map(|&corner| panel.potential_mv[corner as usize]).sum();
+        pieces[piece].push((sum / 3.0, sized(panel, triangle)));
+    }
+    let ends = |items: &[(f64, f64)]| (quantile(items.iter().copied(), 0.002), quantile(items.iter().copied(), 0.998));
+    let own = pieces.iter().map(|items| ends(items));
+    let (low, high, span) =
+        own.fold((f64::INFINITY, f64::NEG_INFINITY, 0.0f64), |(l, h, s), (low, high)| (l.min(low), h.max(high), s.max(high - low)));
+    (span > 1e-9 * low.abs().max(high.abs())).then_some((low, high, span))
 }
 
 /// The value below which this share of the total weight lies, to one part in 4096 of the range; 0 without any weight.
@@ -130,6 +175,22 @@ mod tests {
         panel
     }
 
+    /// A strip whose potential rises evenly over this range.
+    fn sloped(from: f64, range: f64) -> Panel {
+        let mut panel = Panel::default();
+        for i in 0..400 {
+            let x = f64::from(i);
+            panel.points.extend([Point::new(x, 0.0), Point::new(x, 1.0)]);
+            panel.potential_mv.extend([from + range * x / 399.0; 2]);
+            if i > 0 {
+                let n = 2 * i as u32;
+                panel.triangles.extend([[n - 2, n, n - 1], [n, n + 1, n - 1]]);
+                panel.values.extend([1.0; 2]);
+            }
+        }
+        panel
+    }
+
     #[test]
     fn steps_are_round_and_numbers_follow_them() {
         assert_eq!([0.9, 1.6, 2.3, 4.0, 8.0, 0.03].map(round_step), [1.0, 2.0, 2.5, 5.0, 10.0, 0.025]);
@@ -144,24 +205,43 @@ mod tests {
     fn a_lonely_peak_is_clipped_and_a_broad_one_is_not() {
         let mut values: Vec<f64> = (0..1000).map(|i| 20.0 * f64::from(i) / 1000.0).collect();
         values[500] = 300.0;
-        let scale = Scale::new(&[slices(&values)]);
+        let scale = Scale::new(&[slices(&values)], None);
         assert!(scale.is_clipped() && scale.peak == 300.0);
         assert_eq!((scale.top, scale.tick), (20.0, 5.0));
         values[500] = 21.0;
-        let scale = Scale::new(&[slices(&values)]);
+        let scale = Scale::new(&[slices(&values)], None);
         assert!(!scale.is_clipped() && scale.top == 22.5, "{scale:?}");
+        // What the mesh makes of a corner is not clipped where the gauge peak is on the scale.
+        values[500] = 300.0;
+        let scale = Scale::new(&[slices(&values)], Some(19.6));
+        assert!(!scale.is_clipped() && scale.top == 20.0, "{scale:?}");
     }
 
     #[test]
     fn ten_to_twenty_five_equipotentials_cross_the_part() {
         for range in [0.013, 1.0, 3.0, 9.0, 44.0, 78.0, 612.0] {
-            let mut panel = slices(&vec![1.0; 1000]);
-            panel.potential_mv = panel.points.iter().map(|p| 5.0 + range * p.x / 1000.0).collect();
-            let step = Scale::new(&[panel]).potential_step.unwrap();
+            let step = Scale::new(&[sloped(5.0, range)], None).potentials[0].unwrap().step;
             assert!((10.0..=25.0).contains(&(range / step)), "{range} {step}");
         }
         let mut level = slices(&[1.0; 10]);
         level.potential_mv = vec![3.0; level.points.len()];
-        assert_eq!(Scale::new(&[level]).potential_step, None);
+        assert_eq!(Scale::new(&[level], None).potentials, [None]);
+    }
+
+    #[test]
+    fn equipotentials_divide_what_drops_in_the_metal_and_not_over_a_joint() {
+        let joined = |mut a: Panel, b: Panel| {
+            let shift = a.points.len() as u32;
+            a.points.extend(b.points.iter().map(|p| Point::new(p.x + 500.0, p.y)));
+            a.triangles.extend(b.triangles.iter().map(|t| t.map(|c| c + shift)));
+            a.potential_mv.extend(b.potential_mv);
+            a.values.extend(b.values);
+            a
+        };
+        let step = |panels: &[Panel]| Scale::new(panels, None).potentials.iter().map(|p| p.unwrap().step).collect::<Vec<_>>();
+        // Two lugs of 4 mV each, 100 mV apart over a loose joint.
+        assert_eq!(step(&[joined(sloped(0.0, 4.0), sloped(100.0, 4.0))]), [0.25]);
+        assert_eq!(step(&[sloped(0.0, 16.0), sloped(0.0, 4.0)]), [1.0, 1.0]);
+        assert_eq!(step(&[sloped(0.0, 16.0), sloped(0.0, 1.6)]), [1.0, 0.1]);
     }
 }

@@ -74,19 +74,35 @@ impl<'a> View<'a> {
     }
 }
 
-/// Per point: the mean of the values around it by area, over the top of the scale.
-fn smoothed(panel: &Panel, top: f64) -> Vec<f32> {
+/// Per triangle and corner: the mean by area of the values around the corner in the same region, over the top of the scale.
+fn smoothed(panel: &Panel, top: f64) -> Vec<[f32; 3]> {
+    let region = |t: usize| panel.regions.get(t).copied().unwrap_or(0);
+    let mut order: Vec<usize> = (0..panel.triangles.len()).collect();
+    order.sort_by_key(|&t| region(t));
     let mut sums = vec![(0.0f64, 0.0f64); panel.points.len()];
-    for (triangle, value) in panel.triangles.iter().zip(&panel.values) {
-        let [a, b, c] = triangle.map(|corner| panel.points[corner as usize]);
-        let area = (b - a).cross(c - a).abs();
-        for &corner in triangle {
-            let (weighted, weight) = &mut sums[corner as usize];
-            *weighted += area * value;
-            *weight += area;
+    let mut shares = vec![[0.0f32; 3]; panel.triangles.len()];
+    for members in order.chunk_by(|&a, &b| region(a) == region(b)) {
+        for &t in members {
+            let triangle = panel.triangles[t];
+            let [a, b, c] = triangle.map(|corner| panel.points[corner as usize]);
+            let area = (b - a).cross(c - a).abs();
+            for corner in triangle {
+                let (weighted, weight) = &mut sums[corner as usize];
+                *weighted += area * panel.values[t];
+                *weight += area;
+            }
+        }
+        for &t in members {
+            shares[t] = panel.triangles[t].map(|corner| {
+                let (weighted, weight) = sums[corner as usize];
+                if weight > 0.0 { (weighted / weight / top) as f32 } else { 0.0 }
+            });
+        }
+        for &t in members {
+            panel.triangles[t].iter().for_each(|&corner| sums[corner as usize] = (0.0, 0.0));
         }
     }
-    sums.into_iter().map(|(weighted, weight)| if weight > 0.0 { (weighted / weight / top) as f32 } else { 0.0 }).collect()
+    shares
 }
 
 #[cfg(test)]
@@ -95,13 +111,15 @@ mod tests {
     use crate::geometry::Point;
 
     #[test]
-    fn a_point_takes_the_mean_by_area() {
-        let panel = Panel {
+    fn a_point_takes_the_mean_by_area_of_its_own_region() {
+        let mut panel = Panel {
             points: [(0.0, 0.0), (2.0, 0.0), (0.0, 1.0), (-1.0, 0.0)].map(|(x, y)| Point::new(x, y)).to_vec(),
             triangles: vec![[0, 1, 2], [0, 2, 3]],
             values: vec![3.0, 9.0],
             ..Panel::default()
         };
-        assert_eq!(smoothed(&panel, 2.0), vec![2.5, 1.5, 2.5, 4.5]);
+        assert_eq!(smoothed(&panel, 2.0), vec![[2.5, 1.5, 2.5], [2.5, 2.5, 4.5]]);
+        panel.regions = vec![7, 3];
+        assert_eq!(smoothed(&panel, 2.0), vec![[1.5; 3], [4.5; 3]]);
     }
 }

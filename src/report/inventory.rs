@@ -7,6 +7,7 @@ use crate::geometry::clearance::{self, clearances};
 use crate::geometry::ring::Arc;
 use crate::geometry::{BoundingBox, Point, Ring, nested_area};
 use crate::index::LayerId;
+use crate::problem::material::OWN_FIGURES;
 use crate::problem::{Drive, Electrode, ElectrodeKind, Footprint, Problem};
 use crate::quantity::{coordinate, three};
 use serde::Serialize;
@@ -156,7 +157,13 @@ pub fn text(inventory: &Inventory) -> String {
         let mass = sheet.mass_g.map_or(String::new(), |m| format!(", {} g", three(m)));
         push(
             &mut lines,
-            &format!("{}: {}, {} mm, {} mm2{mass}", sheet.name, sheet.metal, coordinate(sheet.thickness_mm), three(sheet.area_mm2)),
+            &format!(
+                "{}: {}, {} mm, {} mm2{mass}",
+                sheet.name,
+                if sheet.metal == OWN_FIGURES { "own resistivity" } else { &sheet.metal },
+                coordinate(sheet.thickness_mm),
+                three(sheet.area_mm2)
+            ),
         );
         let ([x0, x1], [y0, y1]) = (sheet.x_mm.map(coordinate), sheet.y_mm.map(coordinate));
         let holes = if sheet.holes > 0 { format!(", {}", count(sheet.holes, "hole")) } else { String::new() };

@@ -1,7 +1,8 @@
 //! `report.md`: what a colleague reads without the tool.
 
-use super::words::{self, CAUTION, further_cautions, interval, one_line, optional};
-use crate::findings::{Enclosure, Findings};
+use super::words::{self, CAUTION, RIM_WIDTH, further_cautions, interval, one_line, optional};
+use crate::findings::{Enclosure, Findings, HotspotKind};
+use crate::problem::material::OWN_FIGURES;
 use crate::problem::{Drive, Electrode, ElectrodeKind, Footprint, Interface, Problem};
 use crate::quantity::three;
 
@@ -20,7 +21,7 @@ pub fn report(problem: &Problem, findings: &Findings, picture: bool) -> String {
     headline(&mut out, findings);
     crowding(&mut out, findings);
     electrodes(&mut out, findings);
-    joints(&mut out, findings);
+    joints(&mut out, problem, findings);
     limits(&mut out, findings);
     assumptions(&mut out, problem);
     if !findings.remarks.is_empty() {
@@ -44,7 +45,7 @@ pub fn report(problem: &Problem, findings: &Findings, picture: bool) -> String {
 /// What was solved, in one sentence.
 fn in_short(problem: &Problem) -> String {
     let sheets: Vec<String> =
-        problem.layers.iter().map(|l| format!("{} ({}, {} mm)", plain(&l.name), plain(&l.material.name), l.thickness_mm)).collect();
+        problem.layers.iter().map(|l| format!("{} ({}, {} mm)", plain(&l.name), plain(&words::metal(l)), l.thickness_mm)).collect();
     let cells = problem.electrodes.iter().filter(|e| e.kind == ElectrodeKind::Cell).count();
     format!(
         "Solved: {}, at {} °C, with {} and {}.",
@@ -105,7 +106,7 @@ fn headline(out: &mut Page, findings: &Findings) {
         rows.push(vec!["largest drop between two electrodes".into(), format!("{} mV", interval(drop))]);
     }
     rows.extend(findings.probes.iter().map(|p| vec![format!("reading {}", p.name), format!("{} mV", interval(p.drop_mv))]));
-    rows.extend(findings.crossings.iter().map(|c| vec![format!("current across {}", c.name), format!("{} A", three(c.total_a))]));
+    rows.extend(findings.crossings.iter().map(|c| vec![format!("current across {}", c.name), words::crossing(findings, c)]));
     out.table(&["", "low ... high"], 1, rows.into_iter());
     let run = &findings.run;
     out.line(format!(
@@ -156,9 +157,11 @@ fn crowding(out: &mut Page, findings: &Findings) {
         list.dedup();
         list
     };
+    let rims = findings.hotspots.iter().any(|h| h.kind == HotspotKind::WeldRim);
     out.line(format!(
-        "A peak is the mean over a gauge disc ({}) clipped to the metal, so that it does not depend on the mesh; at a sharp inside corner the density in the point itself has no bound.",
-        gauges.join(", ")
+        "A peak is the mean over a gauge disc ({}) clipped to the metal, so that it does not depend on the mesh; at a sharp inside corner the density in the point itself has no bound.{}",
+        gauges.join(", "),
+        if rims { format!(" The {RIM_WIDTH}.") } else { String::new() }
     ));
 }
 
@@ -198,15 +201,15 @@ fn electrodes(out: &mut Page, findings: &Findings) {
     );
 }
 
-fn joints(out: &mut Page, findings: &Findings) {
+fn joints(out: &mut Page, problem: &Problem, findings: &Findings) {
     out.line("## Layers, contacts and joins");
     out.table(
         &["layer", "metal", "area mm²", "mass g", "loss W", "gauge peak A/mm²"],
         2,
-        findings
-            .layers
-            .iter()
-            .map(|l| vec![l.name.clone(), l.metal.clone(), three(l.area_mm2), optional(l.mass_g), three(l.loss_w), three(l.peak_a_mm2)]),
+        findings.layers.iter().zip(&problem.layers).map(|(l, sheet)| {
+            let mass = l.mass_g.map_or("not known".into(), three);
+            vec![l.name.clone(), words::metal(sheet), three(l.area_mm2), mass, three(l.loss_w), three(l.peak_a_mm2)]
+        }),
     );
     if !findings.contacts.is_empty() {
         out.table(
@@ -217,6 +220,16 @@ fn joints(out: &mut Page, findings: &Findings) {
                 .iter()
                 .map(|c| vec![c.name.clone(), c.between.join(" - "), optional(c.current_a), optional(c.exchanged_a), three(c.loss_w)]),
         );
+    }
+    if let Some(worst) = words::worst_joins(findings).first() {
+        out.line(format!(
+            "Largest drop over a join: {} mV{}, {} at ({:.2}, {:.2}).",
+            three(worst.drop_mv),
+            worst.current_a.map_or(String::new(), |a| format!(" at {} A", three(a))),
+            plain(&worst.between.join(" - ")),
+            worst.x_mm,
+            worst.y_mm
+        ));
     }
     if !findings.joins.is_empty() {
         out.table(
@@ -255,7 +268,7 @@ fn assumptions(out: &mut Page, problem: &Problem) {
         format!(
             "- sheet {}: {}, {} mm, {} µΩ cm at {} °C",
             plain(&l.name),
-            plain(&l.material.name),
+            plain(if l.material.name == OWN_FIGURES { "own resistivity" } else { &l.material.name }),
             l.thickness_mm,
             three(l.resistivity * 1e5),
             problem.temperature_c

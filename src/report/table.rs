@@ -1,11 +1,17 @@
 //! The summary on the terminal: headline, hotspots, cells, limits, remarks, within 80 columns.
 
-use super::words::{self, CAUTION, interval, optional};
-use crate::findings::{Findings, Verdict};
+use super::words::{self, CAUTION, RIM_WIDTH, interval, optional};
+use crate::findings::{Findings, HotspotKind, Verdict};
 use crate::quantity::three;
 
 /// Rows of a list shown before the rest is summed up.
 const MOST_ROWS: usize = 12;
+
+/// Joins shown before the rest is summed up.
+const MOST_JOINS: usize = 6;
+
+/// Columns of the terminal.
+const COLUMNS: usize = 80;
 
 /// The whole summary, ending in a line break.
 pub fn summary(findings: &Findings) -> String {
@@ -34,52 +40,55 @@ pub fn summary(findings: &Findings) -> String {
     if !findings.hotspots.is_empty() {
         line(String::new());
         line("  Where current crowds (gauge peaks; worst first, by part of a limit if given)".into());
-        line(format!(
-            "  {:>2} {:13} {:12} {:>8} {:>8} {:>8} {:>6} {:>7} {:>5}",
-            "no", "kind", "layer", "x mm", "y mm", "A/mm2", "width", "A", "crowd"
-        ));
-        for h in findings.hotspots.iter().take(MOST_ROWS) {
-            line(format!(
-                "  {:>2} {:13} {:12} {:>8} {:>8} {:>8} {:>6} {:>7} {:>5}",
-                h.rank,
-                words::kind(h.kind),
-                clipped(&h.layer, 12),
-                coordinate(h.x_mm),
-                coordinate(h.y_mm),
-                three(h.peak_a_mm2),
-                optional(h.width_mm),
-                optional(h.section_a),
-                optional(h.crowding)
-            ));
-        }
+        let header = ["no", "kind", "layer", "x mm", "y mm", "A/mm2", "width", "A", "crowd"];
+        let rows = findings.hotspots.iter().take(MOST_ROWS).map(|h| {
+            let mut row = vec![h.rank.to_string(), words::kind(h.kind).into(), h.layer.clone()];
+            row.extend([coordinate(h.x_mm), coordinate(h.y_mm), three(h.peak_a_mm2)]);
+            row.extend([h.width_mm, h.section_a, h.crowding].map(optional));
+            row
+        });
+        columns(&header, rows.collect(), 1..3).into_iter().for_each(&mut line);
         more(findings.hotspots.len(), &mut line);
+        if findings.hotspots.iter().any(|h| h.kind == HotspotKind::WeldRim) {
+            line(format!("     {RIM_WIDTH}"));
+        }
     }
     line(String::new());
     line("  Electrodes".into());
-    line(format!("  {:16} {:>10} {:>24} {:>8} {:>12}", "name", "A", "mV", "share %", "worst mV"));
-    for e in findings.electrodes.iter().take(MOST_ROWS) {
+    let rows = findings.electrodes.iter().take(MOST_ROWS).map(|e| {
         let worst = e.spots.iter().map(|s| s.drop_mv.abs()).fold(0.0, f64::max);
-        line(format!(
-            "  {:16} {:>10} {:>24} {:>8} {:>12}",
-            clipped(&e.name, 16),
-            three(e.current_a),
-            interval(e.voltage_mv),
-            optional(e.share_percent),
-            three(worst)
-        ));
-    }
+        let worst = (worst > 0.0).then_some(worst);
+        vec![e.name.clone(), three(e.current_a), interval(e.voltage_mv), optional(e.share_percent), optional(worst)]
+    });
+    columns(&["name", "A", "mV", "share %", "worst joint mV"], rows.collect(), 0..1).into_iter().for_each(&mut line);
     more(findings.electrodes.len(), &mut line);
     for (group, ratio) in words::sharing(findings) {
         line(format!("  sharing in group \"{}\": largest over mean current {}", clipped(group, 24), three(ratio)));
     }
+    let joins = words::worst_joins(findings);
+    if !joins.is_empty() {
+        line(String::new());
+        line("  Joins between sheets (largest drop first)".into());
+        let rows = joins.iter().take(MOST_JOINS).map(|j| {
+            vec![j.between.join(" - "), coordinate(j.x_mm), coordinate(j.y_mm), optional(j.current_a), three(j.drop_mv), three(j.loss_w)]
+        });
+        columns(&["between", "x mm", "y mm", "A", "mV", "W"], rows.collect(), 0..1).into_iter().for_each(&mut line);
+        if joins.len() > MOST_JOINS {
+            line(format!("  and {} more in the files", joins.len() - MOST_JOINS));
+        }
+    }
     if !findings.probes.is_empty() || !findings.crossings.is_empty() {
         line(String::new());
         line("  Readings".into());
+        let names = findings.probes.iter().map(|p| &p.name).chain(findings.crossings.iter().map(|c| &c.name));
+        let width = names.map(|name| name.chars().count()).max().unwrap_or(0).min(40);
         for p in &findings.probes {
-            line(format!("  {:16} {} mV", clipped(&p.name, 16), interval(p.drop_mv)));
+            line(format!("  {:width$}  {} mV", clipped(&p.name, width), interval(p.drop_mv)));
         }
         for c in &findings.crossings {
-            line(format!("  {:16} {} A across", clipped(&c.name, 16), three(c.total_a)));
+            for (i, part) in wrapped(&words::crossing(findings, c), 76 - width).into_iter().enumerate() {
+                line(format!("  {:width$}  {part}", if i == 0 { clipped(&c.name, width) } else { String::new() }));
+            }
         }
     }
     let checked: Vec<_> = findings.verdicts.iter().filter(|v| v.verdict != Verdict::NotChecked).collect();
@@ -113,6 +122,26 @@ fn more(count: usize, line: &mut impl FnMut(String)) {
     if count > MOST_ROWS {
         line(format!("     and {} more in the files", count - MOST_ROWS));
     }
+}
+
+/// A table as wide as its words need: `left` columns to the left, the others to the right. Where it is too wide for the terminal, the last of the
+/// left columns is cut.
+fn columns(header: &[&str], rows: Vec<Vec<String>>, left: std::ops::Range<usize>) -> Vec<String> {
+    let mut rows: Vec<Vec<String>> = std::iter::once(header.iter().map(|h| h.to_string()).collect()).chain(rows).collect();
+    let needed =
+        |rows: &[Vec<String>], c: usize| rows.iter().filter_map(|row| row.get(c)).map(|cell| cell.chars().count()).max().unwrap_or(0);
+    let mut widths: Vec<usize> = (0..header.len()).map(|c| needed(&rows, c)).collect();
+    let words: usize = widths.iter().sum();
+    let gap = if 2 * header.len() + words <= COLUMNS { 2 } else { 1 };
+    let over = (1 + header.len() * gap + words).saturating_sub(COLUMNS);
+    if let Some(last) = left.clone().last().filter(|_| over > 0) {
+        widths[last] = widths[last].saturating_sub(over).max(8);
+        rows.iter_mut().for_each(|row| row[last] = clipped(&row[last], widths[last]));
+    }
+    let gap = " ".repeat(gap);
+    let cell = |c: usize, text: &str| if left.contains(&c) { format!("{text:<0$}", widths[c]) } else { format!("{text:>0$}", widths[c]) };
+    let joined = |row: &Vec<String>| row.iter().enumerate().map(|(c, text)| cell(c, &words::one_line(text))).collect::<Vec<_>>().join(&gap);
+    rows.iter().map(|row| format!("  {}", joined(row))).collect()
 }
 
 fn coordinate(value: f64) -> String {
@@ -152,6 +181,18 @@ pub fn wrapped(text: &str, width: usize) -> Vec<String> {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn a_table_is_as_wide_as_its_words_need_and_no_wider_than_the_terminal() {
+        let row = |name: &str| vec!["1".to_string(), name.to_string(), "12.5".into()];
+        let of = |name: &str| columns(&["no", "layer", "mV"], vec![row("a"), row(name)], 1..2);
+        assert_eq!(
+            of("second copper sheet"),
+            ["  no  layer                  mV", "   1  a                    12.5", "   1  second copper sheet  12.5"]
+        );
+        let wide = of(&"x".repeat(200));
+        assert!(wide.iter().all(|l| l.chars().count() == COLUMNS) && wide[2].contains("x~ 12.5"), "{wide:?}");
+    }
 
     #[test]
     fn long_names_and_remarks_stay_within_their_columns() {

@@ -1,7 +1,8 @@
 //! Words that several reports share: cautions, and figures with their intervals.
 
-use crate::findings::{Enclosure, Findings, HotspotKind, Verdict};
-use crate::problem::Problem;
+use crate::findings::{CrossingFinding, Enclosure, Findings, HotspotKind, JoinFinding, Verdict};
+use crate::problem::material::OWN_FIGURES;
+use crate::problem::{Layer, Problem};
 use crate::quantity::{outward, three};
 
 /// The caution that stands in every report.
@@ -14,6 +15,9 @@ What this tool prints is an estimate from your inputs: no proof that a pack is s
 A neck is not a fuse: fit proper d.c. protection. Measure joints and temperatures on samples, with limited current, before use. \
 Work on live packs only if trained and equipped: insulated tools, no metal jewellery, eye protection, covered terminals, a way out. \
 Local codes and licensed practice come first.";
+
+/// What the width of a weld rim is.
+pub const RIM_WIDTH: &str = "width at a weld rim: the length of the rim all around";
 
 /// Direct voltage in volts above which shock is a danger too; common practice, no source.
 const SHOCK_V: f64 = 60.0;
@@ -39,6 +43,29 @@ pub fn further_cautions(problem: &Problem, findings: &Findings) -> Vec<&'static 
 /// Largest over mean cell current per group, with the group's name.
 pub fn sharing(findings: &Findings) -> impl Iterator<Item = (&str, f64)> {
     findings.verdicts.iter().filter_map(|v| Some((v.limit.strip_prefix("sharing.")?, v.value?)))
+}
+
+/// Joins with a drop, the largest first.
+pub fn worst_joins(findings: &Findings) -> Vec<&JoinFinding> {
+    let mut joins: Vec<&JoinFinding> = findings.joins.iter().filter(|j| j.drop_mv != 0.0).collect();
+    joins.sort_by(|a, b| b.drop_mv.abs().total_cmp(&a.drop_mv.abs()));
+    joins
+}
+
+/// The current across a line, with the part of each sheet where there are several: `20.0 A: nickel 3.20, copper 16.8`.
+pub fn crossing(findings: &Findings, crossing: &CrossingFinding) -> String {
+    let parts: Vec<(&str, f64)> =
+        findings.layers.iter().filter_map(|l| Some((l.name.as_str(), *crossing.current_a.get(&l.name)?))).collect();
+    // A sheet that the line does not meet carries a rounding at most.
+    let least = 1e-9 * parts.iter().map(|p| p.1.abs()).fold(0.0, f64::max);
+    let carried: Vec<String> = parts.iter().filter(|p| p.1.abs() > least).map(|(name, a)| format!("{name} {}", three(*a))).collect();
+    let total = format!("{} A", three(crossing.total_a));
+    if parts.len() < 2 || carried.is_empty() { total } else { format!("{total}: {}", carried.join(", ")) }
+}
+
+/// The metal of a sheet: its name in the table or its own resistivity.
+pub fn metal(layer: &Layer) -> String {
+    if layer.material.name == OWN_FIGURES { format!("{} µΩ cm", three(layer.resistivity * 1e5)) } else { layer.material.name.clone() }
 }
 
 /// A name or sentence of the input in one line: control characters must reach neither a terminal nor a table.
@@ -71,7 +98,6 @@ pub fn kind(kind: HotspotKind) -> &'static str {
         HotspotKind::TerminalEdge => "terminal edge",
         HotspotKind::OverlayEnd => "overlay end",
         HotspotKind::Strip => "strip",
-        HotspotKind::Other => "other",
     }
 }
 
