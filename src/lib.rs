@@ -12,7 +12,8 @@
 //! | [`fem`] | linear elements, equilibrated fluxes, the bracket |
 //! | [`physics`] | from a `Problem` to a `Solution` |
 //! | [`findings`] | from a `Solution` to what a reader wants to know |
-//! | [`report`], [`picture`] | findings to bytes |
+//! | [`picture`] | plain shapes and numbers to a PNG |
+//! | [`report`] | findings to bytes |
 //! | [`starting`] | a first sheet and outline, as texts to edit (it uses `problem` for the metals, nothing in between) |
 //! | [`cli`] | files and terminal |
 #![forbid(unsafe_code)]
