@@ -164,7 +164,7 @@ fn on_a_million(bencher: Bencher, enclosed: bool) {
     bencher.bench(|| {
         let plan = Plan::new(&problem).expect("a plan");
         let cells: Vec<_> = mesh.covers.iter().map(|cover| plan.cell(cover).expect("a cell plan")).collect();
-        let complex = Complex::new(&mesh, &cells, &plan.line_plans(), problem.electrodes.len()).expect("glued");
+        let complex = Complex::new(&mesh, &cells, plan.line_plans(), problem.electrodes.len()).expect("glued");
         let layout = layout(&problem, &plan, &mesh, &complex).expect("pieces");
         let bar = Bar::new(&problem, &plan, &mesh, &complex, &layout).expect("factored");
         let currents = given_currents(&problem, &layout).expect("all currents given");
