@@ -1,6 +1,7 @@
 //! `pinchbar map`: read, solve, find, show.
 
-use super::{Ending, explain, files, late, progress::Progress, terminal};
+use super::late::{self, Stop};
+use super::{Ending, files, progress::Progress, refused, terminal};
 use crate::diagnostic::{Fault, Remark};
 use crate::findings::{self, Findings, Verdict};
 use crate::problem::Problem;
@@ -47,14 +48,6 @@ struct Mapped {
     picture: Option<Vec<u8>>,
 }
 
-/// Why there is nothing to write.
-enum Stop {
-    /// The input is at fault.
-    Refused(Vec<Fault>),
-    /// The tool failed.
-    Failed(String),
-}
-
 /// Runs the command.
 ///
 /// # Errors
@@ -83,10 +76,7 @@ fn mapped(request: &Request) -> Result<Mapped, Stop> {
         problem.accuracy.bracket = percent / 100.0;
     }
     let found = findings::find_with(&problem, &|stage| progress.show(stage));
-    let mut found = found.map_err(|faults| match faults.iter().find(|f| late::is_ours(f)) {
-        Some(ours) => Stop::Failed(ours.to_string()),
-        None => Stop::Refused(faults.iter().map(|f| late::placed(f, &problem, &origins)).collect()),
-    })?;
+    let mut found = found.map_err(|faults| late::stop(&faults, &problem, &origins))?;
     clock.lap("solve");
     found.findings.remarks.splice(0..0, remarks);
     progress.show(Stage::Drawing);
@@ -152,12 +142,6 @@ fn show(request: &Request, mapped: &Mapped) -> io::Result<Ending> {
     }
     let broken = findings.verdicts.iter().any(|v| v.verdict == Verdict::Fail);
     Ok(if broken { Ending::LimitBroken } else { Ending::Done })
-}
-
-/// Shows the faults of the input.
-pub fn refused(faults: &[Fault]) -> Ending {
-    terminal::complain(&explain::explain(faults, terminal::colour()));
-    Ending::BadInput
 }
 
 /// Wall time of the stages.
