@@ -62,11 +62,10 @@ fn refer_to_lowest(panels: &mut [Panel]) {
 fn subtitle(problem: &Problem, found: &Found) -> String {
     let inward = through(problem, found);
     let count = |kind: ElectrodeKind| problem.electrodes.iter().filter(|e| e.kind == kind && !matches!(e.drive, Drive::Return(_))).count();
-    let plural = |n: usize, one: &str| if n == 1 { format!("1 {one}") } else { format!("{n} {one}s") };
     let mut parts = Vec::new();
     for (n, one) in [(count(ElectrodeKind::Cell), "cell"), (count(ElectrodeKind::Terminal), "terminal")] {
         if n > 0 {
-            parts.push(plural(n, one));
+            parts.push(words::counted(n, one));
         }
     }
     format!("{} A through {} · metal at {} °C", three(inward), parts.join(" and "), problem.temperature_c)

@@ -167,11 +167,8 @@ impl<'a> Pieces<'a> {
         let mut pairs = Vec::new();
         for (i, (p, p_box)) in lower.iter().enumerate() {
             for (j, (q, q_box)) in upper.iter().enumerate() {
-                let window = BoundingBox {
-                    min: Point::new(p_box.min.x.max(q_box.min.x), p_box.min.y.max(q_box.min.y)),
-                    max: Point::new(p_box.max.x.min(q_box.max.x), p_box.max.y.min(q_box.max.y)),
-                };
-                if window.min.x >= window.max.x || window.min.y >= window.max.y {
+                let window = p_box.common(*q_box);
+                if !window.has_area() {
                     continue;
                 }
                 let shapes: Vec<&[(Point, Point)]> = [p.as_slice(), q.as_slice()].into_iter().chain(area.as_deref()).collect();

@@ -1,6 +1,6 @@
 //! The summary on the terminal: headline, hotspots, cells, limits, remarks, within 80 columns.
 
-use super::words::{self, CAUTION, RIM_WIDTH, interval, optional};
+use super::words::{self, CAUTION, RIM_WIDTH, interval, optional, wrapped};
 use crate::findings::{Findings, HotspotKind, Verdict};
 use crate::quantity::three;
 
@@ -155,27 +155,6 @@ fn clipped(name: &str, width: usize) -> String {
         return name;
     }
     name.chars().take(width.saturating_sub(1)).chain(['~']).collect()
-}
-
-/// Words in lines of at most `width` characters; a longer word is cut.
-pub fn wrapped(text: &str, width: usize) -> Vec<String> {
-    let mut lines = vec![String::new()];
-    for word in words::one_line(text).split_whitespace() {
-        let letters: Vec<char> = word.chars().collect();
-        for part in letters.chunks(width.max(1)) {
-            let last = lines.len() - 1;
-            let used = lines[last].chars().count();
-            if used > 0 && used + 1 + part.len() > width {
-                lines.push(part.iter().collect());
-            } else {
-                if used > 0 {
-                    lines[last].push(' ');
-                }
-                lines[last].extend(part);
-            }
-        }
-    }
-    lines
 }
 
 #[cfg(test)]
