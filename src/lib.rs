@@ -4,7 +4,7 @@
 //!
 //! | floor | holds |
 //! |---|---|
-//! | [`index`], [`diagnostic`], [`quantity`], [`progress`], [`mod@csv`] | words: ids, faults with places, units, stages; rows of cells |
+//! | [`index`], [`diagnostic`], [`quantity`], [`progress`], [`mod@csv`], [`mod@union`] | words: ids, faults with places, units, stages; rows of cells; sets of numbers |
 //! | [`geometry`] | points, rings with arcs, regions |
 //! | [`problem`], [`mesh`] | the checked statement; the triangulation (they do not know each other) |
 //! | [`reading`] | texts to a `Problem`, or all faults at once |
@@ -24,6 +24,7 @@ pub mod diagnostic;
 pub mod index;
 pub mod progress;
 pub mod quantity;
+pub mod union;
 
 pub mod geometry;
 

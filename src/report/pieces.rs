@@ -4,6 +4,7 @@ use crate::geometry::overlap::common_area;
 use crate::geometry::{BoundingBox, IndexedRegion, Point};
 use crate::index::LayerId;
 use crate::problem::{Footprint, Problem};
+use crate::union::Sets;
 
 /// A line's point this near to the rim, in mm, stands on the piece whose rim it is.
 const AT_RIM: f64 = 0.05;
@@ -95,7 +96,7 @@ impl<'a> Pieces<'a> {
 
     /// The connected sets, in the order of their first pieces.
     pub fn connected(&self) -> Vec<Connected> {
-        let mut union = Union { parent: (0..self.count).collect() };
+        let mut union = Sets::new(self.count);
         let mut ties: Vec<(usize, String)> = Vec::new();
         let layer_name = |l: LayerId| self.problem.layers.get(l.index()).map_or("", |layer| layer.name.as_str());
         for contact in &self.problem.contacts {
@@ -240,24 +241,5 @@ impl LayerPieces {
             lists[self.piece_of_loop[self.region.loop_of(number)]].push(edge);
         }
         lists
-    }
-}
-
-struct Union {
-    parent: Vec<usize>,
-}
-
-impl Union {
-    fn root(&mut self, mut i: usize) -> usize {
-        while self.parent[i] != i {
-            self.parent[i] = self.parent[self.parent[i]];
-            i = self.parent[i];
-        }
-        i
-    }
-
-    fn join(&mut self, a: usize, b: usize) {
-        let (a, b) = (self.root(a), self.root(b));
-        self.parent[a.max(b)] = a.min(b);
     }
 }
