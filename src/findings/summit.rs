@@ -16,13 +16,13 @@ const PROMINENCE: f64 = 1.03;
 const MOST_STARTS: usize = 48;
 
 /// |J| at the vertices of a sheet: the mean over the triangles around them, held ones left out.
-struct Nodes {
+struct Vertices {
     value: Vec<f64>,
     /// A triangle at the vertex: the one with the largest |J|.
     at: Vec<u32>,
 }
 
-impl Nodes {
+impl Vertices {
     fn new(mesh: &Mesh, metal: &LayerMetal) -> Self {
         let mut value = vec![0.0; mesh.points.len()];
         let mut area = vec![0.0; mesh.points.len()];
@@ -88,21 +88,21 @@ impl Nodes {
 /// Places below `least` of the highest are left out.
 pub fn starts(setting: &Setting, metal: &LayerMetal, mean: f64, least: &dyn Fn(f64) -> f64) -> Option<Vec<Place>> {
     let mesh = &setting.solution.mesh;
-    let nodes = Nodes::new(mesh, metal);
-    let highest = nodes.value.iter().fold(0.0, |m: f64, &v| m.max(v));
+    let vertices = Vertices::new(mesh, metal);
+    let highest = vertices.value.iter().fold(0.0, |m: f64, &v| m.max(v));
     if highest <= PROMINENCE * mean {
         return None;
     }
     // Measured by its gauge mean: the value at a vertex grows without end where triangles get smaller at a corner.
-    let top = (0..nodes.value.len()).rfind(|&v| nodes.value[v] == highest).and_then(|v| nodes.place(mesh, metal, v));
+    let top = (0..vertices.value.len()).rfind(|&v| vertices.value[v] == highest).and_then(|v| vertices.place(mesh, metal, v));
     let least = least(top.map_or(0.0, |place| Disc::new(metal).mean(place, metal.gauge).mean).min(highest));
-    Some(thinned(setting, metal, &nodes, nodes.summits(mesh, metal, least)))
+    Some(thinned(setting, metal, &vertices, vertices.summits(mesh, metal, least)))
 }
 
 /// The places to look at closely: the highest gauge means, one per spot of an electrode or join, none within half a gauge of a higher one.
-fn thinned(setting: &Setting, metal: &LayerMetal, nodes: &Nodes, summits: Vec<usize>) -> Vec<Place> {
+fn thinned(setting: &Setting, metal: &LayerMetal, vertices: &Vertices, summits: Vec<usize>) -> Vec<Place> {
     let mesh = &setting.solution.mesh;
-    let places: Vec<Place> = summits.into_iter().filter_map(|v| nodes.place(mesh, metal, v)).collect();
+    let places: Vec<Place> = summits.into_iter().filter_map(|v| vertices.place(mesh, metal, v)).collect();
     let mut ranked: Vec<(f64, Place)> =
         places.par_iter().map_init(|| Disc::new(metal), |disc, &place| (disc.mean(place, metal.gauge).mean, place)).collect();
     ranked.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.triangle.cmp(&b.1.triangle)));
