@@ -4,7 +4,7 @@ use crate::diagnostic::{Fault, Label, Span};
 use crate::index::{CrossingId, ElectrodeId, ProbeId};
 use crate::mesh::MeshFault;
 use crate::physics::Fault as Late;
-use crate::problem::{Drive, Problem};
+use crate::problem::{Drive, MeasuredJoint, Problem};
 use crate::reading::Origins;
 
 /// Why a job comes to nothing.
@@ -26,7 +26,7 @@ pub fn stop(faults: &[Late], problem: &Problem, origins: &Origins) -> Stop {
 
 /// True when the tool failed, not the input.
 fn is_ours(fault: &Late) -> bool {
-    matches!(fault, Late::Numerical(_) | Late::Mesh(MeshFault::Triangulation(_)))
+    matches!(fault, Late::Unfitted | Late::Numerical(_) | Late::Mesh(MeshFault::Triangulation(_)))
 }
 
 /// The fault with its place, what was expected and a remedy.
@@ -41,6 +41,11 @@ fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
         expected: Some(expected.into()),
         remedy: Some(remedy.into()),
         labels: Vec::new(),
+    };
+    let measured = |m: usize| match problem.measured.get(m).map(|m| &m.joint) {
+        Some(MeasuredJoint::Join(j)) => origins.join(*j).clone(),
+        Some(MeasuredJoint::Electrodes(ids)) => first(ids),
+        None => origins.title().clone(),
     };
     match fault {
         Late::ElectrodesMeet([a, b]) => Fault {
@@ -86,13 +91,25 @@ fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
             "a line over metal outside solid patches",
             "move the crossing, or give the joint a resistance",
         ),
+        Late::MeasuredIdle(m) => at(
+            measured(*m),
+            fault.to_string(),
+            "a joint that carries current in this job",
+            "give the job currents that pass it, or `joint_mohm` in place of the reading",
+        ),
+        Late::MeasuredLow { measured: m, .. } => at(
+            measured(*m),
+            fault.to_string(),
+            "a reading that the interface has a part in",
+            "check where the tips stood, the reading, and the sheets' resistivity and thickness",
+        ),
         Late::SpotOff(k) => at(
             origins.electrode(*k).clone(),
             format!("`{}`: {fault}", name(*k)),
             "a place on the metal of its layer",
             "use spots, seams or areas on the metal",
         ),
-        Late::TooManyLayers(_) | Late::TooManyPorts(_) | Late::Mesh(_) | Late::Numerical(_) => at(
+        Late::TooManyLayers(_) | Late::TooManyPorts(_) | Late::Mesh(_) | Late::Numerical(_) | Late::Unfitted => at(
             origins.title().clone(),
             fault.to_string(),
             "a job within the tool's limits",

@@ -4,6 +4,7 @@ use super::late::{self, Stop};
 use super::{Ending, files, progress::Progress, refused, terminal};
 use crate::diagnostic::{Fault, Remark};
 use crate::findings::{self, Findings, Verdict};
+use crate::physics;
 use crate::problem::Problem;
 use crate::progress::Stage;
 use crate::reading::{self, Reading};
@@ -75,7 +76,8 @@ fn mapped(request: &Request) -> Result<Mapped, Stop> {
     if let Some(percent) = request.bracket_percent {
         problem.accuracy.bracket = percent / 100.0;
     }
-    let found = findings::find_with(&problem, &|stage| progress.show(stage));
+    let listener = |stage| progress.show(stage);
+    let found = physics::fit(&mut problem, &listener).and_then(|()| findings::find_with(&problem, &listener));
     let mut found = found.map_err(|faults| late::stop(&faults, &problem, &origins))?;
     clock.lap("solve");
     found.findings.remarks.splice(0..0, remarks);

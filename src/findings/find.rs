@@ -10,7 +10,7 @@ use crate::physics::network::{Interval, LARGEST_RESIDUAL};
 use crate::physics::plan::Mark;
 use crate::physics::solution::Passed;
 use crate::physics::{self, Fault, Solution};
-use crate::problem::{Crossing, Electrode, ElectrodeKind, Footprint, Interface, Problem};
+use crate::problem::{Crossing, Electrode, ElectrodeKind, Footprint, Interface, Measured, MeasuredJoint, Problem};
 use crate::progress::{Listener, Stage};
 use rayon::prelude::*;
 
@@ -43,6 +43,9 @@ pub fn find(problem: &Problem) -> Result<Found, Vec<Fault>> {
 /// # Errors
 /// As [`find()`].
 pub fn find_with(problem: &Problem, listener: &Listener) -> Result<Found, Vec<Fault>> {
+    if problem.measured.iter().any(|m| !m.fitted) {
+        return Err(vec![Fault::Unfitted]);
+    }
     let started = physics::Started::new(problem, listener)?;
     let expected = survey(problem, &started.first, &DensityField::new(problem, &started.first)).unresolved;
     let mut solution = started.finished(&expected)?;
@@ -174,6 +177,9 @@ fn remarks(problem: &Problem, solution: &Solution) -> Vec<Remark> {
             100.0 * problem.accuracy.bracket
         )));
     }
+    for measured in &problem.measured {
+        remarks.push(Remark::new(fitted(problem, measured)));
+    }
     let moves = solution.run.moves;
     if moves.count > 0 {
         remarks.push(Remark::new(format!(
@@ -193,6 +199,25 @@ fn remarks(problem: &Problem, solution: &Solution) -> Vec<Remark> {
         )));
     }
     remarks
+}
+
+/// What became of a joint that was given as measured.
+fn fitted(problem: &Problem, measured: &Measured) -> String {
+    let name = match &measured.joint {
+        MeasuredJoint::Join(j) => {
+            let [a, b] = problem.joins[j.index()].between.map(|l| problem.layers[l.index()].name.as_str());
+            format!("join {a} - {b}")
+        }
+        MeasuredJoint::Electrodes(ids) => {
+            let names: Vec<&str> = ids.iter().map(|k| problem.electrodes[k.index()].name.as_str()).collect();
+            if let [first, .., last] = names[..] { format!("{first} to {last}") } else { names.concat() }
+        }
+    };
+    let joint = 1e3 * physics::fit::joint_of(problem, measured).0;
+    let measured = 1e3 * measured.ohm;
+    format!(
+        "{name}: {joint:.4} mohm a spot, fitted to the {measured} mohm measured between the tips; the rest of the reading is spreading in the sheets."
+    )
 }
 
 impl From<Interval> for Enclosure {

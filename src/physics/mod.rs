@@ -5,12 +5,14 @@ pub mod adapt;
 pub mod bar;
 pub mod connections;
 pub mod enclose;
+pub mod fit;
 pub mod network;
 pub mod pieces;
 pub mod plan;
 pub mod solution;
 
 pub use adapt::{Started, sharpened};
+pub use fit::fit;
 pub use solution::{Fault, Solution};
 
 use crate::problem::Problem;
@@ -72,6 +74,7 @@ mod tests {
             joins: vec![],
             electrodes,
             sources: vec![],
+            measured: vec![],
             probes: vec![],
             crossings: vec![],
             limits: Limits::default(),

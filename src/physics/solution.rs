@@ -131,6 +131,17 @@ pub enum Fault {
         /// A point in the patch.
         at: Point,
     },
+    /// Joints given as measured have not been fitted yet: [`crate::physics::fit`] does that.
+    Unfitted,
+    /// A joint given as measured through which no current passes (by its place in the problem's list).
+    MeasuredIdle(usize),
+    /// A joint that reads more than measured though its spots have no resistance left.
+    MeasuredLow {
+        /// Its place in the problem's list.
+        measured: usize,
+        /// What is read without any, ohm.
+        least_ohm: f64,
+    },
     /// An electrode's spot found no metal.
     SpotOff(ElectrodeId),
     /// The mesh could not be made.
@@ -153,6 +164,11 @@ impl fmt::Display for Fault {
             Self::TipOff { tip, .. } => write!(f, "tip {} of the probe does not stand on one piece of metal", tip + 1),
             Self::CrossingHeld { at, .. } => {
                 write!(f, "the crossing runs inside a solid patch at ({}, {}): no current is defined there", at.x, at.y)
+            }
+            Self::Unfitted => write!(f, "joints given as measured have not been fitted yet"),
+            Self::MeasuredIdle(_) => write!(f, "no current passes the joint that was measured"),
+            Self::MeasuredLow { least_ohm, .. } => {
+                write!(f, "the sheets alone give a reading of {:.6} mohm between these tips, more than was measured", 1e3 * least_ohm)
             }
             Self::SpotOff(_) => write!(f, "the electrode touches no metal"),
             Self::Mesh(fault) => write!(f, "{fault}"),

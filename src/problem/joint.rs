@@ -1,7 +1,7 @@
 //! Where sheets meet: areas of contact, and spots, seams or areas that join them.
 
 use crate::geometry::{Point, Region};
-use crate::index::LayerId;
+use crate::index::{ElectrodeId, JoinId, LayerId};
 
 /// What an interface does to the current that passes it.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -34,6 +34,29 @@ pub struct Join {
     pub spots: Vec<Footprint>,
     /// Resistance of one spot in ohm, interface only; 0 is a bond. Its conductance is spread over the spot's nominal area.
     pub joint_ohm: f64,
+}
+
+/// A joint known by what a four-wire meter reads across it: the resistance of its spots is fitted to that
+/// ([`crate::physics::fit`]), so that the spreading in the sheets is not counted twice.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Measured {
+    /// Whose spots.
+    pub joint: MeasuredJoint,
+    /// The reading over the current through the joint, ohm.
+    pub ohm: f64,
+    /// Where the tips stand: on the two sheets of a join; on the first sheet of an electrode, whose can or lug has the other tip.
+    pub tips: Vec<(LayerId, Point)>,
+    /// True once the spots have their resistance.
+    pub fitted: bool,
+}
+
+/// Whose spots were measured.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub enum MeasuredJoint {
+    /// A join's.
+    Join(JoinId),
+    /// Those of electrodes made alike, of which the first one was measured.
+    Electrodes(Vec<ElectrodeId>),
 }
 
 /// What a spot, seam, area, line or edge covers in the plane.

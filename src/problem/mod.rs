@@ -8,7 +8,7 @@ pub mod stack;
 pub mod trial;
 
 pub use electrode::{Drive, Electrode, ElectrodeKind, Source, Spot};
-pub use joint::{Contact, Footprint, Interface, Join};
+pub use joint::{Contact, Footprint, Interface, Join, Measured, MeasuredJoint};
 pub use material::{Material, Resistivity};
 pub use stack::Layer;
 
@@ -34,6 +34,8 @@ pub struct Problem {
     pub electrodes: Vec<Electrode>,
     /// Cells as voltage sources. Indexed by [`crate::index::SourceId`].
     pub sources: Vec<Source>,
+    /// Joints whose resistance is to be fitted to a reading.
+    pub measured: Vec<Measured>,
     /// Pairs of meter tips.
     pub probes: Vec<Probe>,
     /// Lines across which current is counted.

@@ -42,6 +42,7 @@ pub fn problem(layers: Vec<Layer>, electrodes: Vec<Electrode>, bracket: f64, gau
         joins: vec![],
         electrodes,
         sources: vec![],
+        measured: vec![],
         probes: vec![],
         crossings: vec![],
         limits: Limits::default(),

@@ -422,11 +422,8 @@ joint_mohm = 0.1
 current_a = 1
 pattern = { step_mm = [10, 0], count = 100, row_step_mm = [0, 10], rows = 100 }
 "#;
-    let begun = std::time::Instant::now();
     let reading = read(Path::new("job.toml"), &|path: &Path| Ok(if path.ends_with("job.toml") { job.into() } else { outline.clone() }));
     assert_eq!(reading.map(|r| r.problem.electrodes.len()).map_err(|f| explained(&f)), Ok(10_001));
-    assert!(begun.elapsed().as_secs_f64() < 20.0, "{:?}", begun.elapsed());
-    eprintln!("read in {:?}", begun.elapsed());
 }
 
 #[test]

@@ -27,7 +27,7 @@ AREA = 240 * 80 - 2 * 60 * 4  # of the plate, mm2
 
 
 def timed(command):
-    """The JSON a command prints, its wall time in s, its peak memory in MB."""
+    """The JSON a command prints, its wall time in s, its peak memory in MB, its processor time in s."""
     start = time.perf_counter()
     child = subprocess.Popen(command, stdout=subprocess.PIPE)
     text = child.stdout.read()
@@ -36,7 +36,7 @@ def timed(command):
     child.returncode = os.waitstatus_to_exitcode(status)
     if child.returncode != 0:
         sys.exit(f"failed: {command}")
-    return json.loads(text), wall, usage.ru_maxrss / 1024
+    return json.loads(text), wall, usage.ru_maxrss / 1024, usage.ru_utime + usage.ru_stime
 
 
 def pinchbar(tool, bracket, *more):
@@ -91,7 +91,7 @@ def main():
     truth, half = loss["value"], (loss["high"] - loss["low"]) / 2 / loss["value"]
     print(f"Reference: {truth:.9g} W, enclosed within {half * 1e6:.0f} ppm either way.", file=sys.stderr)
 
-    head = "| | triangles | loss off by | whole process, figures only | with picture | imports | work | drawing | peak |"
+    head = "| | triangles | loss off by | whole process, figures only | its processor time | with picture | imports | work | drawing | peak |"
     print(head)
     print("|---|" + "---:|" * (head.count("|") - 2))
     solvers = set()
@@ -115,14 +115,15 @@ def main():
                         theirs[name][1].append(peer(area, "--picture", str(Path(folder) / "peer.png")))
                         theirs[name][2].append(stages(theirs[name][1][-1][0]))
         wall, wall_drawn = median(r[1] for r in plain), median(r[1] for r in drawn)
+        processor = median(r[3] for r in plain)
         work, draw = median(l["read"] + l["solve"] for l in laps), median(l["draw"] for l in laps)
         print(
-            f"| pinchbar, {bracket:g} % asked | {ours['run']['triangles']:,} | {off * 1e6:.0f} ppm (lower end {low_off * 1e6:.0f}) | {wall:.2f} s | {wall_drawn:.2f} s "
+            f"| pinchbar, {bracket:g} % asked | {ours['run']['triangles']:,} | {off * 1e6:.0f} ppm (lower end {low_off * 1e6:.0f}) | {wall:.2f} s | {processor:.2f} s | {wall_drawn:.2f} s "
             f"| - | {work:.2f} s | {draw:.2f} s | {max(r[2] for r in plain):.0f} MB |"
         )
         for name, (without, with_picture, parts) in theirs.items():
             if not without:
-                print(f"| {name} | more than {MOST_TRIANGLES:,} | | | | | | | |")
+                print(f"| {name} | more than {MOST_TRIANGLES:,} | | | | | | | | |")
                 continue
             result = without[-1][0]
             solvers.add(result["solver"])
@@ -132,7 +133,8 @@ def main():
 
             print(
                 f"| {name} | {result['triangles']:,} | {(1 - result['loss_w'] / truth) * 1e6:.0f} ppm "
-                f"| {cell(median(r[1] for r in without), wall)} | {cell(median(r[1] for r in with_picture), wall_drawn)} "
+                f"| {cell(median(r[1] for r in without), wall)} | {cell(median(r[3] for r in without), processor)} "
+                f"| {cell(median(r[1] for r in with_picture), wall_drawn)} "
                 f"| {median(p['imports'] for p in parts):.2f} s | {cell(median(p['work'] for p in parts), work)} "
                 f"| {cell(median(p['draw'] for p in parts), draw)} | {max(r[2] for r in without):.0f} MB |"
             )

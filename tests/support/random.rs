@@ -101,6 +101,7 @@ pub fn bare(layers: Vec<Layer>, bracket: f64) -> Problem {
         joins: vec![],
         electrodes: vec![],
         sources: vec![],
+        measured: vec![],
         probes: vec![],
         crossings: vec![],
         limits: Limits::default(),

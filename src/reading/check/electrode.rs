@@ -1,6 +1,7 @@
 //! Terminals and cells: what drives them, where they are attached, patterns and return ends.
 
 use super::layer::Stack;
+use super::measured::{GivenJoint, read_joint};
 use super::names::Names;
 use super::place::place;
 use super::plausible;
@@ -16,8 +17,9 @@ use crate::reading::files::Files;
 use crate::reading::sheet::Value;
 use std::collections::HashMap;
 
-const TERMINAL_KEYS: [&str; 9] = ["name", "layer", "line_mm", "edge_mm", "disc_mm", "points_mm", "current_a", "voltage_mv", "joint_mohm"];
-const CELL_KEYS: [&str; 17] = [
+const TERMINAL_KEYS: [&str; 11] =
+    ["name", "layer", "line_mm", "edge_mm", "disc_mm", "points_mm", "current_a", "voltage_mv", "joint_mohm", "measured_mohm", "tips_mm"];
+const CELL_KEYS: [&str; 19] = [
     "name",
     "layer",
     "through",
@@ -29,6 +31,8 @@ const CELL_KEYS: [&str; 17] = [
     "edge_mm",
     "spots_csv",
     "joint_mohm",
+    "measured_mohm",
+    "tips_mm",
     "current_a",
     "emf_mv",
     "resistance_mohm",
@@ -36,7 +40,8 @@ const CELL_KEYS: [&str; 17] = [
     "group",
     "pattern",
 ];
-const RETURN_KEYS: [&str; 9] = ["layer", "through", "spots_mm", "diameter_mm", "seams_mm", "areas_mm", "line_mm", "edge_mm", "joint_mohm"];
+const RETURN_KEYS: [&str; 11] =
+    ["layer", "through", "spots_mm", "diameter_mm", "seams_mm", "areas_mm", "line_mm", "edge_mm", "joint_mohm", "measured_mohm", "tips_mm"];
 const CELL_PLACES: [&str; 6] = ["spots_mm", "seams_mm", "areas_mm", "line_mm", "edge_mm", "spots_csv"];
 const RETURN_PLACES: [&str; 5] = ["spots_mm", "seams_mm", "areas_mm", "line_mm", "edge_mm"];
 
@@ -59,20 +64,26 @@ pub struct DrawnElectrodes {
     pub list: Vec<DrawnElectrode>,
     /// Cells as voltage sources.
     pub sources: Vec<Source>,
+    /// Electrodes made alike whose joint is to be fitted to a reading at the first of them, and the sheets they pass.
+    pub measured: Vec<(Vec<ElectrodeId>, GivenJoint, Vec<LayerId>)>,
     /// False when some block could not be read.
     pub complete: bool,
 }
 
 /// Reads the blocks of terminals and cells and expands the patterns.
 pub fn read_electrodes(terminals: &[Value], cells: &[Value], layers: &Names, files: &Files, notes: &Notes) -> DrawnElectrodes {
-    let mut drawn = DrawnElectrodes { list: Vec::new(), sources: Vec::new(), complete: true };
+    let mut drawn = DrawnElectrodes { list: Vec::new(), sources: Vec::new(), measured: Vec::new(), complete: true };
     let mut names = Names::new("electrode");
     // In the order in which they are written.
     let mut blocks: Vec<(&Value, bool)> = terminals.iter().map(|t| (t, true)).chain(cells.iter().map(|c| (c, false))).collect();
     blocks.sort_by_key(|b| b.0.span.start);
     for (block, terminal) in blocks {
         let read = if terminal {
-            read_terminal(block, layers, &mut names, notes).map(|electrode| drawn.list.push(electrode))
+            read_terminal(block, layers, &mut names, notes).map(|(electrode, given)| {
+                let (id, through) = (ElectrodeId::new(drawn.list.len()), electrode.electrode.through.clone());
+                drawn.measured.extend(given.tips.is_some().then_some((vec![id], given, through)));
+                drawn.list.push(electrode);
+            })
         } else {
             read_cell(block, layers, &mut names, files, notes, &mut drawn)
         };
@@ -85,15 +96,14 @@ fn layer_id(name: &Placed<String>, layers: &Names, notes: &Notes) -> Option<Laye
     layers.find(name, notes).map(LayerId::new)
 }
 
-fn read_terminal(block: &Value, layers: &Names, names: &mut Names, notes: &Notes) -> Option<DrawnElectrode> {
+fn read_terminal(block: &Value, layers: &Names, names: &mut Names, notes: &Notes) -> Option<(DrawnElectrode, GivenJoint)> {
     let fields = Fields::open(block, "terminal", &TERMINAL_KEYS, notes)?;
     let name = fields.required_text("name");
     names.add(name.clone(), fields.span, notes);
     fields.missing("layer", "the name of a layer");
     let layer = fields.text("layer").and_then(|l| layer_id(&l, layers, notes));
     let places = drawn_places(&fields, &["line_mm", "edge_mm", "disc_mm", "points_mm"]);
-    let joint = if fields.has("joint_mohm") { fields.joint("joint_mohm") } else { Some(0.0) };
-    plausible::remark_number(name.as_ref().map_or("terminal", |n| &n.value), "joint_mohm", joint, notes);
+    let joint = read_joint(&fields, name.as_ref().map_or("terminal", |n| &n.value), None, 1..=1, notes);
     let current = current(&fields);
     let voltage = fields.number_where("voltage_mv", "within a million volts", |v| v.abs() <= 1e9);
     let drive = match (fields.has("current_a"), fields.has("voltage_mv")) {
@@ -109,7 +119,8 @@ fn read_terminal(block: &Value, layers: &Names, names: &mut Names, notes: &Notes
     let Placed { value: name, span } = name?;
     let drive_span = if fields.value("current_a").is_some() { fields.place("current_a").clone() } else { span.clone() };
     let electrode = Electrode { name, kind: ElectrodeKind::Terminal, group: None, through: vec![layer?], spots: Vec::new(), drive: drive? };
-    Some(DrawnElectrode { electrode, places: places?, joint_ohm: joint? * 1e-3, span, drive_span })
+    let given = joint?;
+    Some((DrawnElectrode { electrode, places: places?, joint_ohm: given.ohm, span, drive_span }, given))
 }
 
 fn current(fields: &Fields) -> Option<f64> {
@@ -119,7 +130,7 @@ fn current(fields: &Fields) -> Option<f64> {
 /// What a cell's end or its return end is attached to, and by what resistance.
 struct Footing {
     through: Vec<LayerId>,
-    joint_ohm: f64,
+    joint: GivenJoint,
 }
 
 fn read_footing(fields: &Fields, who: &str, layers: &Names, notes: &Notes) -> Option<Footing> {
@@ -135,10 +146,8 @@ fn read_footing(fields: &Fields, who: &str, layers: &Names, notes: &Notes) -> Op
             fields.text("layer").and_then(|l| layer_id(&l, layers, notes)).map(|l| vec![l])
         }
     };
-    fields.missing("joint_mohm", "the resistance of one spot's interface in milliohm; 0 is solid");
-    let joint = fields.joint("joint_mohm");
-    plausible::remark_number(who, "joint_mohm", joint, notes);
-    Some(Footing { through: through?, joint_ohm: joint? * 1e-3 })
+    let joint = read_joint(fields, who, Some("solid"), 1..=1, notes);
+    Some(Footing { through: through?, joint: joint? })
 }
 
 fn read_through(fields: &Fields, layers: &Names, notes: &Notes) -> Option<Vec<LayerId>> {
@@ -231,6 +240,7 @@ fn read_cell(block: &Value, layers: &Names, names: &mut Names, files: &Files, no
         Some(back) => Some(back?),
         None => None,
     };
+    let (mut alike, mut alike_back) = (Vec::new(), Vec::new());
     for (cell, name, step) in cells.iter().flat_map(|cell| {
         let copies = numbered(&cell.name.value, steps.len());
         copies.into_iter().zip(&steps).map(move |(name, step)| (cell, name, *step))
@@ -258,12 +268,18 @@ fn read_cell(block: &Value, layers: &Names, names: &mut Names, files: &Files, no
             let through = footing.through.clone();
             let electrode = Electrode { name, kind: ElectrodeKind::Cell, group: Some(group), through, spots: Vec::new(), drive };
             let (span, drive_span) = (span.clone(), drive_span.clone());
-            drawn.list.push(DrawnElectrode { electrode, places, joint_ohm: footing.joint_ohm, span, drive_span });
+            drawn.list.push(DrawnElectrode { electrode, places, joint_ohm: footing.joint.ohm, span, drive_span });
         };
         push(name.clone(), group_name.to_string(), &footing, &cell.places, forward, &cell.name.span);
+        alike.push(id);
         if let Some((footing, places, place)) = &back {
             push(format!("{name} return"), format!("{group_name} return"), footing, places, backward, place);
+            alike_back.push(ElectrodeId::new(id.index() + 1));
         }
+    }
+    for (ids, footing) in [(alike, Some(footing)), (alike_back, back.map(|b| b.0))] {
+        let measured = footing.filter(|f| f.joint.tips.is_some());
+        drawn.measured.extend(measured.map(|f| (ids, f.joint, f.through)));
     }
     Some(())
 }

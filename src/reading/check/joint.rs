@@ -1,16 +1,16 @@
 //! Contacts and joins between sheets.
 
 use super::layer::Stack;
+use super::measured::{GivenJoint, place_tips, read_joint};
 use super::names::Names;
 use super::place::{disc, place};
-use super::plausible;
 use super::shape::{Drawn, Form, drawn_places, place_key, places_by, rings_of};
 use super::weld_list::read_welds;
 use crate::diagnostic::Span;
 use crate::geometry::Region;
 use crate::geometry::overlap::common_area;
-use crate::index::LayerId;
-use crate::problem::{Contact, Interface, Join};
+use crate::index::{JoinId, LayerId};
+use crate::problem::{Contact, Interface, Join, Measured, MeasuredJoint};
 use crate::reading::fields::{Fields, Notes, Placed, not_yet};
 use crate::reading::files::Files;
 use crate::reading::sheet::{Content, Value};
@@ -135,13 +135,21 @@ fn overlaps(between: [LayerId; 2], area: Option<&Region>, stack: &Stack, span: &
     Some(())
 }
 
-/// Reads the joins' blocks; those with faults are left out.
-pub fn read_joins(blocks: &[Value], stack: &Stack, files: &Files, notes: &Notes) -> Vec<(Join, Span)> {
-    blocks.iter().filter_map(|block| read_join(block, stack, files, notes)).collect()
+/// Reads the joins' blocks, and which of them are to be fitted to a reading; those with faults are left out.
+pub fn read_joins(blocks: &[Value], stack: &Stack, files: &Files, notes: &Notes) -> (Vec<(Join, Span)>, Vec<Measured>) {
+    let (mut joins, mut measured) = (Vec::new(), Vec::new());
+    for block in blocks {
+        let Some((join, given, span)) = read_join(block, stack, files, notes) else { continue };
+        if given.tips.is_some() {
+            measured.extend(place_tips(MeasuredJoint::Join(JoinId::new(joins.len())), &given, &join.between, stack, notes));
+        }
+        joins.push((join, span));
+    }
+    (joins, measured)
 }
 
-fn read_join(block: &Value, stack: &Stack, files: &Files, notes: &Notes) -> Option<(Join, Span)> {
-    let keys = ["between", "spots_mm", "diameter_mm", "seams_mm", "areas_mm", "spots_csv", "joint_mohm"];
+fn read_join(block: &Value, stack: &Stack, files: &Files, notes: &Notes) -> Option<(Join, GivenJoint, Span)> {
+    let keys = ["between", "spots_mm", "diameter_mm", "seams_mm", "areas_mm", "spots_csv", "joint_mohm", "measured_mohm", "tips_mm"];
     let fields = Fields::open(block, "join", &keys, notes)?;
     let between = read_between(&fields, stack, notes);
     let places = match place_key(&fields, &["spots_mm", "seams_mm", "areas_mm", "spots_csv"]) {
@@ -149,13 +157,12 @@ fn read_join(block: &Value, stack: &Stack, files: &Files, notes: &Notes) -> Opti
         Some(key) => places_by(&fields, key),
         None => None,
     };
-    fields.missing("joint_mohm", "the resistance of one spot's interface in milliohm; 0 is a bond");
-    let joint = fields.joint("joint_mohm");
+    let who = between.map_or_else(|| "join".to_string(), |b| format!("join {} - {}", stack.name(b[0]), stack.name(b[1])));
+    let joint = read_joint(&fields, &who, Some("a bond"), 2..=2, notes);
     let (between, places): (_, Vec<Drawn>) = (between?, places?);
     let limit = files.budget.borrow_mut().spend_spots(places.len(), fields.span);
     notes.keep(limit)?;
-    let who = format!("join {} - {}", stack.name(between[0]), stack.name(between[1]));
-    plausible::remark_number(&who, "joint_mohm", joint, notes);
     let spots = place(&places, &between, stack, &who, notes);
-    Some((Join { between, spots, joint_ohm: joint? * 1e-3 }, fields.span.clone()))
+    let given = joint?;
+    Some((Join { between, spots, joint_ohm: given.ohm }, given, fields.span.clone()))
 }

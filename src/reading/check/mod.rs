@@ -5,6 +5,7 @@ mod drive;
 mod electrode;
 mod joint;
 mod layer;
+mod measured;
 mod meter;
 mod names;
 mod place;
@@ -17,7 +18,7 @@ use super::files::Files;
 use super::origins::Origins;
 use super::sheet::Value;
 use crate::geometry::Point;
-use crate::problem::{Accuracy, Problem};
+use crate::problem::{Accuracy, MeasuredJoint, Problem};
 use std::path::Path;
 
 const KEYS: [&str; 11] =
@@ -44,11 +45,16 @@ pub fn check(sheet: &Value, job: &Path, files: &Files, notes: &Notes) -> Option<
     let stack = layer::make_stack(names, layers, &lines, notes);
 
     let contacts = joint::read_contacts(fields.blocks("contact"), &stack, files, notes);
-    let joins = joint::read_joins(fields.blocks("join"), &stack, files, notes);
+    let (joins, measured_joins) = joint::read_joins(fields.blocks("join"), &stack, files, notes);
     drive::check_drives(&drawn, &contacts, &joins, &stack, &title_span, notes);
-    let electrode::DrawnElectrodes { list, sources, .. } = drawn;
+    let electrode::DrawnElectrodes { list, sources, measured: alike, .. } = drawn;
     let electrode_places: Vec<_> = list.iter().map(|e| e.span.clone()).collect();
+    let mut measured: Vec<_> = alike
+        .into_iter()
+        .filter_map(|(ids, given, through)| measured::place_tips(MeasuredJoint::Electrodes(ids), &given, &through, &stack, notes))
+        .collect();
     let electrodes = electrode::attach(list, &stack, notes);
+    measured.extend(measured_joins);
     apart::check_apart(&electrodes, &electrode_places, &stack, notes);
     let probes = meter::read_probes(fields.blocks("probe"), &stack, notes);
     let crossings = meter::read_crossings(fields.blocks("crossing"), &stack, notes);
@@ -79,6 +85,7 @@ pub fn check(sheet: &Value, job: &Path, files: &Files, notes: &Notes) -> Option<
         joins,
         electrodes,
         sources,
+        measured,
         probes,
         crossings,
         limits,
