@@ -345,7 +345,8 @@ fn a_byte_order_mark_takes_no_place_in_any_file() {
     let faults = faults.expect_err("a slip in every first line");
     let first: Vec<_> = faults.iter().filter_map(|f| f.span.as_ref()).map(Span::line_column).filter(|place| place.0 == 1).collect();
     assert_eq!(first, [(1, 1); 3], "{}", explained(&faults));
-    assert!(good(&format!("\u{feff}{STRIP}{LUG}")).remarks.is_empty());
+    let end = "[[terminal]]\nname = \"in\"\nlayer = \"carrier\"\nline_mm = [[0, 0], [0, 30]]\ncurrent_a = 1\n";
+    assert_eq!(good(&format!("\u{feff}{STRIP}{LUG}{end}")).problem.electrodes.len(), 2);
 }
 
 #[test]
