@@ -19,12 +19,12 @@ use crate::reading::sheet::{Content, Value};
 const LEAST_OVERLAP: f64 = 1e-9;
 
 /// Reads the contacts' blocks; those with faults are left out.
-pub fn read_contacts(blocks: &[Value], stack: &Stack, files: &Files, notes: &Notes) -> Vec<(Contact, Span)> {
+pub fn read_contacts(blocks: &[Value], stack: &Stack, files: &Files, notes: &Notes) -> Vec<Contact> {
     let mut names = Names::new("contact");
     blocks.iter().filter_map(|block| read_contact(block, stack, &mut names, files, notes)).collect()
 }
 
-fn read_contact(block: &Value, stack: &Stack, names: &mut Names, files: &Files, notes: &Notes) -> Option<(Contact, Span)> {
+fn read_contact(block: &Value, stack: &Stack, names: &mut Names, files: &Files, notes: &Notes) -> Option<Contact> {
     let keys = ["name", "between", "over", "points_mm", "outline", "disc_mm", "contact_mohm_mm2"];
     let fields = Fields::open(block, "contact", &keys, notes)?;
     let name = fields.text("name");
@@ -54,8 +54,7 @@ fn read_contact(block: &Value, stack: &Stack, names: &mut Names, files: &Files, 
     let default_name = format!("{} on {}", stack.name(a), stack.name(b));
     overlaps(between, area.as_ref(), stack, fields.place("between"), notes)?;
     let interface = interface?;
-    let span = name.as_ref().map_or_else(|| fields.span.clone(), |n| n.span.clone());
-    Some((Contact { name: name.map_or(default_name, |n| n.value), between, area, interface }, span))
+    Some(Contact { name: name.map_or(default_name, |n| n.value), between, area, interface })
 }
 
 fn has_state(block: &Value) -> bool {
