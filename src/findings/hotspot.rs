@@ -350,8 +350,8 @@ fn candidate(setting: &Setting, metal: &LayerMetal, rims: &[(f64, f64)], disc: &
         section = section.map(|s| section::narrowest(metal, s));
     }
     let excess = match character.kind {
-        HotspotKind::Neck => f64::INFINITY,
-        HotspotKind::WeldRim => peak / around.mean,
+        // Always rows: whether one stands out enough from around it would hang on the mesh.
+        HotspotKind::Neck | HotspotKind::WeldRim => f64::INFINITY,
         _ => section.map_or(f64::INFINITY, |s| peak * s.width * metal.thickness / s.current.abs()),
     };
     Candidate { place, peak, covered, around, section, character, rim, excess, twins: Vec::new() }
