@@ -4,7 +4,7 @@
 //!
 //! | floor | holds |
 //! |---|---|
-//! | [`index`], [`diagnostic`], [`quantity`], [`progress`], [`mod@csv`] | words: ids, faults with places, units, stages; rows of cells |
+//! | [`index`], [`diagnostic`], [`quantity`], [`progress`], [`mod@csv`], [`mod@union`] | words: ids, faults with places, units, stages; rows of cells; sets of numbers |
 //! | [`geometry`] | points, rings with arcs, regions |
 //! | [`problem`], [`mesh`] | the checked statement; the triangulation (they do not know each other) |
 //! | [`reading`] | texts to a `Problem`, or all faults at once |
@@ -12,7 +12,8 @@
 //! | [`fem`] | linear elements, equilibrated fluxes, the bracket |
 //! | [`physics`] | from a `Problem` to a `Solution` |
 //! | [`findings`] | from a `Solution` to what a reader wants to know |
-//! | [`report`], [`picture`] | findings to bytes |
+//! | [`picture`] | plain shapes and numbers to a PNG |
+//! | [`report`] | findings to bytes |
 //! | [`starting`] | a first sheet and outline, as texts to edit (it uses `problem` for the metals, nothing in between) |
 //! | [`cli`] | files and terminal |
 #![forbid(unsafe_code)]
@@ -23,6 +24,7 @@ pub mod diagnostic;
 pub mod index;
 pub mod progress;
 pub mod quantity;
+pub mod union;
 
 pub mod geometry;
 

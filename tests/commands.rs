@@ -1,12 +1,11 @@
 //! The tool as it is called: help, exit status, what goes to stdout and what to stderr, files whole and only our own.
 
+use crate::support::{self, RESULTS};
 use std::path::{Path, PathBuf};
-use std::process::{Command, Output, Stdio};
-
-const OURS: [&str; 5] = ["heatmap.png", "hotspots.csv", "report.md", "result.json", "welds.csv"];
+use std::process::{Output, Stdio};
 
 fn tool(folder: &Path, arguments: &[&str]) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_pinchbar")).args(arguments).current_dir(folder).output().expect("the tool starts")
+    support::tool(arguments).current_dir(folder).output().expect("the tool starts")
 }
 
 fn text(bytes: &[u8]) -> String {
@@ -103,11 +102,11 @@ fn results_go_to_stdout_and_talk_to_stderr() {
     assert!(shown.contains("mohm") && shown.contains("0.2") && shown.contains("Estimate only"), "{shown}");
     assert!(shown.lines().all(|l| l.chars().count() <= 80) && !shown.contains('\u{1b}'), "{shown}");
     assert!(said.lines().all(|l| l.starts_with("pinchbar: ")) && said.contains("pinchbar-out"), "{said}");
-    assert_eq!(names(&here.path().join("pinchbar-out/strip")), OURS);
+    assert_eq!(names(&here.path().join("pinchbar-out/strip")), RESULTS);
 
     let quiet = tool(here.path(), &["map", "strip.toml", "--quiet", "--out", "there"]);
     assert_eq!((status(&quiet), text(&quiet.stderr).as_str()), (0, ""));
-    assert_eq!(names(&here.path().join("there")), OURS);
+    assert_eq!(names(&here.path().join("there")), RESULTS);
 }
 
 #[test]
@@ -138,7 +137,7 @@ fn a_broken_limit_ends_with_one_and_the_results_are_there() {
     let output = tool(here.path(), &["map", "strip.toml", "--out", "there"]);
     assert_eq!(status(&output), 1, "{}", text(&output.stderr));
     assert!(text(&output.stdout).contains("FAIL"));
-    assert_eq!(names(&here.path().join("there")), OURS);
+    assert_eq!(names(&here.path().join("there")), RESULTS);
 }
 
 #[test]
@@ -163,7 +162,7 @@ fn a_rerun_replaces_our_files_and_leaves_others_alone() {
     for _ in 0..2 {
         assert_eq!(status(&tool(here.path(), &["map", "strip.toml", "--out", "there"])), 0);
     }
-    let mut expected: Vec<String> = OURS.map(String::from).to_vec();
+    let mut expected: Vec<String> = RESULTS.map(String::from).to_vec();
     expected.push("notes.txt".into());
     expected.sort();
     assert_eq!(names(&there), expected, "and no temporary files");
@@ -194,8 +193,7 @@ fn a_closed_pipe_is_no_error() {
     let here = folder();
     strip(here.path(), "");
     for arguments in [&["metals"][..], &["--help"], &["check", "strip.toml"], &["map", "strip.toml", "--quiet", "--json"]] {
-        let mut child = Command::new(env!("CARGO_BIN_EXE_pinchbar"))
-            .args(arguments)
+        let mut child = support::tool(arguments)
             .current_dir(here.path())
             .stdout(Stdio::piped())
             .stderr(Stdio::piped())
@@ -212,7 +210,7 @@ fn the_built_in_demo_needs_no_job() {
     let here = folder();
     let output = tool(here.path(), &["map"]);
     let demo = here.path().join("pinchbar-out/demo");
-    assert_eq!(names(&demo), OURS, "{}", text(&output.stderr));
+    assert_eq!(names(&demo), RESULTS, "{}", text(&output.stderr));
     let failed = std::fs::read_to_string(demo.join("result.json")).expect("the result").contains("\"FAIL\"");
     assert_eq!(status(&output), i32::from(failed));
     let report = std::fs::read_to_string(demo.join("report.md")).expect("the report");
@@ -225,7 +223,7 @@ fn the_files_are_the_same_bytes_on_one_thread_and_on_two() {
     let runs = ["1", "2"].map(|n| tool(here.path(), &["map", "--threads", n, "--out", n]));
     assert_eq!(runs[0].stdout, runs[1].stdout);
     assert!(text(&runs[0].stdout).lines().all(|l| l.chars().count() <= 80), "{}", text(&runs[0].stdout));
-    for name in OURS {
+    for name in RESULTS {
         let [one, two] = ["1", "2"].map(|n| std::fs::read(here.path().join(n).join(name)).expect("a result"));
         assert!(one == two, "{name} differs");
     }

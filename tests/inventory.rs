@@ -1,10 +1,11 @@
 //! `pinchbar check` as it is called: faults that only the mesh shows are told with their place, and every job is looked at.
 
+use crate::support::tool;
 use std::path::Path;
-use std::process::{Command, Output};
+use std::process::Output;
 
 fn check(folder: &Path, arguments: &[&str]) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_pinchbar")).arg("check").args(arguments).current_dir(folder).output().expect("the tool starts")
+    tool(&[&["check"], arguments].concat()).current_dir(folder).output().expect("the tool starts")
 }
 
 /// Two strips that lap over 5 mm; the terminals stand at the far ends.

@@ -1,18 +1,17 @@
 //! The files of a result: the same bytes every time, whole or absent when the tool is killed, refused before the work where they cannot be.
 
+use crate::support::{self, RESULTS};
 use std::collections::BTreeMap;
 use std::path::Path;
 use std::process::{Command, Stdio};
 use std::time::{Duration, Instant};
 
-const OURS: [&str; 5] = ["heatmap.png", "hotspots.csv", "report.md", "result.json", "welds.csv"];
-
 /// How the names of files begin that are being written.
 const UNFINISHED: &str = ".pinchbar-";
 
 fn tool(arguments: &[&str]) -> Command {
-    let mut command = Command::new(env!("CARGO_BIN_EXE_pinchbar"));
-    command.args(arguments).stdin(Stdio::null()).stdout(Stdio::piped()).stderr(Stdio::piped());
+    let mut command = support::tool(arguments);
+    command.stdin(Stdio::null()).stdout(Stdio::piped()).stderr(Stdio::piped());
     command
 }
 
@@ -42,10 +41,10 @@ fn the_same_bytes_on_any_number_of_threads_and_every_time() {
             let shown = String::from_utf8(output.stdout).expect("UTF-8");
             runs.push((output.status.code(), shown, contents(&out)));
         }
-        assert_eq!(runs[0].2.keys().collect::<Vec<_>>(), OURS, "{job}");
+        assert_eq!(runs[0].2.keys().collect::<Vec<_>>(), RESULTS, "{job}");
         for run in &runs[1..] {
             assert_eq!((run.0, &run.1), (runs[0].0, &runs[0].1), "{job}");
-            let differing: Vec<&str> = OURS.into_iter().filter(|&name| run.2[name] != runs[0].2[name]).collect();
+            let differing: Vec<&str> = RESULTS.into_iter().filter(|&name| run.2[name] != runs[0].2[name]).collect();
             assert!(differing.is_empty(), "{job}: {differing:?}");
         }
     }
@@ -72,7 +71,7 @@ fn killed(job: &str, out: &Path, moment: Moment, old: &BTreeMap<String, Vec<u8>>
         Moment::Placed(count) => {
             let length = |name: &str| std::fs::metadata(out.join(name)).ok().map(|m| m.len());
             let is_new = |name: &str| length(name).is_some_and(|l| old.get(name).is_none_or(|o| o.len() as u64 != l));
-            OURS.into_iter().filter(|name| is_new(name)).count() >= count
+            RESULTS.into_iter().filter(|name| is_new(name)).count() >= count
         }
     };
     while !due() && child.try_wait().expect("its state").is_none() {
@@ -109,7 +108,7 @@ fn a_killed_run_leaves_whole_files_or_none() {
     let (old, _) = undisturbed("old");
     sheet(7.25, "The newer");
     let (new, whole_time) = undisturbed("new");
-    assert!(OURS.iter().all(|&name| old[name].len() != new[name].len()), "the two are told apart by their lengths");
+    assert!(RESULTS.iter().all(|&name| old[name].len() != new[name].len()), "the two are told apart by their lengths");
 
     let mut rng = fastrand::Rng::with_seed(5);
     let random = (0..12).map(|_| Moment::After(whole_time.mul_f64(rng.f64())));

@@ -1,6 +1,7 @@
 //! `pinchbar check`: read, validate, print the inventory; solve nothing.
 
-use super::{Ending, files, late, map, terminal};
+use super::late::{self, Stop};
+use super::{Ending, files, refused, terminal};
 use crate::diagnostic::Fault;
 use crate::physics::connections;
 use crate::reading::{self, Reading};
@@ -39,14 +40,7 @@ pub fn run(jobs: &[PathBuf], as_json: bool, quiet: bool) -> io::Result<Ending> {
     let mut list = Vec::new();
     for (number, job) in jobs.iter().enumerate() {
         let name = job.display().to_string();
-        let checked = match read(job) {
-            Ok(checked) => checked,
-            Err(ours) => {
-                terminal::say(&format!("{name}: {ours}"));
-                return Ok(Ending::Failed);
-            }
-        };
-        match checked {
+        match read(job) {
             Ok(reading) => {
                 let found = inventory(&reading.problem, reading.remarks);
                 if as_json {
@@ -56,8 +50,12 @@ pub fn run(jobs: &[PathBuf], as_json: bool, quiet: bool) -> io::Result<Ending> {
                     terminal::print(&format!("{gap}{}", text(&found)))?;
                 }
             }
-            Err(faults) => {
-                ending = map::refused(&faults);
+            Err(Stop::Failed(ours)) => {
+                terminal::say(&format!("{name}: {ours}"));
+                return Ok(Ending::Failed);
+            }
+            Err(Stop::Refused(faults)) => {
+                ending = refused(&faults);
                 list.push(Checked { job: name, valid: false, inventory: None, faults: faults.iter().map(told).collect() });
             }
         }
@@ -68,19 +66,11 @@ pub fn run(jobs: &[PathBuf], as_json: bool, quiet: bool) -> io::Result<Ending> {
     Ok(ending)
 }
 
-/// A job with all that is wrong with it, also what only its mesh shows; the outer error is a failure of the tool.
-fn read(job: &Path) -> Result<Result<Reading, Vec<Fault>>, String> {
-    let reading = match reading::read(job, &files::load) {
-        Ok(reading) => reading,
-        Err(faults) => return Ok(Err(faults)),
-    };
-    match connections::check(&reading.problem) {
-        Ok(()) => Ok(Ok(reading)),
-        Err(faults) => match faults.iter().find(|f| late::is_ours(f)) {
-            Some(ours) => Err(ours.to_string()),
-            None => Ok(Err(faults.iter().map(|f| late::placed(f, &reading.problem, &reading.origins)).collect())),
-        },
-    }
+/// A job without fault, also of the kind that only its mesh shows.
+fn read(job: &Path) -> Result<Reading, Stop> {
+    let reading = reading::read(job, &files::load).map_err(Stop::Refused)?;
+    connections::check(&reading.problem).map_err(|faults| late::stop(&faults, &reading.problem, &reading.origins))?;
+    Ok(reading)
 }
 
 fn told(fault: &Fault) -> Told {

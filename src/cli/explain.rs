@@ -1,7 +1,7 @@
 //! Faults as text for a terminal: what is wrong, where, an excerpt, what was expected, one remedy.
 
 use crate::diagnostic::{Fault, Span};
-use crate::report::table::wrapped;
+use crate::report::words::{one_line, wrapped};
 use annotate_snippets::{Annotation, AnnotationKind, Group, Level, Renderer, Snippet};
 use std::fmt::Write;
 
@@ -26,14 +26,14 @@ pub fn explain(faults: &[Fault], colour: bool) -> String {
 fn explain_one(text: &mut String, fault: &Fault, colour: bool) {
     // Writing to a String cannot fail.
     let _ = match &fault.span {
-        Some(span) => writeln!(text, "pinchbar: {}: {}", place(span), printable(&fault.message)),
-        None => writeln!(text, "pinchbar: {}", printable(&fault.message)),
+        Some(span) => writeln!(text, "pinchbar: {}: {}", place(span), one_line(&fault.message)),
+        None => writeln!(text, "pinchbar: {}", one_line(&fault.message)),
     };
     if let Some(span) = &fault.span {
         text.push_str(&excerpt(span, AnnotationKind::Primary, colour));
     }
     for label in &fault.labels {
-        let _ = writeln!(text, "  {}: {}", place(&label.span), printable(&label.text));
+        let _ = writeln!(text, "  {}: {}", place(&label.span), one_line(&label.text));
         text.push_str(&excerpt(&label.span, AnnotationKind::Context, colour));
     }
     for (word, part) in [("expected", &fault.expected), ("remedy", &fault.remedy)] {
@@ -48,11 +48,6 @@ fn explain_one(text: &mut String, fault: &Fault, colour: bool) {
 fn place(span: &Span) -> String {
     let (line, column) = span.line_column();
     format!("{}:{line}:{column}", span.source.path.display())
-}
-
-/// Control characters of the input must not reach a terminal.
-fn printable(text: &str) -> String {
-    text.chars().map(|c| if c.is_control() { ' ' } else { c }).collect()
 }
 
 /// The line of a span with the span marked; a long line is cut around it.

@@ -7,13 +7,30 @@ use crate::physics::Fault as Late;
 use crate::problem::{Drive, MeasuredJoint, Problem};
 use crate::reading::Origins;
 
+/// Why a job comes to nothing.
+#[derive(Debug)]
+pub enum Stop {
+    /// The input is at fault.
+    Refused(Vec<Fault>),
+    /// The tool failed.
+    Failed(String),
+}
+
+/// What late faults mean: one of the tool's own outweighs those of the input.
+pub fn stop(faults: &[Late], problem: &Problem, origins: &Origins) -> Stop {
+    match faults.iter().find(|fault| is_ours(fault)) {
+        Some(ours) => Stop::Failed(ours.to_string()),
+        None => Stop::Refused(faults.iter().map(|fault| placed(fault, problem, origins)).collect()),
+    }
+}
+
 /// True when the tool failed, not the input.
-pub fn is_ours(fault: &Late) -> bool {
+fn is_ours(fault: &Late) -> bool {
     matches!(fault, Late::Unfitted | Late::Numerical(_) | Late::Mesh(MeshFault::Triangulation(_)))
 }
 
 /// The fault with its place, what was expected and a remedy.
-pub fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
+fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
     let name = |k: ElectrodeId| problem.electrodes.get(k.index()).map_or("?", |e| e.name.as_str());
     let label = |k: ElectrodeId| Label { span: origins.electrode(k).clone(), text: format!("`{}` is here", name(k)) };
     let first = |list: &[ElectrodeId]| list.first().map_or(origins.title(), |&k| origins.electrode(k)).clone();
@@ -122,10 +139,18 @@ mod tests {
             (Late::SpotOff(a), 7, "`in`"),
         ];
         for (late, line, part) in cases {
-            let fault = placed(&late, &problem, &origins);
-            assert!(!is_ours(&late) && fault.message.contains(part), "{fault:?}");
+            let Stop::Refused(faults) = stop(&[late], &problem, &origins) else { panic!("{part}: no fault of the input") };
+            let [fault] = <[Fault; 1]>::try_from(faults).expect("one fault");
+            assert!(fault.message.contains(part), "{fault:?}");
             assert_eq!(fault.span.map(|s| s.line_column().0), Some(line), "{}", fault.message);
             assert!(fault.remedy.is_some_and(|r| !r.is_empty()) && fault.expected.is_some(), "{}", fault.message);
         }
+    }
+
+    #[test]
+    fn a_failure_of_the_tool_is_not_laid_on_the_input() {
+        let Reading { problem, origins, .. } = read(Path::new("job.toml"), &|_| Ok(SHEET.into())).expect("a valid sheet");
+        let faults = [Late::SpotOff(ElectrodeId::new(0)), Late::Numerical("a pivot is not positive".into())];
+        assert!(matches!(stop(&faults, &problem, &origins), Stop::Failed(text) if text.contains("pivot")));
     }
 }

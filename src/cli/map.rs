@@ -1,6 +1,7 @@
 //! `pinchbar map`: read, solve, find, show.
 
-use super::{Ending, explain, files, late, progress::Progress, terminal};
+use super::late::{self, Stop};
+use super::{Ending, files, progress::Progress, refused, terminal};
 use crate::diagnostic::{Fault, Remark};
 use crate::findings::{self, Findings, Verdict};
 use crate::physics;
@@ -48,14 +49,6 @@ struct Mapped {
     picture: Option<Vec<u8>>,
 }
 
-/// Why there is nothing to write.
-enum Stop {
-    /// The input is at fault.
-    Refused(Vec<Fault>),
-    /// The tool failed.
-    Failed(String),
-}
-
 /// Runs the command.
 ///
 /// # Errors
@@ -85,10 +78,7 @@ fn mapped(request: &Request) -> Result<Mapped, Stop> {
     }
     let listener = |stage| progress.show(stage);
     let found = physics::fit(&mut problem, &listener).and_then(|()| findings::find_with(&problem, &listener));
-    let mut found = found.map_err(|faults| match faults.iter().find(|f| late::is_ours(f)) {
-        Some(ours) => Stop::Failed(ours.to_string()),
-        None => Stop::Refused(faults.iter().map(|f| late::placed(f, &problem, &origins)).collect()),
-    })?;
+    let mut found = found.map_err(|faults| late::stop(&faults, &problem, &origins))?;
     clock.lap("solve");
     found.findings.remarks.splice(0..0, remarks);
     progress.show(Stage::Drawing);
@@ -154,12 +144,6 @@ fn show(request: &Request, mapped: &Mapped) -> io::Result<Ending> {
     }
     let broken = findings.verdicts.iter().any(|v| v.verdict == Verdict::Fail);
     Ok(if broken { Ending::LimitBroken } else { Ending::Done })
-}
-
-/// Shows the faults of the input.
-pub fn refused(faults: &[Fault]) -> Ending {
-    terminal::complain(&explain::explain(faults, terminal::colour()));
-    Ending::BadInput
 }
 
 /// Wall time of the stages.

@@ -3,7 +3,7 @@
 use super::{Ending, terminal};
 use crate::problem::material::{Evidence, METALS, TabledResistivity};
 use crate::report;
-use crate::report::table::wrapped;
+use crate::report::words::wrapped;
 use serde::Serialize;
 use std::io;
 

@@ -11,6 +11,7 @@ pub mod progress;
 pub mod start;
 pub mod terminal;
 
+use crate::diagnostic::Fault;
 use crate::starting::Order;
 use args::{Arrangement, Command, Common};
 use std::ffi::OsString;
@@ -83,6 +84,12 @@ fn dispatched(arguments: impl Iterator<Item = OsString>) -> ExitCode {
         Command::Completions { shell } => terminal::print_bytes(&args::completions(*shell)).map(|()| Ending::Done),
         Command::Manual => args::manual().and_then(|page| terminal::print_bytes(&page)).map(|()| Ending::Done),
     })
+}
+
+/// Shows the faults of the input.
+fn refused(faults: &[Fault]) -> Ending {
+    terminal::complain(&explain::explain(faults, terminal::colour()));
+    Ending::BadInput
 }
 
 fn finish(outcome: std::io::Result<Ending>) -> ExitCode {

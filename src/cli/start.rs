@@ -1,6 +1,6 @@
 //! `pinchbar start`: a commented job sheet and its outline, to begin from.
 
-use super::{Ending, files, map, terminal};
+use super::{Ending, files, refused, terminal};
 use crate::quantity::coordinate;
 use crate::report::json::json;
 use crate::starting::{Order, Plate, text};
@@ -22,11 +22,11 @@ struct Started {
 pub fn run(folder: &Path, order: &Order, as_json: bool, quiet: bool) -> io::Result<Ending> {
     let plate = match Plate::new(order) {
         Ok(plate) => plate,
-        Err(fault) => return Ok(map::refused(&[fault])),
+        Err(fault) => return Ok(refused(&[fault])),
     };
     let contents = [(text::SHEET, text::sheet(order, &plate)), (text::OUTLINE, text::outline(order, &plate))];
     if let Err(fault) = files::write_new(folder, &contents, "give `start` another folder") {
-        return Ok(map::refused(&[fault]));
+        return Ok(refused(&[fault]));
     }
     let written = contents.map(|(name, _)| folder.join(name).display().to_string());
     let next = format!("pinchbar map {}", quoted(&written[0]));

@@ -5,8 +5,7 @@ use super::hotspot::{self, HotspotPlace, survey};
 use super::section;
 use super::verdict::{largest_drop_mv, verdicts};
 use super::*;
-use crate::geometry::{Point, nested_area};
-use crate::index::{ContactId, ElectrodeId, JoinId};
+use crate::index::{ContactId, ElectrodeId, JoinId, LayerId};
 use crate::physics::network::{Interval, LARGEST_RESIDUAL};
 use crate::physics::plan::Mark;
 use crate::physics::solution::Passed;
@@ -94,25 +93,21 @@ fn crossings(problem: &Problem, density: &DensityField) -> Result<Vec<CrossingFi
 
 fn found(problem: &Problem, solution: &Solution) -> Findings {
     let loss = Enclosure::from(solution.loss);
-    let passed = |mark: Mark| solution.passed.get(&mark).copied().unwrap_or_default();
     // The parts are means of both bounds at the discrete currents; scaled, they add up to the middle of the loss exactly.
     let parts = solution.layer_loss.iter().sum::<f64>() + solution.passed.values().map(|p| p.loss).sum::<f64>();
     let scale = if parts > 0.0 { loss.value / parts } else { 0.0 };
     let electrodes: Vec<ElectrodeFinding> = (0..problem.electrodes.len()).map(|k| electrode(problem, solution, k, scale)).collect();
-    let layers = problem.layers.iter().zip(&solution.layer_loss).map(|(layer, layer_loss)| {
-        let area_mm2 = nested_area(&layer.rings);
-        LayerFinding {
-            name: layer.name.clone(),
-            metal: layer.material.name.clone(),
-            area_mm2,
-            mass_g: layer.material.density_g_cm3.map(|d| area_mm2 * layer.thickness_mm * d * 1e-3),
-            loss_w: layer_loss * scale,
-            peak_a_mm2: 0.0,
-        }
+    let layers = problem.layers.iter().zip(&solution.layer_loss).map(|(layer, layer_loss)| LayerFinding {
+        name: layer.name.clone(),
+        metal: layer.material.name.clone(),
+        area_mm2: layer.area_mm2(),
+        mass_g: layer.mass_g(),
+        loss_w: layer_loss * scale,
+        peak_a_mm2: 0.0,
     });
-    let names = |between: [crate::index::LayerId; 2]| between.map(|l| problem.layers[l.index()].name.clone());
+    let names = |between: [LayerId; 2]| between.map(|l| problem.layers[l.index()].name.clone());
     let contacts = problem.contacts.iter().enumerate().map(|(c, contact)| {
-        let through = passed(Mark::Contact(ContactId::new(c)));
+        let through = passed(solution, Mark::Contact(ContactId::new(c)));
         let resistive = contact.interface != Interface::Bonded;
         ContactFinding {
             name: contact.name.clone(),
@@ -125,8 +120,8 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
     let joins = problem.joins.iter().enumerate().flat_map(|(j, join)| {
         let between = names(join.between);
         join.spots.iter().enumerate().map(move |(i, spot)| {
-            let through = passed(Mark::Join(JoinId::new(j), i as u32));
-            let at = middle(spot);
+            let through = passed(solution, Mark::Join(JoinId::new(j), i as u32));
+            let at = spot.middle();
             JoinFinding {
                 between: between.clone(),
                 x_mm: at.x,
@@ -137,8 +132,7 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
             }
         })
     });
-    let last = solution.run.rounds.last();
-    let mut findings = Findings {
+    Findings {
         schema: 1,
         title: problem.title.clone(),
         version: env!("CARGO_PKG_VERSION").into(),
@@ -167,11 +161,16 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
             .collect(),
         crossings: Vec::new(),
         verdicts: Vec::new(),
-        remarks: Vec::new(),
-    };
+        remarks: remarks(problem, solution),
+    }
+}
+
+/// What limits the worth of the figures, as the solving went.
+fn remarks(problem: &Problem, solution: &Solution) -> Vec<Remark> {
+    let mut remarks = Vec::new();
     if !solution.run.reached {
-        let gap = last.map_or(0.0, |r| 100.0 * r.gap);
-        findings.remarks.push(Remark::new(format!(
+        let gap = solution.run.rounds.last().map_or(0.0, |r| 100.0 * r.gap);
+        remarks.push(Remark::new(format!(
             "Accuracy not reached: near the vertex limit of {} the loss is enclosed to {gap:.3} % and the voltages to {:.3} % of the largest difference; {} % was asked for. All intervals hold.",
             problem.accuracy.max_vertices,
             100.0 * solution.run.voltage_spread,
@@ -179,27 +178,27 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
         )));
     }
     for measured in &problem.measured {
-        findings.remarks.push(Remark::new(fitted(problem, measured)));
+        remarks.push(Remark::new(fitted(problem, measured)));
     }
     let moves = solution.run.moves;
     if moves.count > 0 {
-        findings.remarks.push(Remark::new(format!(
+        remarks.push(Remark::new(format!(
             "{} points or edges of the drawing were snapped together, by {:.2e} mm at most.",
             moves.count, moves.largest_mm
         )));
     }
     if !solution.run.angles_reached {
-        findings.remarks.push(Remark::new(
+        remarks.push(Remark::new(
             "The first mesh kept some thin triangles for want of vertices: more rounds were needed, the intervals hold.",
         ));
     }
     if solution.run.residual > LARGEST_RESIDUAL {
-        findings.remarks.push(Remark::new(format!(
+        remarks.push(Remark::new(format!(
             "The linear solve left a residual of {:.1e}: the intervals are NOT guaranteed. Look for resistances or thicknesses many powers of ten apart.",
             solution.run.residual
         )));
     }
-    findings
+    remarks
 }
 
 /// What became of a joint that was given as measured.
@@ -231,11 +230,10 @@ fn electrode(problem: &Problem, solution: &Solution, k: usize, scale: f64) -> El
     let electrode = &problem.electrodes[k];
     let solved = &solution.electrodes[k];
     let id = ElectrodeId::new(k);
-    let passed = |mark: Mark| solution.passed.get(&mark).copied().unwrap_or_default();
     let group_sum: f64 = members(problem, electrode).map(|j| solution.electrodes[j].current).sum();
     let spots = electrode.spots.iter().enumerate().map(|(i, spot)| {
-        let through = passed(Mark::Spot(id, i as u32));
-        let at = middle(&spot.footprint);
+        let through = passed(solution, Mark::Spot(id, i as u32));
+        let at = spot.footprint.middle();
         SpotFinding {
             x_mm: at.x,
             y_mm: at.y,
@@ -245,7 +243,9 @@ fn electrode(problem: &Problem, solution: &Solution, k: usize, scale: f64) -> El
             rim_a_mm2: None,
         }
     });
-    let loss: f64 = (0..electrode.spots.len() as u32).map(|i| passed(Mark::Spot(id, i)).loss + passed(Mark::Within(id, i)).loss).sum();
+    let loss: f64 = (0..electrode.spots.len() as u32)
+        .map(|i| passed(solution, Mark::Spot(id, i)).loss + passed(solution, Mark::Within(id, i)).loss)
+        .sum();
     ElectrodeFinding {
         name: electrode.name.clone(),
         kind: match electrode.kind {
@@ -268,27 +268,13 @@ fn members<'a>(problem: &'a Problem, electrode: &'a Electrode) -> impl Iterator<
     (0..problem.electrodes.len()).filter(move |&j| electrode.kind == ElectrodeKind::Cell && same(&problem.electrodes[j]))
 }
 
-fn mean_drop_mv(through: &Passed) -> f64 {
-    if through.extent > 0.0 { 1e3 * through.difference / through.extent } else { 0.0 }
+/// What passes the spots and areas of a mark; nothing where it was never meshed.
+fn passed(solution: &Solution, mark: Mark) -> Passed {
+    solution.passed.get(&mark).copied().unwrap_or_default()
 }
 
-/// The middle of a spot; half-way along a line.
-fn middle(footprint: &Footprint) -> Point {
-    match footprint {
-        Footprint::Area { centre, .. } => *centre,
-        Footprint::Line { points } => {
-            let length: f64 = points.windows(2).map(|p| p[0].distance(p[1])).sum();
-            let mut left = 0.5 * length;
-            for pair in points.windows(2) {
-                let step = pair[0].distance(pair[1]);
-                if left <= step && step > 0.0 {
-                    return pair[0] + (pair[1] - pair[0]) * (left / step);
-                }
-                left -= step;
-            }
-            points.first().copied().unwrap_or_default()
-        }
-    }
+fn mean_drop_mv(through: &Passed) -> f64 {
+    if through.extent > 0.0 { 1e3 * through.difference / through.extent } else { 0.0 }
 }
 
 #[cfg(test)]

@@ -1,7 +1,8 @@
 //! Current density per sheet and its gauge mean: the mean of |J| over a disc clipped to the connected metal that holds its centre.
 
-use super::metal::{LayerMetal, Place, nearest_on_segment};
+use super::metal::{LayerMetal, Place};
 use crate::geometry::Point;
+use crate::geometry::predicate::nearest_on_segment;
 use crate::index::LayerId;
 use crate::mesh::NONE;
 use crate::physics::Solution;
@@ -20,20 +21,6 @@ impl DensityField {
     /// shared by the sheets' conductances; held triangles carry none.
     pub fn new(problem: &Problem, solution: &Solution) -> Self {
         Self { layers: (0..problem.layers.len()).map(|l| LayerMetal::new(problem, solution, LayerId::new(l))).collect() }
-    }
-
-    /// Gauge mean at a point of a sheet, A/mm²; `None` off the metal.
-    pub fn gauge_mean(&self, layer: LayerId, centre: Point) -> Option<f64> {
-        let metal = self.layers.get(layer.index())?;
-        let place = metal.locate(centre, 1e-3)?;
-        Some(Disc::new(metal).mean(place, metal.gauge).mean)
-    }
-
-    /// The largest gauge mean near a start, by a search that goes uphill, and its centre; `None` off the metal.
-    pub fn gauge_peak_near(&self, layer: LayerId, start: Point) -> Option<(f64, Point)> {
-        let metal = self.layers.get(layer.index())?;
-        let (mean, place) = Disc::new(metal).climb(metal.locate(start, 1e-3)?, &|_| true);
-        Some((mean, place.point))
     }
 
     /// The largest gauge mean of discs that touch a rim (closed loops of points) or lie across it; `None` where no part of the rim is on the metal.
@@ -274,6 +261,13 @@ mod tests {
     use super::super::trial::*;
     use super::*;
 
+    /// Gauge mean at a point of a sheet; `None` off the metal.
+    fn gauge_mean(density: &DensityField, layer: usize, centre: Point) -> Option<f64> {
+        let metal = &density.layers[layer];
+        let place = metal.locate(centre, 1e-3)?;
+        Some(Disc::new(metal).mean(place, metal.gauge).mean)
+    }
+
     #[test]
     fn circle_and_triangle_share_the_area_that_counting_finds() {
         let mut random = fastrand::Rng::with_seed(7);
@@ -303,10 +297,9 @@ mod tests {
         let ends = terminals(line(&[(0.0, 0.0), (0.0, 2.0)]), line(&[(40.0, 0.0), (40.0, 2.0)]), 0, 2.0);
         let job = problem(vec![sheet("a", vec![ring], 1.0)], ends, 1e-3, 1.0);
         let (_, density, _) = surveyed(&job);
-        let mean = |y: f64| density.gauge_mean(LayerId(0), Point::new(10.0, y)).unwrap();
+        let mean = |y: f64| gauge_mean(&density, 0, Point::new(10.0, y)).unwrap();
         assert!((mean(1.99) - 1.0).abs() < 1e-3 && mean(2.11) < 1e-3, "{} {}", mean(1.99), mean(2.11));
-        assert_eq!(density.gauge_mean(LayerId(0), Point::new(10.0, 2.05)), None);
-        assert_eq!(density.gauge_mean(LayerId(3), Point::new(10.0, 1.0)), None);
+        assert_eq!(gauge_mean(&density, 0, Point::new(10.0, 2.05)), None);
     }
 
     #[test]
@@ -323,7 +316,7 @@ mod tests {
         let found = density.rim_peak(LayerId(0), &[nugget]).unwrap();
         assert!((found / expected - 1.0).abs() < 0.03, "{found} {expected}");
         assert!((survey.rows[0].peak_a_mm2 / found - 1.0).abs() < 0.03);
-        let far = density.gauge_mean(LayerId(0), Point::new(0.0, 8.0)).unwrap();
+        let far = gauge_mean(&density, 0, Point::new(0.0, 8.0)).unwrap();
         assert!((far / (10.0 / (std::f64::consts::TAU * 8.0)) - 1.0).abs() < 0.03, "{far}");
     }
 
@@ -340,7 +333,7 @@ mod tests {
         });
         let (_, density, survey) = surveyed(&job);
         for layer in [0, 1] {
-            let mean = density.gauge_mean(LayerId(layer), Point::new(10.0, 2.5)).unwrap();
+            let mean = gauge_mean(&density, layer, Point::new(10.0, 2.5)).unwrap();
             assert!((mean - 2.0).abs() < 1e-9, "{mean}");
         }
         let crossing = super::super::section::crossing_current(&density, Point::new(7.0, -1.0), Point::new(7.0, 6.0)).unwrap();

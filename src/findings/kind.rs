@@ -15,8 +15,9 @@
 use super::HotspotKind;
 use super::gauge::Disc;
 use super::hotspot::Setting;
-use super::metal::{LayerMetal, Place, nearest_on_segment};
+use super::metal::{LayerMetal, Place};
 use super::section::{Section, width_through};
+use crate::geometry::predicate::nearest_on_segment;
 use crate::geometry::ring::Arc;
 use crate::geometry::{Point, Region};
 use crate::index::LayerId;

@@ -1,6 +1,7 @@
 //! The metal of one sheet as it was meshed: triangles with their currents and neighbours, finding a point, and walking along straight lines.
 
 use crate::fem::{FarEnd, Link};
+use crate::geometry::predicate::nearest_on_segment;
 use crate::geometry::{BoundingBox, Point};
 use crate::index::LayerId;
 use crate::mesh::NONE;
@@ -255,13 +256,6 @@ fn nearest_in_triangle(corners: [Point; 3], p: Point) -> (f64, Point) {
         }
     }
     if inside { (0.0, p) } else { best }
-}
-
-/// The point of a segment nearest to a point.
-pub fn nearest_on_segment(a: Point, b: Point, p: Point) -> Point {
-    let way = b - a;
-    let square = way.dot(way);
-    if square == 0.0 { a } else { a + way * ((p - a).dot(way) / square).clamp(0.0, 1.0) }
 }
 
 /// Triangles by the squares of a uniform grid that their boxes meet.

@@ -216,11 +216,11 @@ pub struct Hotspot {
     pub peak_a_mm2: f64,
     /// Diameter of the gauge disc.
     pub gauge_mm: f64,
-    /// Width of the section; `None` while sections are not found.
+    /// Width of the section, or length of a weld's rim; `None` where every straight cut runs into a held patch.
     pub width_mm: Option<f64>,
-    /// Current through the section.
+    /// Current through the section or rim.
     pub section_a: Option<f64>,
-    /// Mean density in the section.
+    /// Mean density in the section or rim.
     pub section_a_mm2: Option<f64>,
     /// Gauge peak over section mean.
     pub crowding: Option<f64>,

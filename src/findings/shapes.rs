@@ -34,7 +34,7 @@ fn a_uniform_strip_has_one_row_at_mid_length() {
 
 #[test]
 fn a_hole_in_a_strip_has_its_peaks_beside_the_hole() {
-    // checks.md B15 (limit of small holes: potential flow past a cylinder, Lamb).
+    // The limit of small holes is potential flow past a cylinder (Lamb).
     for (part, ratio, kind) in
         [(0.1, 2.06940028, HotspotKind::HoleEdge), (0.2, 2.32872166, HotspotKind::HoleEdge), (0.3, 3.02206308, HotspotKind::Neck)]
     {
@@ -71,7 +71,7 @@ fn bend(radius: f64, bracket: f64, gauge: f64) -> Problem {
 
 #[test]
 fn a_fillet_peaks_as_published() {
-    // checks.md B22 (for the effect: Hagedorn and Hall 1963, Clem and Berggren 2011).
+    // For the effect: Hagedorn and Hall 1963, Clem and Berggren 2011.
     for (part, ratio) in [(0.25, 2.06451), (0.5, 1.617003)] {
         let (.., survey) = surveyed(&bend(7.0 * part, 1e-3, 0.04 * 7.0 * part));
         assert_eq!(survey.rows.len(), 1);
@@ -95,7 +95,7 @@ fn a_sharp_inside_corner_is_one_row_that_says_its_peak_is_infinite() {
 
 #[test]
 fn an_arc_bend_crowds_at_its_inner_radius() {
-    // checks.md B11: J = I / (t r ln(r2 / r1)), radii 8 and 15.
+    // Current along circles: J = I / (t r ln(r2 / r1)), radii 8 and 15.
     let quarter = (std::f64::consts::PI / 8.0).tan();
     let ring = bulged(&[(8.0, 0.0, 0.0), (15.0, 0.0, quarter), (0.0, 15.0, 0.0), (0.0, 8.0, -quarter)]);
     let ends = terminals(line(&[(8.0, 0.0), (15.0, 0.0)]), line(&[(0.0, 15.0), (0.0, 8.0)]), 0, 7.0);
@@ -107,7 +107,7 @@ fn an_arc_bend_crowds_at_its_inner_radius() {
 
 #[test]
 fn slots_leave_one_neck() {
-    // checks.md B17: notches from both sides leave 4 of 10 mm.
+    // Notches from both sides leave 4 of 10 mm.
     let (.., survey) = surveyed(&slotted(1e-3));
     assert_eq!(survey.rows.len(), 1);
     let row = &survey.rows[0];
@@ -211,7 +211,7 @@ fn a_lap_has_no_crowding_in_the_plane() {
 
 #[test]
 fn the_end_of_a_bonded_patch_is_an_overlay_end() {
-    // checks.md B21 with a doubler of three times the conductance: current crowds into it where it begins.
+    // A doubler makes the conductance three times as large: current crowds into it where it begins.
     let strip = polygon(&[(0.0, 0.0), (60.0, 0.0), (60.0, 10.0), (0.0, 10.0)]);
     let patch = polygon(&[(20.0, 0.0), (34.0, 0.0), (34.0, 5.0), (20.0, 5.0)]);
     let ends = terminals(line(&[(0.0, 0.0), (0.0, 10.0)]), line(&[(60.0, 0.0), (60.0, 10.0)]), 0, 10.0);

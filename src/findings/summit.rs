@@ -6,6 +6,7 @@ use super::kind::attaches;
 use super::metal::{LayerMetal, Place};
 use crate::mesh::{Mesh, NONE};
 use crate::physics::plan::Area;
+use crate::union::Sets;
 use rayon::prelude::*;
 
 /// A place is looked at when |J| falls by this factor on every way from it to a higher place.
@@ -15,13 +16,13 @@ const PROMINENCE: f64 = 1.03;
 const MOST_STARTS: usize = 48;
 
 /// |J| at the vertices of a sheet: the mean over the triangles around them, held ones left out.
-struct Nodes {
+struct Vertices {
     value: Vec<f64>,
     /// A triangle at the vertex: the one with the largest |J|.
     at: Vec<u32>,
 }
 
-impl Nodes {
+impl Vertices {
     fn new(mesh: &Mesh, metal: &LayerMetal) -> Self {
         let mut value = vec![0.0; mesh.points.len()];
         let mut area = vec![0.0; mesh.points.len()];
@@ -40,24 +41,24 @@ impl Nodes {
     }
 
     /// A vertex as a place: a hair inside the triangle, because a walk from the very tip of a re-entrant corner may leave the metal at once.
-    fn place(&self, mesh: &Mesh, metal: &LayerMetal, vertex: u32) -> Option<Place> {
-        let triangle = self.at[vertex as usize];
+    fn place(&self, mesh: &Mesh, metal: &LayerMetal, vertex: usize) -> Option<Place> {
+        let triangle = self.at[vertex];
         if triangle == NONE {
             return None;
         }
-        let tip = mesh.points[vertex as usize];
+        let tip = mesh.points[vertex];
         Some(Place { triangle, point: tip + (metal.at(triangle).middle() - tip) * 1e-3 })
     }
 
     /// Vertices of at least this value from which every way to a higher one leads down by [`PROMINENCE`].
-    fn summits(&self, mesh: &Mesh, metal: &LayerMetal, least: f64) -> Vec<u32> {
-        let value = |v: u32| self.value[v as usize];
-        let mut edges: Vec<(f64, [u32; 2])> = Vec::new();
+    fn summits(&self, mesh: &Mesh, metal: &LayerMetal, least: f64) -> Vec<usize> {
+        let value = |v: usize| self.value[v];
+        let mut edges: Vec<(f64, [usize; 2])> = Vec::new();
         for (t, triangle) in metal.triangles.iter().enumerate() {
             for k in 0..3 {
                 // Each edge once: with the first of its triangles.
                 if triangle.neighbours[k] == NONE || triangle.neighbours[k] > t as u32 {
-                    let ends = mesh.edges.ends[mesh.edges.of_triangle[triangle.triangle as usize][k] as usize];
+                    let ends = mesh.edges.ends[mesh.edges.of_triangle[triangle.triangle as usize][k] as usize].map(|v| v as usize);
                     let saddle = value(ends[0]).min(value(ends[1]));
                     if saddle >= least {
                         edges.push((saddle, ends));
@@ -66,29 +67,19 @@ impl Nodes {
             }
         }
         edges.sort_unstable_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
-        let mut parent: Vec<u32> = (0..self.value.len() as u32).collect();
-        let mut root = |mut v: u32, link: Option<u32>| {
-            while parent[v as usize] != v {
-                parent[v as usize] = parent[parent[v as usize] as usize];
-                v = parent[v as usize];
-            }
-            if let Some(link) = link {
-                parent[v as usize] = link;
-            }
-            v
-        };
+        let mut sets = Sets::new(self.value.len());
         let mut summits = Vec::new();
         for (saddle, [a, b]) in edges {
-            let (a, b) = (root(a, None), root(b, None));
+            let (a, b) = (sets.root(a), sets.root(b));
             if a != b {
                 let (high, low) = if value(a) > value(b) || value(a) == value(b) && a < b { (a, b) } else { (b, a) };
-                root(low, Some(high));
+                sets.join_under(high, low);
                 if value(low) >= PROMINENCE * saddle {
                     summits.push(low);
                 }
             }
         }
-        summits.extend((0..self.value.len() as u32).filter(|&v| value(v) >= least && root(v, None) == v));
+        summits.extend((0..self.value.len()).filter(|&v| value(v) >= least && sets.root(v) == v));
         summits
     }
 }
@@ -97,21 +88,21 @@ impl Nodes {
 /// Places below `least` of the highest are left out.
 pub fn starts(setting: &Setting, metal: &LayerMetal, mean: f64, least: &dyn Fn(f64) -> f64) -> Option<Vec<Place>> {
     let mesh = &setting.solution.mesh;
-    let nodes = Nodes::new(mesh, metal);
-    let highest = nodes.value.iter().fold(0.0, |m: f64, &v| m.max(v));
+    let vertices = Vertices::new(mesh, metal);
+    let highest = vertices.value.iter().fold(0.0, |m: f64, &v| m.max(v));
     if highest <= PROMINENCE * mean {
         return None;
     }
     // Measured by its gauge mean: the value at a vertex grows without end where triangles get smaller at a corner.
-    let top = (0..nodes.value.len()).rfind(|&v| nodes.value[v] == highest).and_then(|v| nodes.place(mesh, metal, v as u32));
+    let top = (0..vertices.value.len()).rfind(|&v| vertices.value[v] == highest).and_then(|v| vertices.place(mesh, metal, v));
     let least = least(top.map_or(0.0, |place| Disc::new(metal).mean(place, metal.gauge).mean).min(highest));
-    Some(thinned(setting, metal, &nodes, nodes.summits(mesh, metal, least)))
+    Some(thinned(setting, metal, &vertices, vertices.summits(mesh, metal, least)))
 }
 
 /// The places to look at closely: the highest gauge means, one per spot of an electrode or join, none within half a gauge of a higher one.
-fn thinned(setting: &Setting, metal: &LayerMetal, nodes: &Nodes, summits: Vec<u32>) -> Vec<Place> {
+fn thinned(setting: &Setting, metal: &LayerMetal, vertices: &Vertices, summits: Vec<usize>) -> Vec<Place> {
     let mesh = &setting.solution.mesh;
-    let places: Vec<Place> = summits.into_iter().filter_map(|v| nodes.place(mesh, metal, v)).collect();
+    let places: Vec<Place> = summits.into_iter().filter_map(|v| vertices.place(mesh, metal, v)).collect();
     let mut ranked: Vec<(f64, Place)> =
         places.par_iter().map_init(|| Disc::new(metal), |disc, &place| (disc.mean(place, metal.gauge).mean, place)).collect();
     ranked.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.triangle.cmp(&b.1.triangle)));

@@ -2,29 +2,10 @@
 
 use super::gauge::DensityField;
 use super::hotspot::{self, Survey};
-use crate::geometry::{Point, Region, Ring, Vertex};
-use crate::index::LayerId;
+use crate::geometry::{Region, Ring};
 use crate::physics::{self, Solution};
+pub use crate::problem::trial::{bulged, disc, electrode, line, polygon};
 use crate::problem::*;
-
-pub fn polygon(points: &[(f64, f64)]) -> Ring {
-    Ring::polygon(points.iter().map(|&(x, y)| Point::new(x, y)))
-}
-
-/// Corners as (x, y, bulge to the next).
-pub fn bulged(points: &[(f64, f64, f64)]) -> Ring {
-    Ring { vertices: points.iter().map(|&(x, y, bulge)| Vertex { point: Point::new(x, y), bulge }).collect() }
-}
-
-pub fn line(points: &[(f64, f64)]) -> Footprint {
-    Footprint::Line { points: points.iter().map(|&(x, y)| Point::new(x, y)).collect() }
-}
-
-pub fn disc(x: f64, y: f64, diameter: f64) -> Footprint {
-    let centre = Point::new(x, y);
-    let region = Region::from_rings(&[Ring::circle(centre, diameter)]);
-    Footprint::Area { region, area_mm2: std::f64::consts::PI * 0.25 * diameter * diameter, centre, diameter_mm: Some(diameter) }
-}
 
 /// Copper of the International Annealed Copper Standard.
 pub fn sheet(name: &str, rings: Vec<Ring>, thickness_mm: f64) -> Layer {
@@ -32,11 +13,6 @@ pub fn sheet(name: &str, rings: Vec<Ring>, thickness_mm: f64) -> Layer {
         Material { name: "copper".into(), resistivity: Resistivity::Linear { at_20: 1.7241e-5, alpha: 0.0 }, density_g_cm3: None };
     let region = Region::from_rings(&rings);
     Layer { name: name.into(), material, resistivity: 1.7241e-5, thickness_mm, rings, region }
-}
-
-pub fn electrode(kind: ElectrodeKind, layer: u32, footprint: Footprint, joint_ohm: f64, drive: Drive) -> Electrode {
-    let spots = vec![Spot { footprint, joint_ohm }];
-    Electrode { name: "e".into(), kind, group: None, through: vec![LayerId(layer)], spots, drive }
 }
 
 /// Current in at the first footprint, out at the last.
@@ -47,21 +23,9 @@ pub fn terminals(first: Footprint, last: Footprint, last_layer: u32, current: f6
     ]
 }
 
+/// As [`trial::problem`], with a gauge of this diameter.
 pub fn problem(layers: Vec<Layer>, electrodes: Vec<Electrode>, bracket: f64, gauge_mm: f64) -> Problem {
-    Problem {
-        title: "test".into(),
-        temperature_c: 20.0,
-        accuracy: Accuracy { bracket, max_vertices: 400_000, gauge_mm: Some(gauge_mm) },
-        layers,
-        contacts: vec![],
-        joins: vec![],
-        electrodes,
-        sources: vec![],
-        measured: vec![],
-        probes: vec![],
-        crossings: vec![],
-        limits: Limits::default(),
-    }
+    trial::problem(layers, electrodes, bracket, Some(gauge_mm))
 }
 
 /// Solved, and sharpened until all discs are resolved.

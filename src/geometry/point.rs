@@ -91,6 +91,13 @@ impl BoundingBox {
     pub fn union(self, other: Self) -> Self {
         if other.is_empty() { self } else { self.with(other.min).with(other.max) }
     }
+    /// What both hold; without area where they do not overlap.
+    pub fn common(self, other: Self) -> Self {
+        Self {
+            min: Point::new(self.min.x.max(other.min.x), self.min.y.max(other.min.y)),
+            max: Point::new(self.max.x.min(other.max.x), self.max.y.min(other.max.y)),
+        }
+    }
     /// True when it holds no point.
     pub fn is_empty(&self) -> bool {
         self.min.x > self.max.x
@@ -102,6 +109,10 @@ impl BoundingBox {
     /// Height in y (0 when empty).
     pub fn height(&self) -> f64 {
         (self.max.y - self.min.y).max(0.0)
+    }
+    /// True when it is neither empty nor a point nor a line.
+    pub fn has_area(&self) -> bool {
+        self.min.x < self.max.x && self.min.y < self.max.y
     }
     /// True when `p` is inside or on the rim.
     pub fn contains(&self, p: Point) -> bool {

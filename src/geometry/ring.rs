@@ -168,7 +168,7 @@ impl Arc {
     }
 
     /// Signed area between chord and arc.
-    pub fn segment_area(&self) -> f64 {
+    fn segment_area(&self) -> f64 {
         0.5 * self.radius * self.radius * (self.sweep - self.sweep.sin())
     }
 

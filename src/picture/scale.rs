@@ -1,6 +1,7 @@
 //! Round steps, the colour scale's end, the steps of potential, and numbers as a reader writes them.
 
 use super::Panel;
+use crate::union::Sets;
 use rayon::prelude::*;
 
 /// Bins of the area count from which quantiles are read.
@@ -74,22 +75,13 @@ fn range(panel: &Panel) -> Option<(f64, f64, f64)> {
     }
     let mut pieces: Vec<Vec<(f64, f64)>> = Vec::new();
     let mut number: Vec<Option<usize>> = vec![None; panel.points.len()];
-    let mut parent: Vec<u32> = (0..panel.points.len() as u32).collect();
-    let root = |parent: &mut Vec<u32>, mut v: u32| {
-        while parent[v as usize] != v {
-            parent[v as usize] = parent[parent[v as usize] as usize];
-            v = parent[v as usize];
-        }
-        v
-    };
+    let mut sets = Sets::new(panel.points.len());
     for &[a, b, c] in &panel.triangles {
-        for (p, q) in [(a, b), (b, c)] {
-            let (p, q) = (root(&mut parent, p), root(&mut parent, q));
-            parent[p.max(q) as usize] = p.min(q);
-        }
+        sets.join(a as usize, b as usize);
+        sets.join(b as usize, c as usize);
     }
     for triangle in &panel.triangles {
-        let piece = *number[root(&mut parent, triangle[0]) as usize].get_or_insert_with(|| {
+        let piece = *number[sets.root(triangle[0] as usize)].get_or_insert_with(|| {
             pieces.push(Vec::new());
             pieces.len() - 1
         });

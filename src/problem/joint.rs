@@ -79,3 +79,35 @@ pub enum Footprint {
         points: Vec<Point>,
     },
 }
+
+impl Footprint {
+    /// Its middle: the centre of an area, half of the way along a line.
+    pub fn middle(&self) -> Point {
+        let points = match self {
+            Self::Area { centre, .. } => return *centre,
+            Self::Line { points } => points,
+        };
+        let length: f64 = points.windows(2).map(|p| p[0].distance(p[1])).sum();
+        let mut left = 0.5 * length;
+        for pair in points.windows(2) {
+            let step = pair[0].distance(pair[1]);
+            if left <= step && step > 0.0 {
+                return pair[0] + (pair[1] - pair[0]) * (left / step);
+            }
+            left -= step;
+        }
+        points.first().copied().unwrap_or_default()
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_middle_of_a_line_is_half_of_the_way_along_it() {
+        let line = |points: &[(f64, f64)]| Footprint::Line { points: points.iter().map(|&(x, y)| Point::new(x, y)).collect() };
+        assert_eq!(line(&[(0.0, 0.0), (2.0, 0.0), (2.0, 6.0)]).middle(), Point::new(2.0, 2.0));
+        assert_eq!(line(&[(1.0, 1.0), (1.0, 1.0)]).middle(), Point::new(1.0, 1.0));
+    }
+}

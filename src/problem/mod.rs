@@ -4,6 +4,8 @@ pub mod electrode;
 pub mod joint;
 pub mod material;
 pub mod stack;
+#[cfg(test)]
+pub mod trial;
 
 pub use electrode::{Drive, Electrode, ElectrodeKind, Source, Spot};
 pub use joint::{Contact, Footprint, Interface, Join, Measured, MeasuredJoint};

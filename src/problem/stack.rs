@@ -1,7 +1,7 @@
 //! One sheet of the stack: its outline, thickness and metal.
 
 use super::Material;
-use crate::geometry::{Region, Ring};
+use crate::geometry::{Region, Ring, nested_area};
 
 /// A sheet. One layer may consist of several pieces.
 #[derive(Debug, Clone)]
@@ -24,5 +24,13 @@ impl Layer {
     /// Sheet conductance in siemens: thickness / resistivity; its inverse is "ohms per square".
     pub fn sheet_conductance(&self) -> f64 {
         self.thickness_mm / self.resistivity
+    }
+    /// Area in mm², arcs counted as drawn.
+    pub fn area_mm2(&self) -> f64 {
+        nested_area(&self.rings)
+    }
+    /// Mass in g; `None` where the metal's density is not known.
+    pub fn mass_g(&self) -> Option<f64> {
+        self.material.density_g_cm3.map(|d| self.area_mm2() * self.thickness_mm * d * 1e-3)
     }
 }

@@ -60,10 +60,17 @@ impl<'a> Files<'a> {
     }
 
     fn load(&self, path: &Path, asked_at: &Span) -> Option<Arc<SourceText>> {
-        let text = self.notes.keep((self.load)(path).map_err(|error| load_fault(path, &error, Some(asked_at.clone()))))?;
+        let text = self.notes.keep(loaded(self.load, path).map_err(|error| load_fault(path, &error, Some(asked_at.clone()))))?;
         self.notes.keep(within(text.len(), LARGEST_TEXT, "bytes in one file", asked_at))?;
         Some(Arc::new(SourceText { path: path.to_path_buf(), text }))
     }
+}
+
+/// The text of a file. A byte-order mark is no part of it, and places count without it.
+pub fn loaded(load: Load, path: &Path) -> std::io::Result<String> {
+    let text = load(path)?;
+    let plain = text.trim_start_matches('\u{feff}');
+    Ok(if plain.len() == text.len() { text } else { plain.to_string() })
 }
 
 /// A file that could not be loaded, told at the key that asks for it.

@@ -11,11 +11,11 @@ mod sheet;
 
 pub use origins::Origins;
 
-use crate::diagnostic::{Fault, Remark, SourceText};
+use crate::diagnostic::{Fault, Remark, SourceText, Span};
 use crate::problem::Problem;
 use drawn::{LARGEST_TEXT, within};
 use fields::Notes;
-use files::{Files, load_fault};
+use files::{Files, load_fault, loaded};
 use sheet::{Content, Value};
 use std::path::Path;
 use std::sync::Arc;
@@ -36,11 +36,9 @@ pub struct Reading {
 /// # Errors
 /// All faults that could be found, in the order of their places in the sheet, then of each outline.
 pub fn read(job: &Path, load: &dyn Fn(&Path) -> std::io::Result<String>) -> Result<Reading, Vec<Fault>> {
-    let text = load(job).map_err(|error| vec![load_fault(job, &error, None)])?;
-    // A byte-order mark is no part of the sheet, and places count without it.
-    let text = text.strip_prefix('\u{feff}').map(str::to_string).unwrap_or(text);
+    let text = loaded(load, job).map_err(|error| vec![load_fault(job, &error, None)])?;
     let source = Arc::new(SourceText { path: job.to_path_buf(), text });
-    let start = crate::diagnostic::Span { source: source.clone(), start: 0, end: 0 };
+    let start = Span { source: source.clone(), start: 0, end: 0 };
     within(source.text.len(), LARGEST_TEXT, "bytes in one file", &start).map_err(|fault| vec![fault])?;
     let sheet = sheet::read_sheet(&source)?;
 

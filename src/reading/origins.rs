@@ -1,14 +1,13 @@
 //! From the ids of a problem back to the places in the sheet, so that late faults have a place.
 
 use crate::diagnostic::Span;
-use crate::index::{ContactId, CrossingId, ElectrodeId, JoinId, LayerId, ProbeId};
+use crate::index::{CrossingId, ElectrodeId, JoinId, LayerId, ProbeId};
 
-/// Where everything was written.
+/// Where what a late fault may name was written.
 #[derive(Debug, Clone)]
 pub struct Origins {
     pub(super) title: Span,
     pub(super) layers: Vec<Span>,
-    pub(super) contacts: Vec<Span>,
     pub(super) joins: Vec<Span>,
     pub(super) electrodes: Vec<Span>,
     pub(super) probes: Vec<Span>,
@@ -23,10 +22,6 @@ impl Origins {
     /// A layer's name.
     pub fn layer(&self, id: LayerId) -> &Span {
         self.layers.get(id.index()).unwrap_or(&self.title)
-    }
-    /// A contact's block.
-    pub fn contact(&self, id: ContactId) -> &Span {
-        self.contacts.get(id.index()).unwrap_or(&self.title)
     }
     /// A join's block.
     pub fn join(&self, id: JoinId) -> &Span {

@@ -66,9 +66,8 @@ fn lines(text: &str) -> impl Iterator<Item = Line<'_>> {
         let here = start;
         start += raw.len();
         let body = raw.split('#').next().unwrap_or_default();
-        let mark = if here == 0 { body.len() - body.trim_start_matches('\u{feff}').len() } else { 0 };
-        let text = body[mark..].trim_end();
-        Line { text, start: here + mark, end: here + mark + text.len(), comment: raw.contains('#') }
+        let text = body.trim_end();
+        Line { text, start: here, end: here + text.len(), comment: raw.contains('#') }
     })
 }
 
@@ -360,10 +359,10 @@ mod tests {
     }
 
     #[test]
-    fn separators_marks_and_closing_points_make_no_difference() {
+    fn separators_and_closing_points_make_no_difference() {
         let plain = points("0 0\n10 0\n10 5.5\n");
         for same in [
-            "\u{feff}0 0\r\n10 0\r\n10 5.5\r\n0 0\r\n",
+            "0 0\r\n10 0\r\n10 5.5\r\n0 0\r\n",
             "# a part\nunit mm\nring body\n\n 0,0\n10, 0\n10,5.5 # corner\n",
             "0;0\n10;0\n10;5,5\n",
             "0\t0\n10\t0\n10\t5,5",

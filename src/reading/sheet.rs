@@ -1,6 +1,7 @@
 //! The job sheet as written: every key and value with its place, no meaning yet.
 
 use crate::diagnostic::{Fault, SourceText, Span};
+use std::ops::Range;
 use std::sync::Arc;
 use toml::de::{DeTable, DeValue};
 
@@ -56,16 +57,14 @@ pub struct Entry {
 pub fn read_sheet(source: &Arc<SourceText>) -> Result<Value, Vec<Fault>> {
     let (table, mut errors) = DeTable::parse_recoverable(&source.text);
     errors.sort_by_key(|error| error.span().map(|range| range.start));
-    let span = |range: std::ops::Range<usize>| Span { source: source.clone(), start: range.start, end: range.end };
     if errors.is_empty() {
-        let range = table.span();
-        return Ok(Value { content: block(table.get_ref(), source), span: span(range) });
+        return Ok(Value { content: block(table.get_ref(), source), span: place(source, table.span()) });
     }
     // After the first slip the rest of a line is often misread as well: one fault per line tells enough.
     let mut faults: Vec<Fault> = Vec::new();
     let mut last_line = 0;
     for error in errors {
-        let span = error.span().map(span);
+        let span = error.span().map(|range| place(source, range));
         let line = span.as_ref().map_or(0, |s| s.line_column().0);
         if line != last_line || faults.is_empty() {
             last_line = line;
@@ -86,14 +85,17 @@ pub fn read_sheet(source: &Arc<SourceText>) -> Result<Value, Vec<Fault>> {
     Err(faults)
 }
 
+fn place(source: &Arc<SourceText>, range: Range<usize>) -> Span {
+    Span { source: source.clone(), start: range.start, end: range.end }
+}
+
 fn block(table: &DeTable, source: &Arc<SourceText>) -> Content {
-    let place = |range: std::ops::Range<usize>| Span { source: source.clone(), start: range.start, end: range.end };
     let mut entries: Vec<Entry> = table
         .iter()
         .map(|(key, value)| Entry {
             key: key.get_ref().to_string(),
-            key_span: place(key.span()),
-            value: Value { content: content(value.get_ref(), source), span: place(value.span()) },
+            key_span: place(source, key.span()),
+            value: Value { content: content(value.get_ref(), source), span: place(source, value.span()) },
         })
         .collect();
     entries.sort_by_key(|e| e.key_span.start);
@@ -111,16 +113,9 @@ fn content(value: &DeValue, source: &Arc<SourceText>) -> Content {
         DeValue::Float(float) => float.as_str().parse().map_or(Content::Other("an unreadable number"), Content::Number),
         DeValue::Boolean(_) => Content::Other("true or false"),
         DeValue::Datetime(_) => Content::Other("a date"),
-        DeValue::Array(values) => Content::List(
-            values
-                .iter()
-                .map(|v| {
-                    let range = v.span();
-                    let span = Span { source: source.clone(), start: range.start, end: range.end };
-                    Value { content: content(v.get_ref(), source), span }
-                })
-                .collect(),
-        ),
+        DeValue::Array(values) => {
+            Content::List(values.iter().map(|v| Value { content: content(v.get_ref(), source), span: place(source, v.span()) }).collect())
+        }
         DeValue::Table(table) => block(table, source),
     }
 }

@@ -32,10 +32,10 @@ fn read_job(text: &str) -> Result<Reading, Vec<Fault>> {
 }
 
 fn good(text: &str) -> Reading {
-    read_job(text).unwrap_or_else(|faults| panic!("{}", crate_explained(&faults)))
+    read_job(text).unwrap_or_else(|faults| panic!("{}", explained(&faults)))
 }
 
-fn crate_explained(faults: &[Fault]) -> String {
+fn explained(faults: &[Fault]) -> String {
     faults.iter().map(|f| format!("{:?} {}\n", f.span.as_ref().map(|s| s.line_column()), f.message)).collect()
 }
 
@@ -229,7 +229,7 @@ fn lists_are_read_as_spreadsheets_write_them() {
                 _ => OUTLINE.to_string(),
             })
         });
-        let Reading { problem, .. } = reading.unwrap_or_else(|faults| panic!("{list:?}: {}", crate_explained(&faults)));
+        let Reading { problem, .. } = reading.unwrap_or_else(|faults| panic!("{list:?}: {}", explained(&faults)));
         let named = problem.electrodes.iter().enumerate().skip(1).map(|(i, e)| (e.name.clone(), e.drive, spots(&problem, i)));
         named.collect::<Vec<_>>()
     };
@@ -331,6 +331,25 @@ fn unreadable_files_are_told_at_their_key() {
 }
 
 #[test]
+fn a_byte_order_mark_takes_no_place_in_any_file() {
+    let list = "[[cell]]\nname = \"C\"\nlayer = \"carrier\"\nspots_csv = \"list.csv\"\ndiameter_mm = 1\njoint_mohm = 0\ncurrent_a = 1\n";
+    let job = format!("titel = 1\n{STRIP}{LUG}{list}");
+    let faults = read(Path::new("job.toml"), &|path: &Path| {
+        let text = match path.to_str() {
+            Some("job.toml") => job.as_str(),
+            Some("list.csv") => "x_inch,y\n9,7\n",
+            _ => "rong\n0 0\n120 0\n120 30\n0 30\n",
+        };
+        Ok(format!("\u{feff}{text}"))
+    });
+    let faults = faults.expect_err("a slip in every first line");
+    let first: Vec<_> = faults.iter().filter_map(|f| f.span.as_ref()).map(Span::line_column).filter(|place| place.0 == 1).collect();
+    assert_eq!(first, [(1, 1); 3], "{}", explained(&faults));
+    let end = "[[terminal]]\nname = \"in\"\nlayer = \"carrier\"\nline_mm = [[0, 0], [0, 30]]\ncurrent_a = 1\n";
+    assert_eq!(good(&format!("\u{feff}{STRIP}{LUG}{end}")).problem.electrodes.len(), 2);
+}
+
+#[test]
 fn broken_sheets_and_outlines_never_panic() {
     let mut random = fastrand::Rng::with_seed(7);
     let whole = format!(
@@ -405,7 +424,7 @@ current_a = 1
 pattern = { step_mm = [10, 0], count = 100, row_step_mm = [0, 10], rows = 100 }
 "#;
     let reading = read(Path::new("job.toml"), &|path: &Path| Ok(if path.ends_with("job.toml") { job.into() } else { outline.clone() }));
-    assert_eq!(reading.map(|r| r.problem.electrodes.len()).map_err(|f| crate_explained(&f)), Ok(10_001));
+    assert_eq!(reading.map(|r| r.problem.electrodes.len()).map_err(|f| explained(&f)), Ok(10_001));
 }
 
 #[test]
@@ -459,7 +478,7 @@ current_a = -5
             3.0 * scale,
         );
         let reading = read(Path::new("job.toml"), &|_| Ok(job.clone()));
-        let Reading { problem, remarks, .. } = reading.unwrap_or_else(|f| panic!("{degrees} {shift} {scale}: {}", crate_explained(&f)));
+        let Reading { problem, remarks, .. } = reading.unwrap_or_else(|f| panic!("{degrees} {shift} {scale}: {}", explained(&f)));
         let counts: Vec<usize> = problem.electrodes[..3]
             .iter()
             .map(|e| if let Footprint::Line { points } = &e.spots[0].footprint { points.len() } else { 0 })

@@ -62,11 +62,10 @@ fn refer_to_lowest(panels: &mut [Panel]) {
 fn subtitle(problem: &Problem, found: &Found) -> String {
     let inward = through(problem, found);
     let count = |kind: ElectrodeKind| problem.electrodes.iter().filter(|e| e.kind == kind && !matches!(e.drive, Drive::Return(_))).count();
-    let plural = |n: usize, one: &str| if n == 1 { format!("1 {one}") } else { format!("{n} {one}s") };
     let mut parts = Vec::new();
     for (n, one) in [(count(ElectrodeKind::Cell), "cell"), (count(ElectrodeKind::Terminal), "terminal")] {
         if n > 0 {
-            parts.push(plural(n, one));
+            parts.push(words::counted(n, one));
         }
     }
     format!("{} A through {} · metal at {} °C", three(inward), parts.join(" and "), problem.temperature_c)
@@ -98,7 +97,7 @@ fn through(problem: &Problem, found: &Found) -> f64 {
 fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
     let layer = &problem.layers[l];
     let metal = &found.density.layers[l];
-    let (points, triangles, potential_mv) = nodes(found, metal);
+    let (points, triangles, potential_mv) = corners(found, metal);
     let mut panel = Panel {
         name: layer.name.clone(),
         details: format!("{}, {} mm", words::metal(layer), layer.thickness_mm),
@@ -166,7 +165,7 @@ fn panel(problem: &Problem, found: &Found, l: usize) -> Panel {
 }
 
 /// The layer's triangles over points of their own: one per unknown, so that the two sides of a slit stay apart.
-fn nodes(found: &Found, metal: &LayerMetal) -> (Vec<Point>, Vec<[u32; 3]>, Vec<f64>) {
+fn corners(found: &Found, metal: &LayerMetal) -> (Vec<Point>, Vec<[u32; 3]>, Vec<f64>) {
     let solution = &found.solution;
     let (mut points, mut potential) = (Vec::new(), Vec::new());
     let mut place = vec![NONE; solution.complex.order()];

@@ -1,14 +1,13 @@
 //! What a job holds, before anything is solved: sheets, electrodes, connected metal. This is what `pinchbar check` shows.
 
 use super::pieces::Pieces;
-use super::table::wrapped;
+use super::words::{counted, metal_name, one_line, wrapped};
 use crate::diagnostic::Remark;
 use crate::geometry::clearance::{self, clearances};
 use crate::geometry::ring::Arc;
-use crate::geometry::{BoundingBox, Point, Ring, nested_area};
+use crate::geometry::{BoundingBox, Point, Ring};
 use crate::index::LayerId;
-use crate::problem::material::OWN_FIGURES;
-use crate::problem::{Drive, Electrode, ElectrodeKind, Footprint, Problem};
+use crate::problem::{Drive, Electrode, ElectrodeKind, Problem};
 use crate::quantity::{coordinate, three};
 use serde::Serialize;
 
@@ -107,15 +106,14 @@ pub fn inventory(problem: &Problem, remarks: Vec<Remark>) -> Inventory {
     let pieces = Pieces::of(problem);
     let layers = problem.layers.iter().enumerate().map(|(l, layer)| {
         let bounds = layer.rings.iter().fold(BoundingBox::EMPTY, with_ring);
-        let area_mm2 = nested_area(&layer.rings);
         let least = clearances(&layer.rings);
         let (count, holes) = pieces.counts(LayerId::new(l));
         Sheet {
             name: layer.name.clone(),
             metal: layer.material.name.clone(),
             thickness_mm: layer.thickness_mm,
-            area_mm2,
-            mass_g: layer.material.density_g_cm3.map(|d| area_mm2 * layer.thickness_mm * d * 1e-3),
+            area_mm2: layer.area_mm2(),
+            mass_g: layer.mass_g(),
             x_mm: [bounds.min.x, bounds.max.x],
             y_mm: [bounds.min.y, bounds.max.y],
             pieces: count,
@@ -133,7 +131,7 @@ pub fn inventory(problem: &Problem, remarks: Vec<Remark>) -> Inventory {
             .spots
             .iter()
             .map(|spot| {
-                let at = middle(&spot.footprint);
+                let at = spot.footprint.middle();
                 let on = e.through.iter().map(|&l| pieces.under(l, &spot.footprint).map_or_else(|| "no metal".into(), |p| pieces.name(p)));
                 Place { x_mm: at.x, y_mm: at.y, on: on.collect() }
             })
@@ -160,14 +158,14 @@ pub fn text(inventory: &Inventory) -> String {
             &format!(
                 "{}: {}, {} mm, {} mm2{mass}",
                 sheet.name,
-                if sheet.metal == OWN_FIGURES { "own resistivity" } else { &sheet.metal },
+                metal_name(&sheet.metal),
                 coordinate(sheet.thickness_mm),
                 three(sheet.area_mm2)
             ),
         );
         let ([x0, x1], [y0, y1]) = (sheet.x_mm.map(coordinate), sheet.y_mm.map(coordinate));
-        let holes = if sheet.holes > 0 { format!(", {}", count(sheet.holes, "hole")) } else { String::new() };
-        lines.push(format!("      x {x0} to {x1} mm, y {y0} to {y1} mm; {}{holes}", count(sheet.pieces, "piece")));
+        let holes = if sheet.holes > 0 { format!(", {}", counted(sheet.holes, "hole")) } else { String::new() };
+        lines.push(format!("      x {x0} to {x1} mm, y {y0} to {y1} mm; {}{holes}", counted(sheet.pieces, "piece")));
         for (name, least) in [("least web", &sheet.least_web), ("least slot", &sheet.least_slot)] {
             if let Some(d) = least {
                 let point = |p: [f64; 2]| format!("({}, {})", coordinate(p[0]), coordinate(p[1]));
@@ -187,7 +185,7 @@ pub fn text(inventory: &Inventory) -> String {
         let group = e.group.as_ref().map_or(String::new(), |g| format!(", group {g}"));
         let places = match e.spots.as_slice() {
             [one] => format!("at ({}, {})", coordinate(one.x_mm), coordinate(one.y_mm)),
-            many => count(many.len(), "spot"),
+            many => counted(many.len(), "spot"),
         };
         push(&mut lines, &format!("{} {}{group}: {}, {places} on {}", e.kind, e.name, e.drive, on.join(" and ")));
     }
@@ -197,7 +195,7 @@ pub fn text(inventory: &Inventory) -> String {
         let by = if set.by.is_empty() { String::new() } else { format!(", by {}", set.by.join(", ")) };
         let reached = match set.electrodes.as_slice() {
             [] => "no electrode".to_string(),
-            names => format!("{} ({})", count(names.len(), "electrode"), names.join(", ")),
+            names => format!("{} ({})", counted(names.len(), "electrode"), names.join(", ")),
         };
         push(&mut lines, &format!("{}{by}: {reached}", set.pieces.join(" + ")));
     }
@@ -206,16 +204,12 @@ pub fn text(inventory: &Inventory) -> String {
         lines.push("  Remarks".into());
         inventory.remarks.iter().for_each(|r| push(&mut lines, &r.text));
     }
-    lines.iter().map(|line| format!("{}\n", line.replace(char::is_control, " ").trim_end())).collect()
+    lines.iter().map(|line| format!("{}\n", one_line(line).trim_end())).collect()
 }
 
 /// One entry of a list, wrapped and indented.
 fn push(lines: &mut Vec<String>, entry: &str) {
     lines.extend(wrapped(entry, 74).into_iter().enumerate().map(|(i, part)| format!("{}{part}", if i == 0 { "    " } else { "      " })));
-}
-
-fn count(n: usize, what: &str) -> String {
-    format!("{n} {what}{}", if n == 1 { "" } else { "s" })
 }
 
 fn drive(problem: &Problem, electrode: &Electrode) -> String {
@@ -229,24 +223,6 @@ fn drive(problem: &Problem, electrode: &Electrode) -> String {
         Drive::Held(v) => format!("held at {} mV", three(1e3 * v)),
         Drive::Source(s) => source(s),
         Drive::Return(s) => format!("return end of a {}", source(s)),
-    }
-}
-
-fn middle(footprint: &Footprint) -> Point {
-    match footprint {
-        Footprint::Area { centre, .. } => *centre,
-        Footprint::Line { points } => {
-            // Half of the way along.
-            let lengths: Vec<f64> = points.windows(2).map(|w| w[0].distance(w[1])).collect();
-            let mut left = 0.5 * lengths.iter().sum::<f64>();
-            for (w, length) in points.windows(2).zip(lengths) {
-                if left <= length && length > 0.0 {
-                    return w[0] + (w[1] - w[0]) * (left / length);
-                }
-                left -= length;
-            }
-            points.first().copied().unwrap_or_default()
-        }
     }
 }
 

@@ -1,8 +1,7 @@
 //! `report.md`: what a colleague reads without the tool.
 
-use super::words::{self, CAUTION, RIM_WIDTH, further_cautions, interval, one_line, optional};
+use super::words::{self, CAUTION, RIM_WIDTH, counted, further_cautions, interval, one_line, optional};
 use crate::findings::{Enclosure, Findings, HotspotKind};
-use crate::problem::material::OWN_FIGURES;
 use crate::problem::{Drive, Electrode, ElectrodeKind, Footprint, Interface, Problem};
 use crate::quantity::three;
 
@@ -54,10 +53,6 @@ fn in_short(problem: &Problem) -> String {
         counted(cells, "cell end"),
         counted(problem.electrodes.len() - cells, "terminal")
     )
-}
-
-fn counted(count: usize, what: &str) -> String {
-    format!("{count} {what}{}", if count == 1 { "" } else { "s" })
 }
 
 /// A name or sentence of the input that cannot turn into markup.
@@ -268,7 +263,7 @@ fn assumptions(out: &mut Page, problem: &Problem) {
         format!(
             "- sheet {}: {}, {} mm, {} µΩ cm at {} °C",
             plain(&l.name),
-            plain(if l.material.name == OWN_FIGURES { "own resistivity" } else { &l.material.name }),
+            plain(words::metal_name(&l.material.name)),
             l.thickness_mm,
             three(l.resistivity * 1e5),
             problem.temperature_c

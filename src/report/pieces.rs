@@ -4,6 +4,7 @@ use crate::geometry::overlap::common_area;
 use crate::geometry::{BoundingBox, IndexedRegion, Point};
 use crate::index::LayerId;
 use crate::problem::{Footprint, Problem};
+use crate::union::Sets;
 
 /// A line's point this near to the rim, in mm, stands on the piece whose rim it is.
 const AT_RIM: f64 = 0.05;
@@ -95,7 +96,7 @@ impl<'a> Pieces<'a> {
 
     /// The connected sets, in the order of their first pieces.
     pub fn connected(&self) -> Vec<Connected> {
-        let mut union = Union { parent: (0..self.count).collect() };
+        let mut union = Sets::new(self.count);
         let mut ties: Vec<(usize, String)> = Vec::new();
         let layer_name = |l: LayerId| self.problem.layers.get(l.index()).map_or("", |layer| layer.name.as_str());
         for contact in &self.problem.contacts {
@@ -167,11 +168,8 @@ impl<'a> Pieces<'a> {
         let mut pairs = Vec::new();
         for (i, (p, p_box)) in lower.iter().enumerate() {
             for (j, (q, q_box)) in upper.iter().enumerate() {
-                let window = BoundingBox {
-                    min: Point::new(p_box.min.x.max(q_box.min.x), p_box.min.y.max(q_box.min.y)),
-                    max: Point::new(p_box.max.x.min(q_box.max.x), p_box.max.y.min(q_box.max.y)),
-                };
-                if window.min.x >= window.max.x || window.min.y >= window.max.y {
+                let window = p_box.common(*q_box);
+                if !window.has_area() {
                     continue;
                 }
                 let shapes: Vec<&[(Point, Point)]> = [p.as_slice(), q.as_slice()].into_iter().chain(area.as_deref()).collect();
@@ -243,24 +241,5 @@ impl LayerPieces {
             lists[self.piece_of_loop[self.region.loop_of(number)]].push(edge);
         }
         lists
-    }
-}
-
-struct Union {
-    parent: Vec<usize>,
-}
-
-impl Union {
-    fn root(&mut self, mut i: usize) -> usize {
-        while self.parent[i] != i {
-            self.parent[i] = self.parent[self.parent[i]];
-            i = self.parent[i];
-        }
-        i
-    }
-
-    fn join(&mut self, a: usize, b: usize) {
-        let (a, b) = (self.root(a), self.root(b));
-        self.parent[a.max(b)] = a.min(b);
     }
 }

@@ -1,6 +1,6 @@
 //! The summary on the terminal: headline, hotspots, cells, limits, remarks, within 80 columns.
 
-use super::words::{self, CAUTION, RIM_WIDTH, interval, optional};
+use super::words::{self, CAUTION, RIM_WIDTH, interval, optional, wrapped};
 use crate::findings::{Findings, HotspotKind, Verdict};
 use crate::quantity::three;
 
@@ -15,112 +15,151 @@ const COLUMNS: usize = 80;
 
 /// The whole summary, ending in a line break.
 pub fn summary(findings: &Findings) -> String {
-    let mut text = String::new();
-    let mut line = |s: String| {
-        text.push_str(s.trim_end());
-        text.push('\n');
-    };
-    wrapped(&findings.title, 78).into_iter().for_each(&mut line);
-    line(String::new());
-    line(format!("  loss           {} W", interval(findings.loss_w)));
+    let mut page = Page::default();
+    page.lines(wrapped(&findings.title, 78));
+    headline(&mut page, findings);
+    hotspots(&mut page, findings);
+    electrodes(&mut page, findings);
+    joins(&mut page, findings);
+    readings(&mut page, findings);
+    limits(&mut page, findings);
+    if !findings.remarks.is_empty() {
+        page.line("");
+        for remark in &findings.remarks {
+            page.lines(
+                wrapped(&remark.text, 74).iter().enumerate().map(|(i, part)| format!("  {} {part}", if i == 0 { "*" } else { " " })),
+            );
+        }
+    }
+    page.line("");
+    page.lines(wrapped(CAUTION, 78));
+    page.text
+}
+
+#[derive(Default)]
+struct Page {
+    text: String,
+}
+
+impl Page {
+    fn line(&mut self, text: impl AsRef<str>) {
+        self.text.push_str(text.as_ref().trim_end());
+        self.text.push('\n');
+    }
+
+    fn lines(&mut self, lines: impl IntoIterator<Item = String>) {
+        lines.into_iter().for_each(|line| self.line(line));
+    }
+
+    /// The title of a part, with an empty line above.
+    fn heading(&mut self, text: &str) {
+        self.line("");
+        self.line(text);
+    }
+
+    /// What a list holds beyond the rows shown.
+    fn more(&mut self, indent: &str, count: usize, shown: usize) {
+        if count > shown {
+            self.line(format!("{indent}and {} more in the files", count - shown));
+        }
+    }
+}
+
+fn headline(page: &mut Page, findings: &Findings) {
+    page.heading(&format!("  loss           {} W", interval(findings.loss_w)));
     if let Some(r) = findings.resistance_mohm {
-        line(format!("  resistance     {} mohm", interval(r)));
+        page.line(format!("  resistance     {} mohm", interval(r)));
     }
     if let Some(drop) = findings.largest_drop_mv {
-        line(format!("  largest drop   {} mV between two electrodes", interval(drop)));
+        page.line(format!("  largest drop   {} mV between two electrodes", interval(drop)));
     }
     let run = &findings.run;
-    line(format!(
+    page.line(format!(
         "  enclosed to    {} %{}, {} triangles, {} round(s)",
         three(run.bracket_percent),
         if run.reached { "" } else { " (NOT as asked)" },
         run.triangles,
         run.rounds
     ));
-    if !findings.hotspots.is_empty() {
-        line(String::new());
-        line("  Where current crowds (gauge peaks; worst first, by part of a limit if given)".into());
-        let header = ["no", "kind", "layer", "x mm", "y mm", "A/mm2", "width", "A", "crowd"];
-        let rows = findings.hotspots.iter().take(MOST_ROWS).map(|h| {
-            let mut row = vec![h.rank.to_string(), words::kind(h.kind).into(), h.layer.clone()];
-            row.extend([coordinate(h.x_mm), coordinate(h.y_mm), three(h.peak_a_mm2)]);
-            row.extend([h.width_mm, h.section_a, h.crowding].map(optional));
-            row
-        });
-        columns(&header, rows.collect(), 1..3).into_iter().for_each(&mut line);
-        more(findings.hotspots.len(), &mut line);
-        if findings.hotspots.iter().any(|h| h.kind == HotspotKind::WeldRim) {
-            line(format!("     {RIM_WIDTH}"));
-        }
+}
+
+fn hotspots(page: &mut Page, findings: &Findings) {
+    if findings.hotspots.is_empty() {
+        return;
     }
-    line(String::new());
-    line("  Electrodes".into());
+    page.heading("  Where current crowds (gauge peaks; worst first, by part of a limit if given)");
+    let header = ["no", "kind", "layer", "x mm", "y mm", "A/mm2", "width", "A", "crowd"];
+    let rows = findings.hotspots.iter().take(MOST_ROWS).map(|h| {
+        let mut row = vec![h.rank.to_string(), words::kind(h.kind).into(), h.layer.clone()];
+        row.extend([coordinate(h.x_mm), coordinate(h.y_mm), three(h.peak_a_mm2)]);
+        row.extend([h.width_mm, h.section_a, h.crowding].map(optional));
+        row
+    });
+    page.lines(columns(&header, rows.collect(), 1..3));
+    page.more("     ", findings.hotspots.len(), MOST_ROWS);
+    if findings.hotspots.iter().any(|h| h.kind == HotspotKind::WeldRim) {
+        page.line(format!("     {RIM_WIDTH}"));
+    }
+}
+
+fn electrodes(page: &mut Page, findings: &Findings) {
+    page.heading("  Electrodes");
     let rows = findings.electrodes.iter().take(MOST_ROWS).map(|e| {
         let worst = e.spots.iter().map(|s| s.drop_mv.abs()).fold(0.0, f64::max);
         let worst = (worst > 0.0).then_some(worst);
         vec![e.name.clone(), three(e.current_a), interval(e.voltage_mv), optional(e.share_percent), optional(worst)]
     });
-    columns(&["name", "A", "mV", "share %", "worst joint mV"], rows.collect(), 0..1).into_iter().for_each(&mut line);
-    more(findings.electrodes.len(), &mut line);
+    page.lines(columns(&["name", "A", "mV", "share %", "worst joint mV"], rows.collect(), 0..1));
+    page.more("     ", findings.electrodes.len(), MOST_ROWS);
     for (group, ratio) in words::sharing(findings) {
-        line(format!("  sharing in group \"{}\": largest over mean current {}", clipped(group, 24), three(ratio)));
+        page.line(format!("  sharing in group \"{}\": largest over mean current {}", clipped(group, 24), three(ratio)));
     }
-    let joins = words::worst_joins(findings);
-    if !joins.is_empty() {
-        line(String::new());
-        line("  Joins between sheets (largest drop first)".into());
-        let rows = joins.iter().take(MOST_JOINS).map(|j| {
-            vec![j.between.join(" - "), coordinate(j.x_mm), coordinate(j.y_mm), optional(j.current_a), three(j.drop_mv), three(j.loss_w)]
-        });
-        columns(&["between", "x mm", "y mm", "A", "mV", "W"], rows.collect(), 0..1).into_iter().for_each(&mut line);
-        if joins.len() > MOST_JOINS {
-            line(format!("  and {} more in the files", joins.len() - MOST_JOINS));
-        }
-    }
-    if !findings.probes.is_empty() || !findings.crossings.is_empty() {
-        line(String::new());
-        line("  Readings".into());
-        let names = findings.probes.iter().map(|p| &p.name).chain(findings.crossings.iter().map(|c| &c.name));
-        let width = names.map(|name| name.chars().count()).max().unwrap_or(0).min(40);
-        for p in &findings.probes {
-            line(format!("  {:width$}  {} mV", clipped(&p.name, width), interval(p.drop_mv)));
-        }
-        for c in &findings.crossings {
-            for (i, part) in wrapped(&words::crossing(findings, c), 76 - width).into_iter().enumerate() {
-                line(format!("  {:width$}  {part}", if i == 0 { clipped(&c.name, width) } else { String::new() }));
-            }
-        }
-    }
-    let checked: Vec<_> = findings.verdicts.iter().filter(|v| v.verdict != Verdict::NotChecked).collect();
-    if !checked.is_empty() {
-        line(String::new());
-        line("  Limits".into());
-        for v in checked {
-            line(format!(
-                "  {:5} {:32} {:>10} {:>8} % margin",
-                words::verdict(v.verdict),
-                clipped(&v.limit, 32),
-                optional(v.value),
-                v.margin_percent.map_or("-".into(), |m| format!("{m:.0}"))
-            ));
-        }
-    }
-    if !findings.remarks.is_empty() {
-        line(String::new());
-        for remark in &findings.remarks {
-            for (i, part) in wrapped(&remark.text, 74).into_iter().enumerate() {
-                line(format!("  {} {part}", if i == 0 { "*" } else { " " }));
-            }
-        }
-    }
-    line(String::new());
-    wrapped(CAUTION, 78).into_iter().for_each(line);
-    text
 }
 
-fn more(count: usize, line: &mut impl FnMut(String)) {
-    if count > MOST_ROWS {
-        line(format!("     and {} more in the files", count - MOST_ROWS));
+fn joins(page: &mut Page, findings: &Findings) {
+    let joins = words::worst_joins(findings);
+    if joins.is_empty() {
+        return;
+    }
+    page.heading("  Joins between sheets (largest drop first)");
+    let rows = joins.iter().take(MOST_JOINS).map(|j| {
+        vec![j.between.join(" - "), coordinate(j.x_mm), coordinate(j.y_mm), optional(j.current_a), three(j.drop_mv), three(j.loss_w)]
+    });
+    page.lines(columns(&["between", "x mm", "y mm", "A", "mV", "W"], rows.collect(), 0..1));
+    page.more("  ", joins.len(), MOST_JOINS);
+}
+
+fn readings(page: &mut Page, findings: &Findings) {
+    if findings.probes.is_empty() && findings.crossings.is_empty() {
+        return;
+    }
+    page.heading("  Readings");
+    let names = findings.probes.iter().map(|p| &p.name).chain(findings.crossings.iter().map(|c| &c.name));
+    let width = names.map(|name| name.chars().count()).max().unwrap_or(0).min(40);
+    for p in &findings.probes {
+        page.line(format!("  {:width$}  {} mV", clipped(&p.name, width), interval(p.drop_mv)));
+    }
+    for c in &findings.crossings {
+        for (i, part) in wrapped(&words::crossing(findings, c), 76 - width).into_iter().enumerate() {
+            page.line(format!("  {:width$}  {part}", if i == 0 { clipped(&c.name, width) } else { String::new() }));
+        }
+    }
+}
+
+fn limits(page: &mut Page, findings: &Findings) {
+    let checked: Vec<_> = findings.verdicts.iter().filter(|v| v.verdict != Verdict::NotChecked).collect();
+    if checked.is_empty() {
+        return;
+    }
+    page.heading("  Limits");
+    for v in checked {
+        page.line(format!(
+            "  {:5} {:32} {:>10} {:>8} % margin",
+            words::verdict(v.verdict),
+            clipped(&v.limit, 32),
+            optional(v.value),
+            v.margin_percent.map_or("-".into(), |m| format!("{m:.0}"))
+        ));
     }
 }
 
@@ -155,27 +194,6 @@ fn clipped(name: &str, width: usize) -> String {
         return name;
     }
     name.chars().take(width.saturating_sub(1)).chain(['~']).collect()
-}
-
-/// Words in lines of at most `width` characters; a longer word is cut.
-pub fn wrapped(text: &str, width: usize) -> Vec<String> {
-    let mut lines = vec![String::new()];
-    for word in words::one_line(text).split_whitespace() {
-        let letters: Vec<char> = word.chars().collect();
-        for part in letters.chunks(width.max(1)) {
-            let last = lines.len() - 1;
-            let used = lines[last].chars().count();
-            if used > 0 && used + 1 + part.len() > width {
-                lines.push(part.iter().collect());
-            } else {
-                if used > 0 {
-                    lines[last].push(' ');
-                }
-                lines[last].extend(part);
-            }
-        }
-    }
-    lines
 }
 
 #[cfg(test)]

@@ -63,14 +63,45 @@ pub fn crossing(findings: &Findings, crossing: &CrossingFinding) -> String {
     if parts.len() < 2 || carried.is_empty() { total } else { format!("{total}: {}", carried.join(", ")) }
 }
 
-/// The metal of a sheet: its name in the table or its own resistivity.
+/// The metal of a sheet: its name in the table or its own resistivity in figures.
 pub fn metal(layer: &Layer) -> String {
     if layer.material.name == OWN_FIGURES { format!("{} µΩ cm", three(layer.resistivity * 1e5)) } else { layer.material.name.clone() }
+}
+
+/// A metal's name in the table, or that its resistivity is the sheet's own.
+pub fn metal_name(name: &str) -> &str {
+    if name == OWN_FIGURES { "own resistivity" } else { name }
 }
 
 /// A name or sentence of the input in one line: control characters must reach neither a terminal nor a table.
 pub fn one_line(text: &str) -> String {
     text.chars().map(|c| if c.is_control() { ' ' } else { c }).collect()
+}
+
+/// Words in lines of at most `width` characters; a longer word is cut.
+pub fn wrapped(text: &str, width: usize) -> Vec<String> {
+    let mut lines = vec![String::new()];
+    for word in one_line(text).split_whitespace() {
+        let letters: Vec<char> = word.chars().collect();
+        for part in letters.chunks(width.max(1)) {
+            let last = lines.len() - 1;
+            let used = lines[last].chars().count();
+            if used > 0 && used + 1 + part.len() > width {
+                lines.push(part.iter().collect());
+            } else {
+                if used > 0 {
+                    lines[last].push(' ');
+                }
+                lines[last].extend(part);
+            }
+        }
+    }
+    lines
+}
+
+/// `1 hole`, `2 holes`.
+pub fn counted(count: usize, what: &str) -> String {
+    format!("{count} {what}{}", if count == 1 { "" } else { "s" })
 }
 
 /// "low ... high", rounded outward.

@@ -1,4 +1,4 @@
-//! What the tests share: the one place that touches the library's doors, and how a figure is picked from the findings.
+//! What the tests share: the one place that touches the doors of library and tool, and how a figure is picked from the findings.
 
 pub mod random;
 pub mod transform;
@@ -10,6 +10,17 @@ use pinchbar::reading;
 use std::collections::BTreeMap;
 use std::io::{Error, ErrorKind};
 use std::path::Path;
+use std::process::Command;
+
+/// The files of a result, by name.
+pub const RESULTS: [&str; 5] = ["heatmap.png", "hotspots.csv", "report.md", "result.json", "welds.csv"];
+
+/// The tool, called with these arguments.
+pub fn tool(arguments: &[&str]) -> Command {
+    let mut command = Command::new(env!("CARGO_BIN_EXE_pinchbar"));
+    command.args(arguments);
+    command
+}
 
 /// Reads a sheet held in memory, with the outlines it names.
 pub fn read(sheet: &str, outlines: &BTreeMap<String, String>) -> Problem {

@@ -6,19 +6,13 @@ use crate::diagnostic::Span;
 use crate::index::LayerId;
 use crate::problem::{Contact, Drive, Join};
 use crate::reading::fields::Notes;
+use crate::union::Sets;
 
 /// Given currents add up to zero within this part of the largest.
 const BALANCE: f64 = 1e-9;
 
 /// Tells of too few electrodes, of currents that do not add up, and of balance terminals that have nothing definite to balance.
-pub fn check_drives(
-    drawn: &DrawnElectrodes,
-    contacts: &[(Contact, Span)],
-    joins: &[(Join, Span)],
-    stack: &Stack,
-    title: &Span,
-    notes: &Notes,
-) {
+pub fn check_drives(drawn: &DrawnElectrodes, contacts: &[Contact], joins: &[(Join, Span)], stack: &Stack, title: &Span, notes: &Notes) {
     let list = &drawn.list;
     if !drawn.complete {
         return;
@@ -76,16 +70,13 @@ fn check_sum(list: &[DrawnElectrode], notes: &Notes) {
 }
 
 /// For each layer the lowest layer it is joined with.
-fn connected(contacts: &[(Contact, Span)], joins: &[(Join, Span)], list: &[DrawnElectrode], layers: usize) -> Vec<usize> {
-    let mut group: Vec<usize> = (0..layers).collect();
-    let mut unite = |a: LayerId, b: LayerId| {
-        let (a, b) = (group[a.index()], group[b.index()]);
-        group.iter_mut().filter(|g| **g == a.max(b)).for_each(|g| *g = a.min(b));
-    };
-    contacts.iter().for_each(|(c, _)| unite(c.between[0], c.between[1]));
+fn connected(contacts: &[Contact], joins: &[(Join, Span)], list: &[DrawnElectrode], layers: usize) -> Vec<usize> {
+    let mut sets = Sets::new(layers);
+    let mut unite = |a: LayerId, b: LayerId| sets.join(a.index(), b.index());
+    contacts.iter().for_each(|c| unite(c.between[0], c.between[1]));
     joins.iter().for_each(|(j, _)| unite(j.between[0], j.between[1]));
     list.iter().for_each(|e| e.electrode.through.windows(2).for_each(|w| unite(w[0], w[1])));
-    group
+    (0..layers).map(|layer| sets.root(layer)).collect()
 }
 
 /// True when every layer of the group is one piece of metal.

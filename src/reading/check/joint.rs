@@ -7,8 +7,8 @@ use super::place::{disc, place};
 use super::shape::{Drawn, Form, drawn_places, place_key, places_by, rings_of};
 use super::weld_list::read_welds;
 use crate::diagnostic::Span;
+use crate::geometry::Region;
 use crate::geometry::overlap::common_area;
-use crate::geometry::{BoundingBox, Point, Region};
 use crate::index::{JoinId, LayerId};
 use crate::problem::{Contact, Interface, Join, Measured, MeasuredJoint};
 use crate::reading::fields::{Fields, Notes, Placed, not_yet};
@@ -19,12 +19,12 @@ use crate::reading::sheet::{Content, Value};
 const LEAST_OVERLAP: f64 = 1e-9;
 
 /// Reads the contacts' blocks; those with faults are left out.
-pub fn read_contacts(blocks: &[Value], stack: &Stack, files: &Files, notes: &Notes) -> Vec<(Contact, Span)> {
+pub fn read_contacts(blocks: &[Value], stack: &Stack, files: &Files, notes: &Notes) -> Vec<Contact> {
     let mut names = Names::new("contact");
     blocks.iter().filter_map(|block| read_contact(block, stack, &mut names, files, notes)).collect()
 }
 
-fn read_contact(block: &Value, stack: &Stack, names: &mut Names, files: &Files, notes: &Notes) -> Option<(Contact, Span)> {
+fn read_contact(block: &Value, stack: &Stack, names: &mut Names, files: &Files, notes: &Notes) -> Option<Contact> {
     let keys = ["name", "between", "over", "points_mm", "outline", "disc_mm", "contact_mohm_mm2"];
     let fields = Fields::open(block, "contact", &keys, notes)?;
     let name = fields.text("name");
@@ -54,8 +54,7 @@ fn read_contact(block: &Value, stack: &Stack, names: &mut Names, files: &Files, 
     let default_name = format!("{} on {}", stack.name(a), stack.name(b));
     overlaps(between, area.as_ref(), stack, fields.place("between"), notes)?;
     let interface = interface?;
-    let span = name.as_ref().map_or_else(|| fields.span.clone(), |n| n.span.clone());
-    Some((Contact { name: name.map_or(default_name, |n| n.value), between, area, interface }, span))
+    Some(Contact { name: name.map_or(default_name, |n| n.value), between, area, interface })
 }
 
 fn has_state(block: &Value) -> bool {
@@ -120,21 +119,14 @@ fn read_between(fields: &Fields, stack: &Stack, notes: &Notes) -> Option<[LayerI
 /// A fault when the sheets and the area have nothing in common.
 fn overlaps(between: [LayerId; 2], area: Option<&Region>, stack: &Stack, span: &Span, notes: &Notes) -> Option<()> {
     let (a, b) = (stack.metal(between[0])?, stack.metal(between[1])?);
-    let shared = |p: BoundingBox, q: BoundingBox| BoundingBox {
-        min: Point::new(p.min.x.max(q.min.x), p.min.y.max(q.min.y)),
-        max: Point::new(p.max.x.min(q.max.x), p.max.y.min(q.max.y)),
-    };
-    let mut window = shared(a.bounding_box(), b.bounding_box());
-    if let Some(area) = area {
-        window = shared(window, area.bounding_box());
-    }
-    let empty = window.min.x >= window.max.x || window.min.y >= window.max.y;
+    let mut window = a.bounding_box().common(b.bounding_box());
     let drawn: Vec<_> = area.map(|r| r.edges().collect()).unwrap_or_default();
     let mut shapes = vec![a.edges(), b.edges()];
-    if area.is_some() {
+    if let Some(area) = area {
+        window = window.common(area.bounding_box());
         shapes.push(&drawn);
     }
-    if empty || common_area(&shapes, window, LEAST_OVERLAP) <= LEAST_OVERLAP {
+    if !window.has_area() || common_area(&shapes, window, LEAST_OVERLAP) <= LEAST_OVERLAP {
         let message = format!("`{}` and `{}` have no area in common there", stack.name(between[0]), stack.name(between[1]));
         notes.fault(message, span, "sheets that overlap within the contact's area", "check the outlines' positions and the area");
         return None;

@@ -63,14 +63,12 @@ pub fn check(sheet: &Value, job: &Path, files: &Files, notes: &Notes) -> Option<
     if !notes.faults.borrow().is_empty() {
         return None;
     }
-    let (contacts, contact_places) = contacts.into_iter().unzip();
     let (joins, join_places) = joins.into_iter().unzip();
     let (probes, probe_places) = probes.into_iter().unzip();
     let (crossings, crossing_places) = crossings.into_iter().unzip();
     let origins = Origins {
         title: title_span,
         layers: stack.names.places(),
-        contacts: contact_places,
         joins: join_places,
         electrodes: electrode_places,
         probes: probe_places,

@@ -67,7 +67,7 @@ pub fn remark_moved(who: &str, moved: usize, notes: &Notes) {
     }
 }
 
-/// A line or edge lies on one layer, the last one; the sheets above it must hold it too.
+/// A line or edge must lie on the metal of every sheet that it passes; its points are those on the last one, whose outline they follow.
 fn on_all(layers: &[LayerId], stack: &Stack, mut put: impl FnMut(&IndexedRegion, &str) -> Option<Vec<Point>>) -> Option<Footprint> {
     let mut points = None;
     for &layer in layers {

@@ -42,12 +42,9 @@ pub fn read_welds(fields: &Fields, idle: &[&str], files: &Files) -> Option<Vec<W
         true => Some(fields.number_where("diameter_mm", "larger than zero", |d| d > 0.0 && d <= LARGEST_COORDINATE)?.value),
         false => None,
     };
-    // A byte-order mark is no part of the first title.
-    let skipped = source.text.len() - source.text.trim_start_matches('\u{feff}').len();
-    let text = &source.text[skipped..];
-    let separator = separator(text);
-    let span = |from: &Cell, to: &Cell| Span { source: source.clone(), start: skipped + from.start, end: skipped + to.end };
-    let mut table = rows(text, separator).filter(|row| row.iter().any(|cell| !cell.text.is_empty()));
+    let separator = separator(&source.text);
+    let span = |from: &Cell, to: &Cell| Span { source: source.clone(), start: from.start, end: to.end };
+    let mut table = rows(&source.text, separator).filter(|row| row.iter().any(|cell| !cell.text.is_empty()));
     let Some(header) = table.next() else {
         let start = Span { source: source.clone(), start: 0, end: 0 };
         fields.notes.fault("the list is empty", &start, HEADER, "export the list again, with its header row");
@@ -56,7 +53,7 @@ pub fn read_welds(fields: &Fields, idle: &[&str], files: &Files) -> Option<Vec<W
     if let (Some(first), Some(last)) = (header.first(), header.last()) {
         fields.notes.keep(within(header.len(), MOST_COLUMNS, "columns in one list", &span(first, last)))?;
     }
-    let columns = Columns::read(&header, &source, skipped, idle, fields.notes)?;
+    let columns = Columns::read(&header, &source, idle, fields.notes)?;
     if columns.number("diameter_mm").is_none() && whole_diameter.is_none() {
         fields.missing("diameter_mm", "a diameter for all spots, or a column `diameter_mm` in the list");
         return None;
@@ -106,8 +103,8 @@ struct Columns {
 }
 
 impl Columns {
-    fn read(header: &[Cell], source: &Arc<SourceText>, skipped: usize, idle: &[&str], notes: &Notes) -> Option<Self> {
-        let span = |cell: &Cell| Span { source: source.clone(), start: skipped + cell.start, end: skipped + cell.end };
+    fn read(header: &[Cell], source: &Arc<SourceText>, idle: &[&str], notes: &Notes) -> Option<Self> {
+        let span = |cell: &Cell| Span { source: source.clone(), start: cell.start, end: cell.end };
         let mut good = true;
         let mut fault = |message: String, place: &Span, expected: &str, remedy: String| {
             notes.fault(message, place, expected, remedy);
@@ -134,8 +131,7 @@ impl Columns {
             }
         }
         let all = header.first().zip(header.last());
-        let header_span =
-            all.map_or_else(|| Span { source: source.clone(), start: 0, end: 0 }, |(a, b)| Span { end: skipped + b.end, ..span(a) });
+        let header_span = all.map_or_else(|| Span { source: source.clone(), start: 0, end: 0 }, |(a, b)| Span { end: b.end, ..span(a) });
         for (column, title) in COLUMNS.iter().enumerate().take(2) {
             let other_unit = header.iter().any(|cell| Meant::by(&cell.text) == Meant::OtherUnit(column));
             if numbers[column].is_none() && !other_unit {

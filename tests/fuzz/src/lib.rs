@@ -2,7 +2,8 @@
 
 pub mod job;
 
-use pinchbar::cli::{explain, late};
+use pinchbar::cli::explain;
+use pinchbar::cli::late::{self, Stop};
 use pinchbar::diagnostic::{Fault, Span};
 use pinchbar::findings::{self, Enclosure, Findings};
 use pinchbar::problem::Problem;
@@ -52,10 +53,10 @@ pub fn hold_solution(reading: &Reading, draw: bool) {
     let found = match findings::find(problem) {
         Ok(found) => found,
         Err(faults) => {
-            let ours: Vec<_> = faults.iter().filter(|f| late::is_ours(f)).collect();
-            assert!(ours.is_empty(), "the tool failed: {ours:?}");
-            let placed: Vec<_> = faults.iter().map(|f| late::placed(f, problem, &reading.origins)).collect();
-            return hold_faults(&placed);
+            return match late::stop(&faults, problem, &reading.origins) {
+                Stop::Refused(faults) => hold_faults(&faults),
+                Stop::Failed(text) => panic!("the tool failed: {text}"),
+            };
         }
     };
     hold_findings(problem, &found.findings);
