@@ -68,9 +68,9 @@ fn placed(fault: &Late, problem: &Problem, origins: &Origins) -> Fault {
             format!("the currents of {} add up to {sum} A", list(electrodes)),
             "a sum of zero on every connected piece",
             if electrodes.iter().all(|k| matches!(problem.electrodes[k.index()].drive, Drive::Current(_))) {
-                "correct a current, or leave `current_a` out of one terminal: it then takes the balance"
+                "join this piece to the others, correct a current, or leave `current_a` out of one terminal of the piece: it then takes the balance"
             } else {
-                "correct one of the currents given"
+                "join this piece to the others by a contact or join, or correct one of the currents given"
             },
         ),
         Late::BalanceUnclear(electrodes) => at(

@@ -140,7 +140,7 @@ fn show(request: &Request, mapped: &Mapped) -> io::Result<Ending> {
         terminal::say(&format!("picture, tables and report are in {}", folder.path().display()));
     }
     if !findings.run.reached {
-        terminal::say("the accuracy asked for was not reached within the vertex limit; the intervals hold, but are wider");
+        terminal::say("the accuracy asked for was not reached: see the remarks");
     }
     let broken = findings.verdicts.iter().any(|v| v.verdict == Verdict::Fail);
     Ok(if broken { Ending::LimitBroken } else { Ending::Done })

@@ -112,7 +112,8 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
         ContactFinding {
             name: contact.name.clone(),
             between: names(contact.between),
-            current_a: resistive.then_some(through.current),
+            // What is left of a sum of both signs is rounding.
+            current_a: resistive.then_some(if through.current.abs() > 1e-9 * through.exchanged { through.current } else { 0.0 }),
             exchanged_a: resistive.then_some(through.exchanged),
             loss_w: through.loss * scale,
         }
@@ -168,10 +169,10 @@ fn found(problem: &Problem, solution: &Solution) -> Findings {
 /// What limits the worth of the figures, as the solving went.
 fn remarks(problem: &Problem, solution: &Solution) -> Vec<Remark> {
     let mut remarks = Vec::new();
-    if !solution.run.reached {
+    if !solution.run.reached && solution.run.residual <= LARGEST_RESIDUAL {
         let gap = solution.run.rounds.last().map_or(0.0, |r| 100.0 * r.gap);
         remarks.push(Remark::new(format!(
-            "Accuracy not reached: near the vertex limit of {} the loss is enclosed to {gap:.3} % and the voltages to {:.3} % of the largest difference; {} % was asked for. All intervals hold.",
+            "Accuracy not reached: within the vertex limit of {} the loss is enclosed to {gap:.3} % and the voltages to {:.3} % of the largest difference; {} % was asked for. The intervals hold.",
             problem.accuracy.max_vertices,
             100.0 * solution.run.voltage_spread,
             100.0 * problem.accuracy.bracket
@@ -182,9 +183,10 @@ fn remarks(problem: &Problem, solution: &Solution) -> Vec<Remark> {
     }
     let moves = solution.run.moves;
     if moves.count > 0 {
+        let places = if moves.count == 1 { "1 place".into() } else { format!("{} places", moves.count) };
         remarks.push(Remark::new(format!(
-            "{} points or edges of the drawing were snapped together, by {:.2e} mm at most.",
-            moves.count, moves.largest_mm
+            "Points or edges lie closer together than the drawing's size lets be told: in {places} they were made one, by {:.2e} mm at most. A slit or web no wider than that is gone.",
+            moves.largest_mm
         )));
     }
     if !solution.run.angles_reached {

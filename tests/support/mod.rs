@@ -54,7 +54,8 @@ pub fn run(problem: &Problem, bracket_percent: f64) -> Solution {
 
 /// Solves a problem and looks for hotspots; faults are told to the caller.
 pub fn attempt(problem: &Problem) -> Result<Found, String> {
-    findings::find(problem).map_err(|faults| format!("{faults:?}"))
+    let mut problem = problem.clone();
+    physics::fit(&mut problem, &|_| {}).and_then(|()| findings::find(&problem)).map_err(|faults| format!("{faults:?}"))
 }
 
 /// Solves a problem to a bracket in per cent.

@@ -337,6 +337,7 @@ fn read_drive(fields: &Fields, listed: bool, who: &str, notes: &Notes) -> Option
     let emf = fields.number_where("emf_mv", "within a million volts", |v| v.abs() <= 1e9);
     plausible::remark_number(who, "emf_mv", emf.as_ref().map(|e| e.value), notes);
     let resistance = fields.positive("resistance_mohm");
+    plausible::remark_number(who, "resistance_mohm", resistance, notes);
     match (fields.has("current_a") || listed, fields.has("emf_mv")) {
         (true, true) => {
             let remedy = "remove `current_a`: it is found from the voltage; or remove `emf_mv`";

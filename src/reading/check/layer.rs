@@ -75,8 +75,7 @@ pub fn read_layers(blocks: &[Value], celsius: f64, files: &Files, notes: &Notes)
         let rings = rings_of(&fields, files);
         let corner_radius = fields.number_where("corner_radius_mm", "larger than zero", |r| r > 0.0 && r <= 1e6);
         let region = |rings: &Vec<DrawnRing>| Region::from_rings(rings.iter().map(|r| &r.ring));
-        let thickness_mm =
-            fields.number_where("thickness_mm", "larger than zero and at most 100", |t| t > 0.0 && t <= 100.0).map(|t| t.value);
+        let thickness_mm = fields.number_where("thickness_mm", "from 1e-6 to 100", |t| (1e-6..=100.0).contains(&t)).map(|t| t.value);
         plausible::remark_number(&who, "thickness_mm", thickness_mm, notes);
         if let Some(rings) = &rings {
             plausible::remark_extents(&who, region(rings).bounding_box(), notes);
@@ -100,7 +99,7 @@ fn material(fields: &Fields, who: &str, celsius: f64) -> Option<(Material, f64)>
     }
     fields.number("melting_c");
     let density = fields.positive("density_g_cm3");
-    let own = fields.positive("resistivity_uohm_cm");
+    let own = fields.number_where("resistivity_uohm_cm", "from 1e-9 to 1e12", |r| (1e-9..=1e12).contains(&r)).map(|r| r.value);
     plausible::remark_number(who, "resistivity_uohm_cm", own, fields.notes);
     let named = fields.text("metal");
     let material = match (named, fields.has("resistivity_uohm_cm")) {

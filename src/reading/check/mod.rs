@@ -34,6 +34,7 @@ pub fn check(sheet: &Value, job: &Path, files: &Files, notes: &Notes) -> Option<
     let title_span = title.as_ref().map_or_else(|| sheet.span.clone(), |t| t.span.clone());
     let celsius = fields.number_where("temperature_c", "between -273 and 3000", meter::celsius);
     let temperature_c = celsius.map_or(ROOM, |t| t.value);
+    plausible::remark_number("the job", "temperature_c", Some(temperature_c), notes);
     let accuracy = read_accuracy(fields.value("accuracy"), notes);
 
     if !fields.has("layer") {

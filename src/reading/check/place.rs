@@ -48,6 +48,7 @@ pub fn place(drawn: &[Drawn], layers: &[LayerId], stack: &Stack, who: &str, note
         footprints.extend(footprint);
     }
     remark_moved(who, moved, notes);
+    remark_doubled(who, drawn, notes);
     if let Some(least) = partly.iter().copied().reduce(f64::min) {
         let spots = if partly.len() == 1 { "1 spot lies" } else { &format!("{} spots lie", partly.len()) };
         let text = format!(
@@ -57,6 +58,16 @@ pub fn place(drawn: &[Drawn], layers: &[LayerId], stack: &Stack, who: &str, note
         notes.remark(text);
     }
     footprints
+}
+
+/// Tells of spots that stand on each other's centre: a list copied twice looks like that.
+fn remark_doubled(who: &str, drawn: &[Drawn], notes: &Notes) {
+    let mut centres: Vec<Point> =
+        drawn.iter().filter_map(|d| if let Form::Disc(centre, _) = d.form { Some(centre) } else { None }).collect();
+    centres.sort_unstable_by(|a, b| a.x.total_cmp(&b.x).then(a.y.total_cmp(&b.y)));
+    if let Some(pair) = centres.windows(2).find(|pair| pair[0] == pair[1]) {
+        notes.remark(format!("{who}: two spots stand at ({}, {}): they count as two side by side", pair[0].x, pair[0].y));
+    }
 }
 
 /// Tells how many points were moved onto the outline, if any.

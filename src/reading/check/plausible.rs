@@ -13,8 +13,8 @@ struct Usual {
 }
 
 /// Common practice, no source; wide enough that a part of this trade is hardly ever told of.
-const USUAL: [Usual; 4] = [
-    Usual { key: "thickness_mm", least: 0.005, most: 20.0, hint: "sheets are in mm: 0.15, not 150 (micrometres) or 0.00015 (metres)" },
+const USUAL: [Usual; 6] = [
+    Usual { key: "thickness_mm", least: 0.005, most: 10.0, hint: "sheets are in mm: 0.15, not 150 (micrometres) or 0.00015 (metres)" },
     Usual {
         key: "resistivity_uohm_cm",
         least: 0.5,
@@ -22,7 +22,9 @@ const USUAL: [Usual; 4] = [
         hint: "in microohm cm copper is 1.72, nickel about 9; 1e-8 ohm m is 1 microohm cm",
     },
     Usual { key: "emf_mv", least: 100.0, most: f64::INFINITY, hint: "millivolts are meant: 3650, not 3.65" },
-    Usual { key: "joint_mohm", least: 0.0, most: 100.0, hint: "a sound weld has less than 1 milliohm; 100 microohm are 0.1" },
+    Usual { key: "resistance_mohm", least: 0.05, most: 1000.0, hint: "a cell has 0.15 to some 60 milliohm" },
+    Usual { key: "temperature_c", least: 0.0, most: 250.0, hint: "degrees Celsius are meant, not kelvin" },
+    Usual { key: "joint_mohm", least: 0.0, most: 10.0, hint: "a sound weld has less than 1 milliohm; 100 microohm are 0.1" },
 ];
 
 /// Largest usual size of a part, and the least one of the longer side, mm.
@@ -66,8 +68,10 @@ mod tests {
         for (key, slips, usual) in [
             ("thickness_mm", vec![150.0 / 7.0, 0.00015], vec![0.006, 0.15, 10.0]),
             ("resistivity_uohm_cm", vec![1.72e-8, 0.0172, 1720.0], vec![1.587, 9.0, 120.0]),
+            ("resistance_mohm", vec![0.015, 15_000.0], vec![0.15, 60.0]),
+            ("temperature_c", vec![353.0], vec![20.0, -40.0, 120.0]),
             ("emf_mv", vec![3.65, -3.65], vec![3650.0, -2000.0, 48_000.0, 0.0]),
-            ("joint_mohm", vec![170.0], vec![0.0, 0.02, 50.0]),
+            ("joint_mohm", vec![170.0], vec![0.0, 0.02, 5.0]),
         ] {
             for slip in slips {
                 let told = remarks(|notes| remark_number("plate", key, Some(slip), notes));
