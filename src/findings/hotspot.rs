@@ -44,7 +44,7 @@ const TWIN: f64 = 0.93;
 const SPOILT: f64 = 0.05;
 
 /// Part of a disc's metal under long triangles from which its mean may be wrong by some per cent.
-const DOUBTFUL: f64 = 0.25;
+const DOUBTFUL: f64 = 0.15;
 
 /// Corners and edges of one ring nearer to each other than this, in gauges (and than the metal is wide), are one place.
 const NEAR: f64 = 10.0;
@@ -139,7 +139,7 @@ impl Candidate {
             HotspotKind::Strip => false,
             // Beside a nugget the field is smooth, and the edges of its rim are not long: measured, 0.6 % are lost at most under such a disc.
             HotspotKind::WeldRim => self.covered.coarse > 0.9,
-            _ => self.covered.coarse > DOUBTFUL || self.around.coarse > 2.0 * DOUBTFUL,
+            _ => self.covered.coarse > DOUBTFUL || self.around.coarse > 3.0 * DOUBTFUL,
         }
     }
 
@@ -344,10 +344,13 @@ fn candidate(setting: &Setting, metal: &LayerMetal, rims: &[(f64, f64)], disc: &
         let places = [0.0, 1.0, -1.0].map(|s| metal.moved(inside, inside.point + unit(covered.direction) * (s * push)));
         section = section::best_cut(metal, &places, setting.most, covered.direction);
     }
-    let character = kind::character(setting, metal, &touched, place, section.as_ref());
+    // The peak of a neck lies in its fillet, where it is a little wider than at its narrowest.
+    let narrowest = section.map(|s| section::narrowest(metal, s));
+    let mut character = kind::character(setting, metal, &touched, place, narrowest.as_ref());
     if character.kind == HotspotKind::Neck {
-        // The peak lies in the fillet, where the neck is a little wider than at its narrowest.
-        section = section.map(|s| section::narrowest(metal, s));
+        section = narrowest;
+    } else {
+        character = kind::character(setting, metal, &touched, place, section.as_ref());
     }
     let excess = match character.kind {
         // Always rows: whether one stands out enough from around it would hang on the mesh.

@@ -12,7 +12,7 @@ use rayon::prelude::*;
 /// A place is looked at when |J| falls by this factor on every way from it to a higher place.
 const PROMINENCE: f64 = 1.03;
 
-/// Most places of a sheet that are looked at closely.
+/// Most places of a sheet that are looked at closely beside spots, and as many of them elsewhere: neither may crowd out the other.
 const MOST_STARTS: usize = 48;
 
 /// |J| at the vertices of a sheet: the mean over the triangles around them, held ones left out.
@@ -113,14 +113,14 @@ fn thinned(setting: &Setting, metal: &LayerMetal, vertices: &Vertices, summits: 
     };
     let mut taken: Vec<Area> = Vec::new();
     let mut kept: Vec<Place> = Vec::new();
+    let mut left = [MOST_STARTS; 2];
     for (_, place) in ranked {
-        if kept.len() == MOST_STARTS {
-            break;
-        }
         let spots = spots_at(place);
-        if spots.iter().all(|s| !taken.contains(s)) && kept.iter().all(|k| k.point.distance(place.point) >= 0.5 * metal.gauge) {
+        let left = &mut left[usize::from(spots.is_empty())];
+        if *left > 0 && spots.iter().all(|s| !taken.contains(s)) && kept.iter().all(|k| k.point.distance(place.point) >= 0.5 * metal.gauge) {
             taken.extend(spots);
             kept.push(place);
+            *left -= 1;
         }
     }
     kept
