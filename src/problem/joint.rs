@@ -37,7 +37,7 @@ pub struct Join {
 }
 
 /// A joint known by what a four-wire meter reads across it: the resistance of its spots is fitted to that
-/// ([`crate::physics::fit`]), so that the spreading in the sheets is not counted twice.
+/// (`physics::fit`), so that the spreading in the sheets is not counted twice.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Measured {
     /// Whose spots.

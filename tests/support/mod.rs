@@ -52,10 +52,11 @@ pub fn run(problem: &Problem, bracket_percent: f64) -> Solution {
     physics::run(&problem).unwrap_or_else(|faults| panic!("{} not solved: {faults:?}", problem.title))
 }
 
-/// Solves a problem and looks for hotspots; faults are told to the caller.
+/// Solves a problem, its measured joints fitted first, and looks for hotspots; faults are told to the caller.
 pub fn attempt(problem: &Problem) -> Result<Found, String> {
     let mut problem = problem.clone();
-    physics::fit(&mut problem, &|_| {}).and_then(|()| findings::find(&problem)).map_err(|faults| format!("{faults:?}"))
+    let found = physics::fit(&mut problem, &|_| {}).and_then(|()| findings::find(&problem));
+    found.map_err(|faults| format!("{faults:?}"))
 }
 
 /// Solves a problem to a bracket in per cent.

@@ -6,6 +6,7 @@ use pinchbar::cli::explain;
 use pinchbar::cli::late::{self, Stop};
 use pinchbar::diagnostic::{Fault, Span};
 use pinchbar::findings::{self, Enclosure, Findings};
+use pinchbar::physics;
 use pinchbar::problem::Problem;
 use pinchbar::reading::{self, Reading};
 use pinchbar::report;
@@ -49,8 +50,8 @@ fn hold_span(span: &Span) {
 
 /// Solves a job and holds the result to what is promised of every one.
 pub fn hold_solution(reading: &Reading, draw: bool) {
-    let problem = &reading.problem;
-    let found = match findings::find(problem) {
+    let problem = &mut reading.problem.clone();
+    let found = match physics::fit(problem, &|_| {}).and_then(|()| findings::find(problem)) {
         Ok(found) => found,
         Err(faults) => {
             return match late::stop(&faults, problem, &reading.origins) {
