@@ -117,7 +117,8 @@ fn thinned(setting: &Setting, metal: &LayerMetal, vertices: &Vertices, summits: 
     for (_, place) in ranked {
         let spots = spots_at(place);
         let left = &mut left[usize::from(spots.is_empty())];
-        if *left > 0 && spots.iter().all(|s| !taken.contains(s)) && kept.iter().all(|k| k.point.distance(place.point) >= 0.5 * metal.gauge) {
+        if *left > 0 && spots.iter().all(|s| !taken.contains(s)) && kept.iter().all(|k| k.point.distance(place.point) >= 0.5 * metal.gauge)
+        {
             taken.extend(spots);
             kept.push(place);
             *left -= 1;
