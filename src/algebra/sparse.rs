@@ -59,29 +59,6 @@ impl SymmetricMatrix {
         }
         y
     }
-
-    /// The matrix without some rows and columns: `kept[i]` is the new place of row i, or `None`.
-    pub fn restricted(&self, kept: &[Option<u32>]) -> Self {
-        let order = kept.iter().flatten().count();
-        let (starts, rows, values) = self.lower();
-        let mut offsets = Vec::with_capacity(order + 1);
-        offsets.push(0);
-        let mut indices = Vec::with_capacity(rows.len());
-        let mut entries = Vec::with_capacity(rows.len());
-        for j in (0..self.order()).filter(|&j| kept[j].is_some()) {
-            for k in starts[j]..starts[j + 1] {
-                if let Some(i) = kept[rows[k]] {
-                    indices.push(i as usize);
-                    entries.push(values[k]);
-                }
-            }
-            offsets.push(indices.len());
-        }
-        match CscMatrix::try_from_csc_data(order, order, offsets, indices, entries) {
-            Ok(lower) => Self { lower },
-            Err(_) => Self { lower: CscMatrix::zeros(order, order) },
-        }
-    }
 }
 
 #[cfg(test)]
@@ -96,7 +73,5 @@ mod tests {
         }
         let m = SymmetricMatrix::from(t);
         assert_eq!(m.times(&[1.0, 2.0, 3.0]), vec![-1.0, 1.5, 1.0]);
-        let part = m.restricted(&[None, Some(0), Some(1)]);
-        assert_eq!(part.times(&[2.0, 3.0]), vec![3.0, 1.0]);
     }
 }

@@ -131,7 +131,7 @@ pub enum Fault {
         /// A point in the patch.
         at: Point,
     },
-    /// Joints given as measured have not been fitted yet: [`crate::physics::fit`] does that.
+    /// Joints given as measured have not been fitted yet: [`crate::physics::fit()`] does that.
     Unfitted,
     /// A joint given as measured through which no current passes (by its place in the problem's list).
     MeasuredIdle(usize),
