@@ -13,6 +13,7 @@ use crate::index::{ElectrodeId, LayerId};
 use crate::mesh::{Mesh, bisected, triangulated};
 use crate::problem::Problem;
 use crate::progress::{Listener, Stage};
+use rayon::prelude::*;
 
 /// Rounds after which the refinement gives up: each adds triangles, so the vertex limit comes first in practice.
 const MOST_ROUNDS: usize = 200;
@@ -216,7 +217,7 @@ fn inherited(indicator: &[f64], from: &Mesh, next: &Mesh, parents: &[u32]) -> Ve
         let part = next.area(t) / from.area(p as usize);
         if part == 1.0 { indicator[p as usize] } else { indicator[p as usize] * part.powf(2.0) }
     };
-    parents.iter().enumerate().map(one).collect()
+    parents.par_iter().enumerate().with_min_len(1024).map(one).collect()
 }
 
 /// Refines where the indicators are largest, again and again by what they are predicted to become, until they add up to the goal
@@ -275,7 +276,7 @@ fn probed(combinations: &[Vec<f64>]) -> Vec<Vec<f64>> {
 /// Triangles whose indicators, largest first, make up a share of the sum.
 fn marked(indicator: &[f64], share: f64) -> Vec<bool> {
     let mut order: Vec<u32> = (0..indicator.len() as u32).collect();
-    order.sort_unstable_by(|&a, &b| indicator[b as usize].total_cmp(&indicator[a as usize]).then(a.cmp(&b)));
+    order.par_sort_unstable_by(|&a, &b| indicator[b as usize].total_cmp(&indicator[a as usize]).then(a.cmp(&b)));
     let goal = share * indicator.iter().sum::<f64>();
     let mut sum = 0.0;
     let mut chosen = vec![false; indicator.len()];
@@ -341,7 +342,7 @@ fn resolved_under(mut mesh: Mesh, mut indicator: Vec<f64>, discs: &[FineDisc], m
                     && distance_to_triangle(corners, disc.centre) <= 0.5 * disc.diameter
             })
         };
-        let coarse: Vec<bool> = fresh.iter().enumerate().map(|(t, &fresh)| fresh && is_coarse(t)).collect();
+        let coarse: Vec<bool> = fresh.par_iter().enumerate().with_min_len(512).map(|(t, &fresh)| fresh && is_coarse(t)).collect();
         if !coarse.contains(&true) {
             return (mesh, indicator);
         }
